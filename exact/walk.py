@@ -1,0 +1,175 @@
+"""One agent's private walk: its own tally, one observation at a time, for every seen history.
+
+The walk holds sub-probabilities of being still undecided with a given own count, for each
+history that the agent may have been shown. Rows are lattice points of the own count (kept only
+where there is mass), columns are seen histories; the layout is ``[rows, histories]`` so that a
+step is a few shifted additions at memory speed.
+
+Under plus and minus the mass at tally y differs by the factor e^y exactly, so one measure m is
+held, q+ = m e^(y/2) and q- = m e^(-y/2) (see ``evidence.base``). Columns that grow small are
+rescaled and the scale kept as a logarithm: nothing underflows, however long the silence.
+
+Where others do not know the agent's thresholds, each possibility is a block of rows of its own
+with its own thresholds.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thumbwright.exact.evidence.base import Evidence, FloatArray, IntArray
+from thumbwright.exact.group import Thresholds
+
+BoolArray = NDArray[np.bool_]
+
+TIE = 1e-9
+"""A belief within this many nats of a threshold has reached it: part of the model."""
+
+NEAR = 1e-12
+"""Decisions further than this from a threshold, but within TIE, are reported as near ties."""
+
+_BLOCK = np.int64(1) << 52
+_SMALL = 1e-120
+
+
+class Walk:
+    """The walk of one agent over all seen histories at once.
+
+    Attributes
+    ----------
+    count : ndarray of int, shape (R,)
+        Own count S of each row on a ladder; on a lattice of several axes a code of the counts.
+    tally : ndarray of float, shape (R,)
+        Sum of the worths of the own observations (nats) of each row.
+    low, high : ndarray of float, shape (R,)
+        Thresholds on the belief (nats) that hold for each row.
+    mass : ndarray of float, shape (R, C)
+        The measure m of each row and column, before ``exp(log_scale)``.
+    log_scale : ndarray of float, shape (C,)
+    observed : int
+        Own observations made so far.
+    """
+
+    def __init__(
+        self, evidence: Evidence, thresholds: tuple[tuple[float, Thresholds], ...], horizon: int
+    ) -> None:
+        self._evidence = evidence
+        self._root_mass = np.sqrt(evidence.plus * evidence.minus)
+        axes = evidence.alpha.shape[0]
+        # On several axes all offsets are 0 or 1, so strides of horizon + 1 never run over.
+        self._strides = (horizon + 1) ** np.arange(axes, dtype=np.int64)
+        self._moves: IntArray = evidence.offsets @ self._strides
+        self._bounds = np.array([[t.minus, t.plus] for _, t in thresholds])
+        blocks = np.arange(len(thresholds), dtype=np.int64)
+        self._code: IntArray = blocks * _BLOCK + _BLOCK // 2
+        self.mass: FloatArray = np.array([[share] for share, _ in thresholds], dtype=float)
+        self.log_scale: FloatArray = np.zeros(1)
+        self.observed = 0
+        self._describe()
+
+    def _describe(self) -> None:
+        block, inner = np.divmod(self._code, _BLOCK)
+        self.count: IntArray = inner - _BLOCK // 2
+        self.low, self.high = self._bounds[block, 0], self._bounds[block, 1]
+        alpha = self._evidence.alpha
+        if len(alpha) == 1:
+            self.tally: FloatArray = alpha[0] * self.count + self._evidence.beta * self.observed
+        else:
+            rest, tally = self.count.copy(), np.full(len(self.count), 0.0)
+            for stride, worth in zip(self._strides[::-1], alpha[::-1], strict=True):
+                taken, rest = np.divmod(rest, stride)
+                tally += taken * worth
+            self.tally = tally + self._evidence.beta * self.observed
+        half = np.exp(0.5 * self.tally)
+        # Row 0 turns the measure into mass given plus, row 1 into mass given minus.
+        self._given: FloatArray = np.stack([half, 1.0 / half])
+
+    def observe(self) -> FloatArray:
+        """Make one private observation.
+
+        Returns
+        -------
+        ndarray of float, shape (2, 2, C)
+            Log weight of having met certain evidence: axis 0 is the answer it proves (plus,
+            minus), axis 1 the answer that is given; ``-inf`` throughout for ordinary evidence.
+        """
+        certain = np.full((2, 2, self.mass.shape[1]), -np.inf)
+        proofs = (self._evidence.certain_plus, self._evidence.certain_minus)
+        if any(proofs):
+            before = self.log_undecided()
+            for side, proof in enumerate(proofs):
+                if proof:
+                    certain[side, side] = before[side] + np.log(proof)
+        codes = np.unique((self._code[:, None] + self._moves[None, :]).ravel())
+        mass = np.zeros((len(codes), self.mass.shape[1]))
+        for move, weight in zip(self._moves, self._root_mass, strict=True):
+            target = np.searchsorted(codes, self._code + move)
+            if len(target) and target[-1] - target[0] == len(target) - 1:
+                mass[target[0] : target[-1] + 1] += weight * self.mass
+            else:
+                mass[target] += weight * self.mass
+        self._code, self.mass, self.observed = codes, mass, self.observed + 1
+        self._rescale()
+        self._describe()
+        return certain
+
+    def _rescale(self) -> None:
+        if not self.mass.size:
+            return
+        peak = self.mass.max(axis=0)
+        small = (peak < _SMALL) & (peak > 0)
+        if small.any():
+            self.mass[:, small] /= peak[small]
+            self.log_scale = self.log_scale.copy()
+            self.log_scale[small] += np.log(peak[small])
+
+    def log_undecided(self) -> FloatArray:
+        """Log probability of being still undecided, shape (2, C), given plus and given minus."""
+        return self._log(self._given @ self.mass)
+
+    def log_where(self, rows: BoolArray) -> FloatArray:
+        """Log mass of the chosen rows and columns, shape (2, C); ``rows`` has shape (R, C)."""
+        return self._log(self._given @ np.where(rows, self.mass, 0.0))
+
+    def cut(self, plus: BoolArray, minus: BoolArray) -> FloatArray:
+        """Take out what commits to plus and to minus.
+
+        Parameters
+        ----------
+        plus, minus : ndarray of bool, shape (R, C)
+
+        Returns
+        -------
+        ndarray of float, shape (2, 2, C)
+            Log weight of committing: axis 0 to plus, to minus; axis 1 given plus, given minus.
+        """
+        gone = np.stack([self.log_where(plus), self.log_where(minus)])
+        self.mass[plus | minus] = 0.0
+        alive = self.mass.any(axis=1)
+        if not alive.all():
+            self._code, self.mass = self._code[alive], self.mass[alive]
+            self._describe()
+        return gone
+
+    def grow(self, shape: tuple[int, ...], axis: int, extra: int) -> None:
+        """Give ``extra`` new histories on one seen agent's axis a copy of its undecided slice.
+
+        ``shape`` is the shape of the histories before; the product of it is C.
+        """
+        rows = len(self._code)
+        self.log_scale = grown(self.log_scale.reshape(shape), axis, extra).ravel()
+        mass = grown(self.mass.reshape(rows, *shape), axis + 1, extra)
+        self.mass = mass.reshape(rows, len(self.log_scale))
+
+    def _log(self, weight: FloatArray) -> FloatArray:
+        with np.errstate(divide="ignore"):
+            return np.log(weight) + self.log_scale
+
+
+def grown(array: FloatArray, axis: int, extra: int) -> FloatArray:
+    """``array`` with ``extra`` copies of its slice 0 (undecided) appended along ``axis``."""
+    if not extra:
+        return array
+    first = np.take(array, [0] * extra, axis=axis)
+    return np.concatenate([array, first], axis=axis)
