@@ -31,6 +31,7 @@ NEAR = 1e-12
 
 _BLOCK = np.int64(1) << 52
 _SMALL = 1e-120
+_FEW = 8
 
 
 class Walk:
@@ -101,6 +102,17 @@ class Walk:
             for side, proof in enumerate(proofs):
                 if proof:
                     certain[side, side] = before[side] + np.log(proof)
+        if len(self._moves) > _FEW:
+            self._move_many()
+        else:
+            self._move_each()
+        self.observed += 1
+        self._rescale()
+        self._describe()
+        return certain
+
+    def _move_each(self) -> None:
+        """One shifted addition per value: for evidence with few values, on any lattice."""
         codes = np.unique((self._code[:, None] + self._moves[None, :]).ravel())
         mass = np.zeros((len(codes), self.mass.shape[1]))
         for move, weight in zip(self._moves, self._root_mass, strict=True):
@@ -109,10 +121,25 @@ class Walk:
                 mass[target[0] : target[-1] + 1] += weight * self.mass
             else:
                 mass[target] += weight * self.mass
-        self._code, self.mass, self.observed = codes, mass, self.observed + 1
-        self._rescale()
-        self._describe()
-        return certain
+        self._code, self.mass = codes, mass
+
+    def _move_many(self) -> None:
+        """One matrix product per block: for evidence with many values, which is on a ladder."""
+        low, width = int(self._moves[0]), int(self._moves[-1] - self._moves[0]) + 1
+        kernel = np.zeros(width)
+        kernel[self._moves - low] = self._root_mass
+        codes, masses = [], []
+        for block in np.unique(self._code // _BLOCK):
+            rows = np.flatnonzero(self._code // _BLOCK == block)
+            start, stop = int(self._code[rows[0]]), int(self._code[rows[-1]]) + 1
+            dense = np.zeros((stop - start, self.mass.shape[1]))
+            dense[self._code[rows] - start] = self.mass[rows]
+            # Row r of the band holds kernel[r - s] at source s: a view, not a copy.
+            padded = np.pad(kernel[::-1], (stop - start - 1,))
+            band = np.lib.stride_tricks.sliding_window_view(padded, stop - start)[::-1]
+            codes.append(np.arange(start + low, stop + low + width - 1, dtype=np.int64))
+            masses.append(band @ dense)
+        self._code, self.mass = np.concatenate(codes), np.concatenate(masses)
 
     def _rescale(self) -> None:
         if not self.mass.size:

@@ -1,0 +1,1 @@
+"""Rule forms: one file per form, each behind the same small interface."""
