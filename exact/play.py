@@ -1,0 +1,347 @@
+"""Playing any rule exactly: one agent uses it, the others stay exact and take it for exact.
+
+The agent that uses the rule decides by what the rule says of the histories it is shown. If what it
+shows cannot come back to it, nobody else changes and its walk is played against the probabilities
+of the exact solution. Otherwise the whole group is played again: the actual weights are those of
+this play, while the exact agents go on reading what they see by the exact solution.
+
+Off-model histories. A rule may show a commitment that the exact solution gives probability zero.
+It is read as the same commitment at the latest earlier moment at which the exact solution allowed
+it after the same seen history; where there is none, it counts as no news, and so does a silence
+that the exact solution calls impossible. How often this happened is reported.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+
+from thumbwright.exact.engine import (
+    Events,
+    ExactReader,
+    Moment,
+    Player,
+    Reader,
+    Reading,
+    Scene,
+    Solution,
+    Track,
+    by_value,
+    run,
+)
+from thumbwright.exact.evidence.base import FloatArray, IntArray
+from thumbwright.exact.walk import BoolArray
+
+NEVER = np.int64(1) << 40
+"""A bar this high (or, negative, this low) is never reached."""
+
+
+@dataclass(frozen=True)
+class Situation:
+    """What a policy may look at, for all histories that may have been shown at once.
+
+    Attributes
+    ----------
+    step, round : int
+        Own observations so far, this one included; round within the step.
+    states, shown_steps, shown_rounds : tuple of ndarray of int
+        Per seen agent, in the agent's own order, the code of the shown state (0 undecided, 1
+        plus, 2 minus) and the step and round of its commitment (0 while undecided). The array of
+        seen agent k varies along axis k only, so the arrays broadcast to all joint histories.
+    """
+
+    step: int
+    round: int
+    states: tuple[IntArray, ...]
+    shown_steps: tuple[IntArray, ...]
+    shown_rounds: tuple[IntArray, ...]
+
+    @property
+    def shape(self) -> tuple[int, ...]:
+        """Number of histories per seen agent."""
+        return np.broadcast_shapes(*(array.shape for array in self.states)) if self.states else ()
+
+
+@dataclass(frozen=True)
+class Act:
+    """What a policy makes of a situation; arrays broadcast to the situation's shape.
+
+    Attributes
+    ----------
+    value : ndarray of float
+        Worth of each history in nats, in place of the exact one. A policy with bars gives its
+        value too: it says which answer an agent favours that is undecided at the horizon.
+    minus_at, plus_at : ndarray of int or None
+        Bars on the own count; None for both means that the value decides.
+    row : ndarray of int or None
+        Which line of the rule applies, for counting how often each is used; negative for none.
+    """
+
+    value: FloatArray
+    minus_at: IntArray | None = None
+    plus_at: IntArray | None = None
+    row: IntArray | None = None
+
+
+Policy = Callable[[Situation], Act]
+
+
+@dataclass(frozen=True)
+class Play:
+    """How one agent fares with a policy.
+
+    Attributes
+    ----------
+    track : Track
+        The agent's own track.
+    off_model : float
+        Expected number of times that an exact agent, still undecided, was shown something that
+        the exact solution calls impossible.
+    usage : ndarray of float, shape (rows, 2) or None
+        Per line of the rule: mean steps per outing at which it was in force, and the share of
+        outings that were decided under it; averaged over the prior.
+    """
+
+    track: Track
+    off_model: float
+    usage: FloatArray | None
+
+
+def situation_of(step: int, round_: int, events: tuple[Events, ...], shape: tuple[int, ...]) -> Situation:
+    """The situations of a round as broadcastable arrays."""
+    columns: list[list[IntArray]] = [[], [], []]
+    for axis, (one, length) in enumerate(zip(events, shape, strict=True)):
+        turned = tuple(length if k == axis else 1 for k in range(len(shape)))
+        for column, numbers in zip(columns, (one.state, one.step, one.round), strict=True):
+            column.append(np.array(numbers[:length], dtype=np.int64).reshape(turned))
+    return Situation(step, round_, *(tuple(column) for column in columns))
+
+
+class RuleReader:
+    """Decides by a policy; counts how often each line is used if told how many there are."""
+
+    def __init__(self, policy: Policy, prior_plus: float = 0.5, rows: int = 0) -> None:
+        self._policy = policy
+        self._prior = np.array([prior_plus, 1.0 - prior_plus])
+        self.usage: FloatArray | None = np.zeros((rows, 2)) if rows else None
+
+    def read(self, scene: Scene) -> Reading:
+        """What the policy decides."""
+        shape = scene.log_shown.shape[1:]
+        act = self._policy(situation_of(scene.step, scene.round, scene.seen, shape))
+        value = np.broadcast_to(np.asarray(act.value, dtype=float), shape).ravel()
+        if act.minus_at is None or act.plus_at is None:
+            reading = by_value(scene, value)
+        else:
+            plus, minus = by_bars(scene, act)
+            reading = Reading(plus, minus, value, compared=False)
+        if self.usage is not None and act.row is not None:
+            self._count(scene, np.broadcast_to(act.row, shape).ravel(), reading)
+        return reading
+
+    def grow(self, shape: tuple[int, ...], axis: int, events: Events, extra: int) -> None:
+        """Nothing is remembered between rounds."""
+
+    def _count(self, scene: Scene, row: IntArray, reading: Reading) -> None:
+        assert self.usage is not None
+        flat = scene.log_shown.reshape(2, -1)
+        used = row >= 0
+        calls = self._prior @ np.exp(scene.walk.log_where(reading.plus | reading.minus) + flat)
+        np.add.at(self.usage[:, 1], row[used], calls[used])
+        if scene.round == 0:
+            inside = self._prior @ np.exp(scene.walk.log_undecided() + flat)
+            np.add.at(self.usage[:, 0], row[used], inside[used])
+
+
+def by_bars(scene: Scene, act: Act) -> tuple[BoolArray, BoolArray]:
+    """Masks (R, C) of the rows at or beyond the bars of an act."""
+    assert act.minus_at is not None and act.plus_at is not None
+    shape = scene.log_shown.shape[1:]
+    count = scene.walk.count[:, None]
+    return (
+        count >= np.broadcast_to(act.plus_at, shape).ravel()[None, :],
+        count <= np.broadcast_to(act.minus_at, shape).ravel()[None, :],
+    )
+
+
+class DifferenceReader:
+    """Lets an agent leave as soon as two policies would act differently.
+
+    What leaves "to plus" is the probability that the two ever differ on the same observations;
+    what leaves "to minus" was answered the same way by both.
+    """
+
+    def __init__(self, one: Policy, other: Policy) -> None:
+        self._readers = RuleReader(one), RuleReader(other)
+
+    def read(self, scene: Scene) -> Reading:
+        """Masks of what differs and of what is answered alike."""
+        one, other = (reader.read(scene) for reader in self._readers)
+        differs = (one.plus != other.plus) | (one.minus != other.minus)
+        return Reading(differs, (one.plus | one.minus) & ~differs, one.value, compared=False)
+
+    def grow(self, shape: tuple[int, ...], axis: int, events: Events, extra: int) -> None:
+        """Nothing is remembered between rounds."""
+
+
+class AmongOthersReader:
+    """An exact agent that reads what it is shown by the exact solution, whoever shows it."""
+
+    def __init__(self, solution: Solution, position: int) -> None:
+        group = solution.group
+        self._moments = solution.tracks[position].moments
+        self._times = [(moment.step, moment.round) for moment in self._moments]
+        self._model = tuple(solution.tracks[other].events for other in group.sees[position])
+        self._prior = np.array([group.prior_plus, 1.0 - group.prior_plus])
+        axes = len(self._model)
+        self._index: list[IntArray] = [np.zeros((1,) * axes, dtype=np.int64) for _ in range(axes)]
+        self._held: FloatArray = np.zeros((1,) * axes)
+        self._fresh: BoolArray = np.zeros((1,) * axes, dtype=bool)
+        self.off_model = 0.0
+
+    def read(self, scene: Scene) -> Reading:
+        """The exact worth of what each history is read as; the last level where it is no news."""
+        moment = self._moments[self._latest(scene.step, scene.round)]
+        value = moment.value[tuple(self._index)] if self._index else moment.value
+        self._held = np.where(np.isnan(value), self._held, value)
+        if self._fresh.any():
+            mass = np.exp(scene.walk.log_undecided() + scene.log_shown.reshape(2, -1))
+            self.off_model += float((self._prior @ mass)[self._fresh.ravel()].sum())
+            self._fresh[...] = False
+        return by_value(scene, self._held.ravel())
+
+    def grow(self, shape: tuple[int, ...], axis: int, events: Events, extra: int) -> None:
+        """Decide how the new events of a seen agent are read, per history of the others."""
+        first = len(events) - extra
+        self._index = [np.concatenate([a, *[_undecided(a, axis)] * extra], axis) for a in self._index]
+        self._held = np.concatenate([self._held, *[_undecided(self._held, axis)] * extra], axis)
+        odd = np.zeros_like(_undecided(self._fresh, axis))
+        self._fresh = np.concatenate([self._fresh, *[odd] * extra], axis)
+        for number in range(extra):
+            event = first + number
+            time = (events.step[event], events.round[event])
+            where = (slice(None),) * axis + (slice(shape[axis] + number, shape[axis] + number + 1),)
+            reading = [a[where] for a in self._index]
+            found, same = self._read_as(reading, axis, events.state[event], time)
+            self._index[axis][where] = found
+            self._fresh[where] = ~same
+
+    def _read_as(
+        self, reading: list[IntArray], axis: int, state: int, time: tuple[int, int]
+    ) -> tuple[IntArray, BoolArray]:
+        """The exact solution's event that each history's new commitment is read as, 0 for none."""
+        model = self._model[axis]
+        after = min(self._latest(*time) + 1, len(self._moments) - 1)
+        possible = np.isfinite(self._moments[after].log_shown).any(axis=0)
+        found = np.zeros(reading[axis].shape, dtype=np.int64)
+        same = np.zeros(found.shape, dtype=bool)
+        known = possible.shape[axis]
+        candidates = [
+            e
+            for e in range(known)
+            if model.state[e] == state and (model.step[e], model.round[e]) <= time
+        ]
+        for e in sorted(candidates, key=lambda e: (model.step[e], model.round[e]), reverse=True):
+            asked = list(reading)
+            asked[axis] = np.full_like(found, e)
+            allowed = possible[tuple(asked)] & (found == 0)
+            found[allowed] = e
+            if (model.step[e], model.round[e]) == time:
+                same |= allowed
+        return found, same
+
+    def _latest(self, step: int, round_: int) -> int:
+        """The exact solution's last moment that is not after this one."""
+        position = len(self._times) - 1
+        while position > 0 and self._times[position] > (step, round_):
+            position -= 1
+        return position
+
+
+def _undecided(array: np.ndarray, axis: int) -> np.ndarray:  # type: ignore[type-arg]
+    return np.take(array, [0], axis=axis)
+
+
+def adopt(solution: Solution, agent: str, policy: Policy, rows: int = 0) -> Play:
+    """One agent plays by a policy, the others stay exact and take it for exact.
+
+    Parameters
+    ----------
+    solution : Solution
+        The exact play of the group.
+    agent : str
+        Id of the agent that uses the policy.
+    policy : callable
+        ``policy(situation) -> act``.
+    rows : int
+        If above 0, usage is counted for this many lines.
+    """
+    reader = RuleReader(policy, solution.group.prior_plus, rows)
+    track, off_model = _play(solution, solution.group.index[agent], reader)
+    return Play(track, off_model, reader.usage)
+
+
+def difference(solution: Solution, agent: str, one: Policy, other: Policy) -> float:
+    """Probability that an agent ever acts differently by two policies, on the same observations."""
+    track, _ = _play(solution, solution.group.index[agent], DifferenceReader(one, other))
+    group = solution.group
+    ever = track.answers[0].sum(axis=1)
+    return float(group.prior_plus * ever[0] + (1.0 - group.prior_plus) * ever[1])
+
+
+def _play(solution: Solution, position: int, reader: Reader) -> tuple[Track, float]:
+    group = solution.group
+    if not group.influences(position):
+        return _against(solution, position, reader), 0.0
+    readers: list[Reader] = [
+        reader if i == position else AmongOthersReader(solution, i) for i in range(len(group.agents))
+    ]
+    track = run(group, readers)[position]
+    return track, sum(r.off_model for r in readers if isinstance(r, AmongOthersReader))
+
+
+def _against(solution: Solution, position: int, reader: Reader) -> Track:
+    """Play one agent against displays that it cannot change."""
+    group = solution.group
+    player = Player(group, position, reader)
+    seen = tuple(solution.tracks[other].events for other in group.sees[position])
+    step = 0
+    for moment in solution.tracks[position].moments:
+        _grow_to(player, moment, seen)
+        if moment.step != step:
+            player.observe()
+            step = moment.step
+        player.decide(moment.step, moment.round, seen, moment.log_shown)
+    return player.track
+
+
+def _grow_to(player: Player, moment: Moment, seen: tuple[Events, ...]) -> None:
+    for axis, length in enumerate(moment.log_shown.shape[1:]):
+        extra = length - player.shape[axis]
+        if extra:
+            player.grow(axis, seen[axis], extra)
+
+
+def exact_policy(solution: Solution, agent: str) -> Policy:
+    """The exact worths as a policy: for agents that cannot change what they are shown."""
+    moments = {(m.step, m.round): m for m in solution.tracks[solution.group.index[agent]].moments}
+
+    def policy(situation: Situation) -> Act:
+        return Act(moments[situation.step, situation.round].value)
+
+    return policy
+
+
+__all__ = [
+    "NEVER",
+    "Act",
+    "ExactReader",
+    "Play",
+    "Policy",
+    "Situation",
+    "adopt",
+    "difference",
+    "exact_policy",
+]
