@@ -14,14 +14,14 @@ exact agents among rule users are in ``play``.
 
 from __future__ import annotations
 
+from abc import ABC, abstractmethod
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
-from typing import Protocol
 
 import numpy as np
 
 from thumbwright.exact.contract import Plan, log_shown, plan
-from thumbwright.exact.evidence.base import FloatArray
+from thumbwright.exact.evidence.base import FloatArray, IntArray
 from thumbwright.exact.group import MINUS, PLUS, Agent, Group
 from thumbwright.exact.walk import NEAR, TIE, BoolArray, Walk, grown
 
@@ -94,6 +94,8 @@ class Reading:
         Which rows (own counts) and columns (histories) commit.
     value : ndarray of float, shape (C,)
         What each history is worth to the belief (nats); nan where it says nothing.
+    row : ndarray of int, shape (C,), or None
+        Which line of a rule decided, for counting.
     compared : bool
         Whether the masks came from comparing that value with the thresholds, so that near ties
         are to be reported.
@@ -103,13 +105,22 @@ class Reading:
     minus: BoolArray
     value: FloatArray
     compared: bool
+    row: IntArray | None = None
 
 
-class Reader(Protocol):
+class Reader(ABC):
     """Says which rows and columns of a walk commit, given what has been shown."""
 
+    @abstractmethod
     def read(self, scene: Scene) -> Reading:
         """The decisions of this round."""
+
+    def tell(self, scene: Scene, reading: Reading, calls: FloatArray, inside: FloatArray) -> None:
+        """Told what came of a reading.
+
+        ``calls`` and ``inside`` have shape (2, C): the probability, given plus and given minus,
+        of having been shown each history and answering now, and of being undecided before.
+        """
 
     def grow(self, shape: tuple[int, ...], axis: int, events: Events, extra: int) -> None:
         """Told that a seen agent gained ``extra`` events; ``shape`` is the shape before."""
@@ -151,15 +162,12 @@ class Solution:
         return sum(track.near_tie for track in self.tracks)
 
 
-class ExactReader:
+class ExactReader(Reader):
     """Bayesian belief: the history is worth the log ratio of its probabilities."""
 
     def read(self, scene: Scene) -> Reading:
         """What reaches a threshold with the exact worth of every history."""
         return by_value(scene, worth(scene.log_shown).ravel())
-
-    def grow(self, shape: tuple[int, ...], axis: int, events: Events, extra: int) -> None:
-        """Nothing is remembered between rounds."""
 
 
 def worth(log_probability: FloatArray) -> FloatArray:
@@ -242,8 +250,9 @@ class Player:
             gone = np.logaddexp(gone, self._certain)
             self._certain = None
         log_after = self.walk.log_undecided()
-        happened = np.exp(gone + flat).sum(axis=2)
-        self.track.answers[:, :, step] += happened
+        happened = np.exp(gone + flat)
+        self.track.answers[:, :, step] += happened.sum(axis=2)
+        self.reader.tell(scene, reading, happened.sum(axis=0), np.exp(log_before + flat))
         self.track.moments.append(
             Moment(
                 step,
@@ -272,15 +281,21 @@ class Player:
     def _lean(self, value: FloatArray, flat: FloatArray) -> None:
         """Of those still undecided: which answer does the belief favour at this round?"""
         belief = (self.prior + self.walk.tally)[:, None] + value[None, :]
-        even = ~(np.abs(belief) > TIE)
-        for row, mask in enumerate(((belief > 0) & ~even, (belief < 0) & ~even, even)):
-            self.track.leaning[row] = np.exp(self.walk.log_where(mask) + flat).sum(axis=1)
+        self.track.leaning[:] = [
+            np.exp(self.walk.log_where(mask) + flat).sum(axis=1) for mask in leanings(belief)
+        ]
 
     def grow(self, axis: int, events: Events, extra: int) -> None:
         """A seen agent gained ``extra`` events."""
         self.walk.grow(self.shape, axis, extra)
         self.reader.grow(self.shape, axis, events, extra)
         self.shape = (*self.shape[:axis], self.shape[axis] + extra, *self.shape[axis + 1 :])
+
+
+def leanings(belief: FloatArray) -> tuple[BoolArray, BoolArray, BoolArray]:
+    """Where a belief favours plus, where minus, and where neither."""
+    even = ~(np.abs(belief) > TIE)
+    return (belief > 0) & ~even, (belief < 0) & ~even, even
 
 
 class _Stage:

@@ -14,13 +14,12 @@ that the exact solution calls impossible. How often this happened is reported.
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from thumbwright.exact.engine import (
     Events,
-    ExactReader,
     Moment,
     Player,
     Reader,
@@ -119,7 +118,7 @@ def situation_of(step: int, round_: int, events: tuple[Events, ...], shape: tupl
     return Situation(step, round_, *(tuple(column) for column in columns))
 
 
-class RuleReader:
+class RuleReader(Reader):
     """Decides by a policy; counts how often each line is used if told how many there are."""
 
     def __init__(self, policy: Policy, prior_plus: float = 0.5, rows: int = 0) -> None:
@@ -135,38 +134,23 @@ class RuleReader:
         if act.minus_at is None or act.plus_at is None:
             reading = by_value(scene, value)
         else:
-            plus, minus = by_bars(scene, act)
-            reading = Reading(plus, minus, value, compared=False)
-        if self.usage is not None and act.row is not None:
-            self._count(scene, np.broadcast_to(act.row, shape).ravel(), reading)
-        return reading
+            count = scene.walk.count[:, None]
+            low, high = (np.broadcast_to(x, shape).ravel() for x in (act.minus_at, act.plus_at))
+            reading = Reading(count >= high, count <= low, value, compared=False)
+        row = None if act.row is None else np.broadcast_to(act.row, shape).ravel()
+        return replace(reading, row=row)
 
-    def grow(self, shape: tuple[int, ...], axis: int, events: Events, extra: int) -> None:
-        """Nothing is remembered between rounds."""
-
-    def _count(self, scene: Scene, row: IntArray, reading: Reading) -> None:
-        assert self.usage is not None
-        flat = scene.log_shown.reshape(2, -1)
-        used = row >= 0
-        calls = self._prior @ np.exp(scene.walk.log_where(reading.plus | reading.minus) + flat)
-        np.add.at(self.usage[:, 1], row[used], calls[used])
+    def tell(self, scene: Scene, reading: Reading, calls: FloatArray, inside: FloatArray) -> None:
+        """Count in which line's force the agent was, once a step, and answered."""
+        if self.usage is None or reading.row is None:
+            return
+        used = reading.row >= 0
+        np.add.at(self.usage[:, 1], reading.row[used], (self._prior @ calls)[used])
         if scene.round == 0:
-            inside = self._prior @ np.exp(scene.walk.log_undecided() + flat)
-            np.add.at(self.usage[:, 0], row[used], inside[used])
+            np.add.at(self.usage[:, 0], reading.row[used], (self._prior @ inside)[used])
 
 
-def by_bars(scene: Scene, act: Act) -> tuple[BoolArray, BoolArray]:
-    """Masks (R, C) of the rows at or beyond the bars of an act."""
-    assert act.minus_at is not None and act.plus_at is not None
-    shape = scene.log_shown.shape[1:]
-    count = scene.walk.count[:, None]
-    return (
-        count >= np.broadcast_to(act.plus_at, shape).ravel()[None, :],
-        count <= np.broadcast_to(act.minus_at, shape).ravel()[None, :],
-    )
-
-
-class DifferenceReader:
+class DifferenceReader(Reader):
     """Lets an agent leave as soon as two policies would act differently.
 
     What leaves "to plus" is the probability that the two ever differ on the same observations;
@@ -182,11 +166,8 @@ class DifferenceReader:
         differs = (one.plus != other.plus) | (one.minus != other.minus)
         return Reading(differs, (one.plus | one.minus) & ~differs, one.value, compared=False)
 
-    def grow(self, shape: tuple[int, ...], axis: int, events: Events, extra: int) -> None:
-        """Nothing is remembered between rounds."""
 
-
-class AmongOthersReader:
+class AmongOthersReader(Reader):
     """An exact agent that reads what it is shown by the exact solution, whoever shows it."""
 
     def __init__(self, solution: Solution, position: int) -> None:
@@ -333,15 +314,3 @@ def exact_policy(solution: Solution, agent: str) -> Policy:
 
     return policy
 
-
-__all__ = [
-    "NEVER",
-    "Act",
-    "ExactReader",
-    "Play",
-    "Policy",
-    "Situation",
-    "adopt",
-    "difference",
-    "exact_policy",
-]

@@ -13,6 +13,11 @@ from thumbwright.exact.evidence.base import Evidence
 from thumbwright.exact.group import Thresholds
 
 
+def log_odds(p: float) -> float:
+    """Log-odds (nats) of a probability strictly between 0 and 1."""
+    return math.log(p) - math.log1p(-p)
+
+
 def from_observations(minus: float, plus: float, evidence: Evidence, prior: float) -> Thresholds:
     """So many observations' worth of evidence, for coin evidence (prior in nats)."""
     symmetric = evidence.on_ladder and evidence.beta == 0.0 and len(evidence.plus) == 2
@@ -33,7 +38,7 @@ def from_probability(minus: float, plus: float) -> Thresholds:
                 f"a threshold as a probability must lie strictly between 0 and 1, not {value:g} "
                 f"({name})"
             )
-    return Thresholds(math.log(minus / (1.0 - minus)), math.log(plus / (1.0 - plus)))
+    return Thresholds(log_odds(minus), log_odds(plus))
 
 
 def from_error_rates(false_plus: float, false_minus: float, prior: float) -> Thresholds:

@@ -1,1 +1,59 @@
-"""Rule forms: one file per form, each behind the same small interface."""
+"""Rule forms: one file per form behind one small interface.
+
+A form module has ``NAME`` and
+
+    distil(pricer: Pricer, wanted: Wanted, progress) -> Distilled
+
+It makes a rule of at most ``wanted.rows`` rows from the exact situations in ``pricer`` and says in
+plain sentences how it was chosen. It prices candidates through the pricer and computes no
+probabilities of its own. To add a form, write the module and name it in :data:`MODULES`.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from importlib import import_module
+from types import ModuleType
+
+from thumbwright.distill.rules import Rule
+
+MODULES = ("lines", "table")
+"""The form modules of this package, in the order in which they are printed."""
+
+
+@dataclass(frozen=True)
+class Wanted:
+    """What a case asks of a rule.
+
+    Attributes
+    ----------
+    rows : int
+        Most rows.
+    inputs : tuple of str
+        What it may look at: "step", "shown", "thresholds".
+    max_accuracy_lost : float or None
+        Largest loss of accuracy against exact play; a form then takes the fewest rows within it.
+    """
+
+    rows: int
+    inputs: tuple[str, ...]
+    max_accuracy_lost: float | None = None
+
+
+@dataclass(frozen=True)
+class Distilled:
+    """A rule and how it came about.
+
+    ``information_kept`` and ``information_ceiling`` are shares of the log-loss gain of exact
+    worths over the best single value; None where that gain is nil or the form has no values.
+    """
+
+    rule: Rule
+    information_kept: float | None
+    information_ceiling: float | None
+    notes: tuple[str, ...]
+
+
+def form(name: str) -> ModuleType:
+    """The module of a form, imported when it is needed."""
+    return import_module(f"{__name__}.{name}")

@@ -17,6 +17,10 @@ from numpy.typing import NDArray
 
 FloatArray = NDArray[np.float64]
 
+IntArray = NDArray[np.int64]
+
+_ROUNDING = 1e-13
+
 Box = tuple[tuple[int, int], ...]
 """Half-open range of cells on each axis."""
 
@@ -58,68 +62,82 @@ def best_partitions(plus: FloatArray, minus: FloatArray, most: int) -> tuple[Par
     shape = plus.shape
     bases = [_bases(n) for n in shape]
     counts = tuple(n * (n + 1) // 2 for n in shape)
-    best = np.full((most + 1, *counts), -np.inf)
-    best[1:] = gain(_interval_sums(plus), _interval_sums(minus))
-    # Which axis, where and how many boxes for the part below the cut; 0 axis code = no cut.
-    choice = np.zeros((3, most + 1, *counts), dtype=np.int16)
+    alone = gain(_interval_sums(plus), _interval_sums(minus))
+    # best[k - 1] over all boxes; choice holds the axis + 1 (0: uncut), the cut, and how many
+    # boxes lie below it.
+    best = np.broadcast_to(alone, (most, *counts)).copy()
+    choice = np.zeros((3, most, *counts), dtype=np.int16)
     for lengths in sorted(product(*(range(1, n + 1) for n in shape)), key=sum):
-        room = [n - length + 1 for n, length in zip(shape, lengths, strict=True)]
-        here = tuple(
-            slice(base[length], base[length] + r)
-            for base, length, r in zip(bases, lengths, room, strict=True)
-        )
-        for axis, length in enumerate(lengths):
-            for cut in range(1, length):
-                below, above = list(here), list(here)
-                base = bases[axis]
-                below[axis] = slice(base[cut], base[cut] + room[axis])
-                above[axis] = slice(
-                    base[length - cut] + cut, base[length - cut] + cut + room[axis]
-                )
-                _try_cut(best, choice, here, tuple(below), tuple(above), axis, cut)
-        _fewer_is_enough(best, choice, here)
+        useful = min(most, int(np.prod(lengths)))
+        if useful > 1:
+            here = tuple(
+                np.arange(base[length], base[length] + n - length + 1)
+                for base, length, n in zip(bases, lengths, shape, strict=True)
+            )
+            _cut(best, choice, bases, here, lengths, useful)
     whole = tuple(base[n] for base, n in zip(bases, shape, strict=True))
     return tuple(
         Partition(
             tuple(_trace(choice, bases, k, tuple((0, n) for n in shape))),
             float(best[(k, *whole)]),
         )
-        for k in range(1, most + 1)
+        for k in range(most)
     )
 
 
-def _try_cut(
+def _cut(
     best: FloatArray,
     choice: NDArray[np.int16],
-    here: tuple[slice, ...],
-    below: tuple[slice, ...],
-    above: tuple[slice, ...],
-    axis: int,
-    cut: int,
+    bases: list[list[int]],
+    here: tuple[IntArray, ...],
+    lengths: tuple[int, ...],
+    useful: int,
 ) -> None:
-    most = len(best) - 1
-    for k in range(2, most + 1):
-        target = best[(k, *here)]
-        for part in range(1, k):
-            value = best[(part, *below)] + best[(k - part, *above)]
-            # A margin keeps rounding from preferring a cut that gains nothing.
-            better = value > target + 1e-13 * np.abs(target) + 1e-300
-            if better.any():
-                target[better] = value[better]
-                for row, code in enumerate((axis + 1, cut, part)):
-                    choice[(row, k, *here)][better] = code
-
-
-def _fewer_is_enough(
-    best: FloatArray, choice: NDArray[np.int16], here: tuple[slice, ...]
-) -> None:
-    """Where k boxes gain nothing over k - 1, take over the cut of k - 1."""
-    for k in range(2, len(best)):
-        fewer, target = best[(k - 1, *here)], best[(k, *here)]
-        same = fewer >= target - 1e-13 * np.abs(target)
-        target[same] = fewer[same]
+    """Find the best cuts of all boxes of one size, into 2 .. ``useful`` boxes each."""
+    room = tuple(len(index) for index in here)
+    top = best[np.ix_([0], *here)][0]
+    found = np.broadcast_to(top, (useful, *room)).copy()
+    codes = np.zeros((3, useful, *room), dtype=np.int16)
+    for axis, length in enumerate(lengths):
+        if length == 1:
+            continue
+        base, cuts = bases[axis], np.arange(1, length)
+        starts = np.arange(room[axis])
+        # Boxes below and above every cut: axes (boxes, cut, position on each axis).
+        lows = np.array(base)[cuts][:, None] + starts
+        highs = np.array(base)[length - cuts][:, None] + cuts[:, None] + starts
+        below = _gathered(best[: useful - 1], here, axis, lows)
+        above = _gathered(best[: useful - 1], here, axis, highs)
+        for k in range(1, useful):
+            sums = (below[:k] + above[k - 1 :: -1]).reshape(k * len(cuts), *room)
+            value = sums.max(axis=0)
+            # Of cuts that are equal but for rounding the first counts, so that ties are stable.
+            first = (sums >= value - _ROUNDING * np.abs(value)).argmax(axis=0)
+            better = value > found[k] + _ROUNDING * np.abs(found[k])
+            found[k] = np.where(better, value, found[k])
+            fresh = (np.int64(axis + 1), cuts[first % len(cuts)], first // len(cuts))
+            for code, number in zip(codes, fresh, strict=True):
+                code[k] = np.where(better, number, code[k])
+    for k in range(1, useful):
+        same = found[k - 1] >= found[k] - _ROUNDING * np.abs(found[k])
+        found[k] = np.where(same, found[k - 1], found[k])
+        codes[:, k] = np.where(same, codes[:, k - 1], codes[:, k])
+    # More boxes than cells are never needed.
+    for k in range(1, len(best)):
+        best[(k, *np.ix_(*here))] = found[min(k, useful - 1)]
         for row in range(3):
-            choice[(row, k, *here)][same] = choice[(row, k - 1, *here)][same]
+            choice[(row, k, *np.ix_(*here))] = codes[row, min(k, useful - 1)]
+
+
+def _gathered(
+    best: FloatArray, here: tuple[IntArray, ...], axis: int, rows: IntArray
+) -> FloatArray:
+    """``best`` of the boxes at ``rows`` (cut, position) on one axis and ``here`` on the others."""
+    picked = best
+    for other, index in enumerate(here):
+        if other != axis:
+            picked = np.take(picked, index, axis=other + 1)
+    return np.moveaxis(np.take(picked, rows, axis=axis + 1), axis + 1, 1)
 
 
 def _bases(n: int) -> list[int]:
@@ -142,6 +160,7 @@ def _interval_sums(cells: FloatArray) -> FloatArray:
 
 
 def _trace(choice: NDArray[np.int16], bases: list[list[int]], k: int, box: Box) -> list[Box]:
+    """The boxes into which a box is best cut when k cuts may be made."""
     index = tuple(
         base[stop - start] + start for base, (start, stop) in zip(bases, box, strict=True)
     )
@@ -151,4 +170,5 @@ def _trace(choice: NDArray[np.int16], bases: list[list[int]], k: int, box: Box) 
     start, stop = box[axis - 1]
     below = (*box[: axis - 1], (start, start + cut), *box[axis:])
     above = (*box[: axis - 1], (start + cut, stop), *box[axis:])
-    return _trace(choice, bases, part, below) + _trace(choice, bases, k - part, above)
+    # k cuts leave one for this, "part" for below and the rest for above.
+    return _trace(choice, bases, part, below) + _trace(choice, bases, k - 1 - part, above)

@@ -1,0 +1,122 @@
+"""What one run of the main job found: the plain data that the sheet and every export read.
+
+Built once by ``distill.job``; frozen; no export computes a figure of its own.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+from thumbwright.distill.case import Case
+from thumbwright.distill.rules import Rule
+
+
+@dataclass(frozen=True)
+class Figures:
+    """How one way of playing turns out (probabilities; steps).
+
+    ``given_plus`` and ``given_minus`` each hold the keys ``plus``, ``minus``, ``undecided``
+    (what the agent has shown by the horizon) and ``steps`` (mean number of steps used; an
+    agent that is undecided at the horizon has used all of them). ``wrong_given_plus`` and
+    ``wrong_given_minus`` count the answers shown, not those forced at the horizon.
+    ``risk`` is ``None`` only where no costs are known or could be inferred.
+    """
+
+    given_plus: dict[str, float]
+    given_minus: dict[str, float]
+    wrong_given_plus: float
+    wrong_given_minus: float
+    accuracy: float
+    mean_step: float
+    risk: float | None
+    accuracy_lost: float
+    delay_added: float
+    benefit_kept: float | None
+    off_model: float
+
+
+@dataclass(frozen=True)
+class RowUse:
+    """How often a row is in force: mean steps per outing, and share of outings it decides."""
+
+    steps_in_force: float
+    calls: float
+
+
+@dataclass(frozen=True)
+class FormResult:
+    """A distilled rule with its price.
+
+    ``notes`` are plain sentences on how it was chosen (rows merged, ceiling met or not).
+    ``information_ceiling`` is the most that any grouping into as many rows could keep.
+    """
+
+    rule: Rule
+    figures: Figures
+    uses: tuple[RowUse, ...]
+    information_kept: float | None
+    information_ceiling: float | None
+    notes: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class CostBasis:
+    """The losses used: stated in the case, or inferred from the agent's thresholds.
+
+    ``inferred`` is False where the case states them. ``loss_ratio`` (false_plus over
+    false_minus) and ``per_step`` ranges are ``(low, high)``, losses scaled so that their
+    mean is 1; ``None`` where costs were stated.
+    """
+
+    false_plus: float
+    false_minus: float
+    per_step: float
+    undecided: float | None
+    inferred: bool
+    loss_ratio_range: tuple[float, float] | None
+    per_step_range: tuple[float, float] | None
+    benefit_kept_range: tuple[float, float] | None
+
+
+@dataclass(frozen=True)
+class WorthCurve:
+    """The worth of one joint shown state over the steps, for the modeller's chart (nats).
+
+    ``low`` and ``high`` span the histories that show the same states; equal where the time
+    of a commitment does not matter. Steps at which the state cannot occur hold ``None``.
+    """
+
+    label: str
+    shows: tuple[str, ...]
+    steps: tuple[int, ...]
+    worth: tuple[float | None, ...]
+    low: tuple[float | None, ...]
+    high: tuple[float | None, ...]
+
+
+@dataclass(frozen=True)
+class Findings:
+    """Everything a sheet prints about one agent of one case."""
+
+    case: Case
+    digest: str
+    version: str
+    agent: str
+    seen: tuple[str, ...]
+    forms: dict[str, FormResult]
+    exact: Figures
+    plain_count: Figures
+    alone: Figures
+    costs: CostBasis
+    watching_is_worth: bool
+    count_is_whole: bool
+    alpha: float | None
+    beta: float | None
+    value_offsets: tuple[int, ...] | None
+    worth_curves: tuple[WorthCurve, ...]
+    labels: tuple[str, ...]
+    is_exact: bool
+    caveats: tuple[str, ...]
+    near_tie_mass: float
+    example: tuple[dict[str, Any], ...]

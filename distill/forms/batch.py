@@ -1,0 +1,127 @@
+"""Pricing many layouts of lines in one go, where the network allows it; else one by one."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from thumbwright.distill.costs import Pricer, Tally, average
+from thumbwright.distill.forms.runs import Layout, as_rule, count_range, threshold_order
+from thumbwright.distill.situations import values_of
+from thumbwright.exact.evidence.base import FloatArray, IntArray
+from thumbwright.exact.many import Bars, ManyTallies, changed_many, fits, play_many
+
+MOST_AT_ONCE = 400
+"""Layouts priced together: more would only cost memory."""
+
+
+class Batch:
+    """Prices layouts of one agent's lines; results do not depend on which way is taken."""
+
+    def __init__(self, pricer: Pricer) -> None:
+        self._pricer = pricer
+        self._together = all(
+            fits(s.solution.group, s.solution.group.index[pricer.agent]) for s in pricer.settings
+        )
+        situations = pricer.situations
+        shape = (len(pricer.settings), 3, pricer.group.horizon + 1)
+        if self._together:
+            where = (situations.setting, situations.states[:, 0], situations.step)
+            flat = np.ravel_multi_index(where, shape)
+            self._masses = [
+                np.bincount(flat, side, int(np.prod(shape))).reshape(shape)
+                for side in (situations.plus, situations.minus)
+            ]
+
+    def objectives(self, layouts: Sequence[Layout]) -> list[float]:
+        """What a search minimises, for each layout."""
+        return [self._pricer.objective(found) for found in self.tallies(layouts)]
+
+    def tallies(self, layouts: Sequence[Layout]) -> list[Tally]:
+        """How each layout turns out."""
+        if not self._together:
+            return [self._pricer.rule_tally(as_rule(self._pricer, layout)) for layout in layouts]
+        found: list[Tally] = []
+        for start in range(0, len(layouts), MOST_AT_ONCE):
+            part = layouts[start : start + MOST_AT_ONCE]
+            played = [
+                (
+                    setting.weight,
+                    play_many(setting.solution, self._position, self._bars(part, number)),
+                )
+                for number, setting in enumerate(self._pricer.settings)
+            ]
+            for i in range(len(part)):
+                found.append(average([(weight, _one(many, i)) for weight, many in played]))
+        return found
+
+    def changed(self, original: Layout, layouts: Sequence[Layout]) -> list[float]:
+        """Probability that each layout ever acts differently from the original in one outing."""
+        pricer = self._pricer
+        if not self._together:
+            rule = as_rule(pricer, original)
+            return [pricer.changed(rule, as_rule(pricer, layout)) for layout in layouts]
+        prior = np.array([pricer.prior_plus, 1.0 - pricer.prior_plus])
+        found: list[float] = []
+        for start in range(0, len(layouts), MOST_AT_ONCE):
+            part = layouts[start : start + MOST_AT_ONCE]
+            total = np.zeros(len(part))
+            for number, setting in enumerate(pricer.settings):
+                one, many = self._bars([original], number), self._bars(part, number)
+                changed = changed_many(setting.solution, self._position, one, many)
+                total += setting.weight * (changed @ prior)
+            found += total.tolist()
+        return found
+
+    @property
+    def _position(self) -> int:
+        return self._pricer.group.index[self._pricer.agent]
+
+    def _bars(self, layouts: Sequence[Layout], setting: int) -> Bars:
+        """Layouts as bars per step and shown state, in one setting."""
+        pricer = self._pricer
+        lowest, highest = count_range(pricer)
+        shape = (len(layouts), pricer.group.horizon + 1, 3)
+        low: IntArray = np.full(shape, lowest - 1, dtype=np.int64)
+        high: IntArray = np.full(shape, highest + 1, dtype=np.int64)
+        value: FloatArray = np.zeros((len(layouts), 3))
+        names = pricer.settings[setting].names
+        order = threshold_order(pricer)
+        for i, layout in enumerate(layouts):
+            for sides, lines in layout.groups:
+                if len(sides) > 1 and order.index(names[pricer.seen[0]]) not in sides[1]:
+                    continue
+                states = sorted(sides[0])
+                for line in lines:
+                    where = (i, slice(line.start, line.stop + 1), states)
+                    if line.minus_at is not None:
+                        low[where] = line.minus_at
+                    if line.plus_at is not None:
+                        high[where] = line.plus_at
+                value[i, states] = self._pooled(sides, lines[-1].start)
+        return Bars(low, high, value)
+
+    def _pooled(self, sides: tuple[frozenset[int], ...], start: int) -> float:
+        """Best value of the row that is in force at the horizon."""
+        pricer = self._pricer
+        settings = range(len(pricer.settings))
+        if len(sides) > 1:
+            order = threshold_order(pricer)
+            settings = [
+                k for k in settings if order.index(pricer.settings[k].names[pricer.seen[0]]) in sides[1]
+            ]
+        where = np.ix_(list(settings), sorted(sides[0]), range(start, pricer.group.horizon + 1))
+        plus, minus = (side[where].sum() for side in self._masses)
+        return float(values_of(np.array([plus]), np.array([minus]))[0])
+
+
+def _one(many: ManyTallies, i: int) -> Tally:
+    return Tally(
+        many.plus[i],
+        many.minus[i],
+        many.undecided[i],
+        many.steps[i],
+        many.lean_plus[i],
+        many.lean_minus[i],
+    )

@@ -1,0 +1,133 @@
+"""Rules in action: which row holds in which situation, and what the row says there.
+
+Rows are looked up by step and shown states, so a rule is compiled once into a grid
+[step, state of each seen agent] of row numbers. Gaps and overlaps show in the same grid.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thumbwright.distill.rules import SHOWN, Row, Rule
+from thumbwright.exact.evidence.base import FloatArray, IntArray
+from thumbwright.exact.group import Group
+from thumbwright.exact.play import NEVER, Act, Policy, Situation
+
+NO_ROW = -1
+
+
+@dataclass(frozen=True)
+class Grid:
+    """A rule laid out over steps and shown states.
+
+    Attributes
+    ----------
+    row : ndarray of int, shape (T + 1, 3, ..., 3)
+        The first row that holds for each step (entry 0 is unused) and joint shown state;
+        ``NO_ROW`` in a gap.
+    count : ndarray of int, same shape
+        How many rows hold there.
+    """
+
+    row: IntArray
+    count: IntArray
+
+
+def lay_out(rule: Rule, horizon: int, names: Mapping[str, str]) -> Grid:
+    """The grid of a rule where the seen agents have the thresholds of these names."""
+    shape = (horizon + 1, *(len(SHOWN) for _ in rule.seen))
+    row_of, count = np.full(shape, NO_ROW, dtype=np.int64), np.zeros(shape, dtype=np.int64)
+    for number in reversed(range(len(rule.rows))):
+        row = rule.rows[number]
+        if any(
+            names.get(agent) not in accepted
+            for agent, accepted in row.thresholds.items()
+            if agent in names
+        ):
+            continue
+        where = holds(row, rule.seen, horizon)
+        row_of[where] = number
+        count[where] += 1
+    return Grid(row_of, count)
+
+
+def holds(row: Row, seen: Sequence[str], horizon: int) -> tuple[NDArray[np.int64], ...]:
+    """Index of the grid cells in which a row holds, thresholds aside."""
+    first = 1 if row.step_from is None else max(1, row.step_from)
+    last = horizon if row.step_to is None else min(horizon, row.step_to)
+    states = [
+        [code for code, state in enumerate(SHOWN) if state in row.shows.get(agent, SHOWN)]
+        for agent in seen
+    ]
+    return np.ix_(np.arange(first, last + 1), *(np.array(s, dtype=np.int64) for s in states))
+
+
+def rule_policy(
+    rule: Rule, group: Group, names: Mapping[str, str], row_values: FloatArray | None = None
+) -> Policy:
+    """The rule as a policy of its agent.
+
+    Parameters
+    ----------
+    rule : Rule
+    group : Group
+    names : mapping
+        Names of the seen agents' thresholds, where the rule may look at them.
+    row_values : ndarray of float, shape (rows,), optional
+        For a rule of bars, the worth of each row (nats): it decides which answer an agent favours
+        that is undecided at the horizon. Zero where left out.
+    """
+    grid = lay_out(rule, group.horizon, names).row
+    minus_at, plus_at = _bars(rule)
+    if rule.has_bars:
+        values = np.zeros(len(rule.rows)) if row_values is None else row_values
+    else:
+        values = np.array([0.0 if row.value is None else row.value for row in rule.rows])
+    # One more entry at the end is what NO_ROW (-1) picks: no news, no answer.
+    values, minus_at, plus_at = np.append(values, 0.0), np.append(minus_at, -NEVER), np.append(
+        plus_at, NEVER
+    )
+
+    def policy(situation: Situation) -> Act:
+        row = grid[situation.step][situation.states]
+        if not rule.has_bars:
+            return Act(values[row], row=row)
+        return Act(values[row], minus_at[row], plus_at[row], row)
+
+    return policy
+
+
+def _bars(rule: Rule) -> tuple[IntArray, IntArray]:
+    low = [-NEVER if row.minus_at is None else row.minus_at for row in rule.rows]
+    high = [NEVER if row.plus_at is None else row.plus_at for row in rule.rows]
+    return np.array(low, dtype=np.int64), np.array(high, dtype=np.int64)
+
+
+def alone_policy(_situation: Situation) -> Act:
+    """Nobody is looked at."""
+    return Act(np.zeros(()))
+
+
+def plain_count_policy(group: Group, agent: str) -> Policy:
+    """A commitment seen counts as that neighbour's threshold less the prior, silence as nothing.
+
+    Where the neighbour's thresholds are unknown the mean over their possibilities is taken.
+    """
+    worths = []
+    for other in group.agents[group.index[agent]].sees:
+        bounds = group.agents[group.index[other]].thresholds
+        plus = sum(share * bound.plus for share, bound in bounds) - group.prior
+        minus = sum(share * bound.minus for share, bound in bounds) - group.prior
+        worths.append(np.array([0.0, plus, minus]))
+
+    def policy(situation: Situation) -> Act:
+        value: FloatArray = np.zeros(())
+        for worth, states in zip(worths, situation.states, strict=True):
+            value = value + worth[states]
+        return Act(value)
+
+    return policy
