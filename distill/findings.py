@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from thumbwright.distill.case import Case
-from thumbwright.distill.rules import Rule
+from thumbwright.distill.rules import Row, Rule
 
 
 @dataclass(frozen=True)
@@ -97,7 +97,32 @@ class WorthCurve:
 
 @dataclass(frozen=True)
 class Findings:
-    """Everything a sheet prints about one agent of one case."""
+    """Everything a sheet prints about one agent of one case.
+
+    Attributes
+    ----------
+    costs : CostBasis or None
+        None where the case states no costs and none could be inferred; then no risk is known.
+    watching_is_worth : bool
+        False where exact watching saves less than 1 % of the risk alone.
+    count_is_whole : bool
+        Whether a person can keep the own count.
+    alpha, beta : float or None
+        Worth (nats) of one count and of one step; None off a ladder.
+    value_offsets : tuple of int or None
+        By how much each possible observation moves the own count, in the order of ``labels``.
+    leans : mapping of agent id to "minus", "plus" or "even"
+        Which of its thresholds a seen agent reaches more easily, counted from the prior.
+    alone_rows : tuple of Row
+        The bars of exact play with nobody to watch, by range of steps: for an agent that is unsure
+        whether anyone is on watch. Empty where there is no whole count.
+    is_exact : bool
+        Whether nothing in any figure was split, dropped, sampled or read off-model.
+    example : tuple of dict
+        A made-up run: ``step``, ``shows`` (id to state), ``sign`` ("plus", "minus" or a label),
+        ``peg`` (own count), ``line`` (row number), ``act`` ("watch", "plus", "minus"). Steps at
+        which nothing changes may be left out.
+    """
 
     case: Case
     digest: str
@@ -108,12 +133,14 @@ class Findings:
     exact: Figures
     plain_count: Figures
     alone: Figures
-    costs: CostBasis
+    costs: CostBasis | None
     watching_is_worth: bool
     count_is_whole: bool
     alpha: float | None
     beta: float | None
     value_offsets: tuple[int, ...] | None
+    leans: dict[str, str]
+    alone_rows: tuple[Row, ...]
     worth_curves: tuple[WorthCurve, ...]
     labels: tuple[str, ...]
     is_exact: bool

@@ -22,6 +22,7 @@ import numpy as np
 
 from thumbwright.exact.contract import Plan, log_shown, plan
 from thumbwright.exact.evidence.base import FloatArray, IntArray
+from thumbwright.exact.forecast import refuse_too_large
 from thumbwright.exact.group import MINUS, PLUS, Agent, Group
 from thumbwright.exact.walk import NEAR, TIE, BoolArray, Walk, grown
 
@@ -196,7 +197,13 @@ def solve(group: Group, progress: Progress | None = None) -> Solution:
     Solution
         Exact up to floating point: nothing is dropped, sampled or split beyond what the
         evidence says of itself.
+
+    Raises
+    ------
+    ModelError
+        Before anything is allocated, where the run would need more than half of the free memory.
     """
+    refuse_too_large(group)
     return Solution(group, tuple(run(group, [ExactReader() for _ in group.agents], progress)))
 
 

@@ -327,3 +327,15 @@ def as_rule(pricer: Pricer, layout: Layout, form: str = "lines") -> Rule:
                 )
             )
     return Rule(form, pricer.agent, seen, tuple(rows))
+
+
+def alone_rows(pricer: Pricer) -> tuple[Row, ...]:
+    """The bars of exact play with nobody to watch, by range of steps."""
+    horizon = pricer.group.horizon
+    steps = np.arange(1, horizon + 1)
+    low, high = exact_bars(pricer, np.zeros(horizon), steps)
+    lines: list[Line] = []
+    for step, pair in zip(steps, zip(low, high, strict=True), strict=True):
+        _append(lines, int(step), *_named(pricer, pair), True)
+    layout = Layout((((), tuple(lines)),))
+    return as_rule(pricer, layout).rows

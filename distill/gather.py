@@ -1,0 +1,206 @@
+"""The main job: from a case to its findings.
+
+Exact beliefs, then each rule form asked for, each priced, beside exact play, plain count and being
+alone; then what the sheet needs to explain itself: worth curves, an example, caveats.
+"""
+
+from __future__ import annotations
+
+from importlib.metadata import version
+
+import numpy as np
+
+from thumbwright.distill.assemble import Setting, losses_of, settings_of
+from thumbwright.distill.case import Case
+from thumbwright.distill.costs import Pricer
+from thumbwright.distill.example import example
+from thumbwright.distill.findings import Figures, Findings, FormResult, WorthCurve
+from thumbwright.distill.forms import MODULES, Wanted, form
+from thumbwright.distill.forms.runs import alone_rows
+from thumbwright.distill.rules import SHOWN
+from thumbwright.distill.situations import values_of
+from thumbwright.exact.engine import Progress
+from thumbwright.exact.errors import ModelError
+from thumbwright.exact.evidence.base import Evidence
+from thumbwright.exact.group import Group
+from thumbwright.exact.stopping import Cone, Losses, costs_behind
+
+MOST_CURVES = 9
+"""Joint shown states that get a curve of their own, the most frequent first."""
+
+
+def pricer_of(case: Case, progress: Progress | None = None) -> tuple[Pricer, str | None]:
+    """Exact play and the costs to price by; a sentence where no costs could be found.
+
+    Raises ModelError where the rule's agent has thresholds that are unknown.
+    """
+    settings = settings_of(case, progress)
+    agent = case.rule_agent
+    losses, cone, missing = losses_of(case), None, None
+    own = settings[0].solution.group.agents[settings[0].solution.group.index[agent]]
+    if len(own.thresholds) > 1:
+        raise ModelError(
+            f"agents.{agent}: the rule is for {agent}, so its own thresholds must be known; give "
+            "it one name under thresholds"
+        )
+    if losses is None:
+        losses, cone = _inferred(settings, agent)
+        if losses is None:
+            missing = (
+                "No costs are stated, and none make the thresholds best for an agent alone; "
+                "rules are compared by wrong answers only."
+            )
+    return Pricer.build(agent, settings, losses, cone), missing
+
+
+def _inferred(settings: tuple[Setting, ...], agent: str) -> tuple[Losses | None, Cone | None]:
+    group = settings[0].solution.group
+    own = group.agents[group.index[agent]]
+    cone = costs_behind(own.evidence, own.thresholds[0][1], group.prior, group.horizon)
+    return (None, None) if cone is None else (cone.middle, cone)
+
+
+def gather(case: Case, progress: Progress | None = None) -> Findings:
+    """Everything that is printed about the rule's agent of a case."""
+    pricer, missing = pricer_of(case, progress)
+    wanted = Wanted(case.rule.rows, tuple(case.rule.inputs), case.rule.max_accuracy_lost)
+    forms = {
+        name: _form_result(pricer, name, wanted, progress)
+        for name in MODULES
+        if name in case.rule.forms
+    }
+    main = next(iter(forms.values()))
+    exact = pricer.figures(pricer.exact_tally)
+    plain = pricer.figures(pricer.plain_count_tally())
+    alone = pricer.figures(pricer.alone_tally)
+    evidence = _evidence(pricer)
+    caveats = _caveats(pricer, [*(f.figures for f in forms.values()), plain, alone], missing)
+    return Findings(
+        case=case,
+        digest=case.digest,
+        version=version("thumbwright"),
+        agent=pricer.agent,
+        seen=pricer.seen,
+        forms=forms,
+        exact=exact,
+        plain_count=plain,
+        alone=alone,
+        costs=pricer.basis(pricer.rule_tally(main.rule)),
+        watching_is_worth=pricer.watching_is_worth,
+        count_is_whole=evidence.countable,
+        alpha=float(evidence.alpha[0]) if evidence.on_ladder else None,
+        beta=evidence.beta if evidence.on_ladder else None,
+        value_offsets=tuple(map(int, evidence.offsets[:, 0])) if evidence.countable else None,
+        leans=_leans(pricer.group, pricer.seen),
+        alone_rows=alone_rows(pricer) if evidence.countable and evidence.alpha[0] > 0 else (),
+        worth_curves=worth_curves(pricer, case),
+        labels=evidence.labels,
+        is_exact=_is_exact(pricer, [*(f.figures for f in forms.values()), plain, alone]),
+        caveats=caveats,
+        near_tie_mass=sum(s.weight * s.solution.near_tie_mass for s in pricer.settings),
+        example=example(pricer, main.rule),
+    )
+
+
+def _form_result(
+    pricer: Pricer, name: str, wanted: Wanted, progress: Progress | None
+) -> FormResult:
+    made = form(name).distil(pricer, wanted, progress)
+    found, uses = pricer.rule_uses(made.rule)
+    return FormResult(
+        made.rule,
+        pricer.figures(found),
+        uses,
+        made.information_kept,
+        made.information_ceiling,
+        made.notes,
+    )
+
+
+def _evidence(pricer: Pricer) -> Evidence:
+    return pricer.group.agents[pricer.group.index[pricer.agent]].evidence
+
+
+def _leans(group: Group, seen: tuple[str, ...]) -> dict[str, str]:
+    leans = {}
+    for other in seen:
+        bounds = group.agents[group.index[other]].thresholds
+        up = sum(share * bound.plus for share, bound in bounds) - group.prior
+        down = group.prior - sum(share * bound.minus for share, bound in bounds)
+        near = abs(up - down) <= 1e-9 * max(abs(up), abs(down))
+        leans[other] = "even" if near else "minus" if down < up else "plus"
+    return leans
+
+
+def _is_exact(pricer: Pricer, figures: list[Figures]) -> bool:
+    split = any(agent.evidence.split for agent in pricer.group.agents)
+    return not split and all(f.off_model == 0.0 for f in figures)
+
+
+def _caveats(pricer: Pricer, figures: list[Figures], missing: str | None) -> tuple[str, ...]:
+    """Plain sentences on what in the figures is not exact, or rests on a convention."""
+    said = []
+    for evidence in {id(a.evidence): a.evidence for a in pricer.group.agents}.values():
+        if evidence.split:
+            said.append(
+                f"{evidence.kind.capitalize()} evidence was split onto a ladder with steps of "
+                f"{evidence.split.step:.4g} nats; a ladder about twice as fine moved error "
+                f"probabilities and mean steps of an agent alone by less than "
+                f"{evidence.split.change:.2g} (relative)."
+            )
+        if evidence.kind == "poisson":
+            said.append("Counts in the tail of the Poisson law, below 1e-15, were cut.")
+    odd = max((f.off_model for f in figures), default=0.0)
+    if odd > 0:
+        said.append(
+            "Others take the agent for exact; by a rule it shows them what their model calls "
+            f"impossible up to {odd:.3g} times per outing, which they read as the same call at the "
+            "latest earlier moment at which the model allowed it, or as no news."
+        )
+    if missing:
+        said.append(missing)
+    if not pricer.watching_is_worth:
+        said.append("Watching is worth nothing here: exact watching saves less than 1 % of the risk.")
+    return tuple(said)
+
+
+def worth_curves(pricer: Pricer, case: Case) -> tuple[WorthCurve, ...]:
+    """The pooled worth of each joint shown state over the steps, with the span of histories."""
+    situations = pricer.situations
+    joint = situations.joint
+    mass = np.bincount(joint, situations.plus + situations.minus)
+    often = sorted(range(len(mass)), key=lambda k: (-mass[k], k))[:MOST_CURVES]
+    steps = tuple(range(1, pricer.group.horizon + 1))
+    curves = []
+    for code in sorted(k for k in often if mass[k] > 0):
+        here = joint == code
+        states = tuple(SHOWN[s] for s in situations.states[here][0])
+        columns: list[list[float | None]] = [[], [], []]
+        for step in steps:
+            cell = here & (situations.step == step)
+            if not cell.any():
+                numbers: list[float | None] = [None, None, None]
+            else:
+                pooled = values_of(
+                    situations.plus[cell].sum(keepdims=True),
+                    situations.minus[cell].sum(keepdims=True),
+                )
+                worths = situations.worth[cell]
+                numbers = [float(pooled[0]), float(worths.min()), float(worths.max())]
+            for column, number in zip(columns, numbers, strict=True):
+                column.append(number)
+        curves.append(
+            WorthCurve(_state_label(case, pricer.seen, states), states, steps, *map(tuple, columns))
+        )
+    return tuple(curves)
+
+
+def _state_label(case: Case, seen: tuple[str, ...], states: tuple[str, ...]) -> str:
+    words = {
+        "undecided": case.words.shows_nothing,
+        "plus": case.words.shows_plus,
+        "minus": case.words.shows_minus,
+    }
+    if len(seen) == 1:
+        return words[states[0]]
+    return "; ".join(f"{case.agents[a].name}: {words[s]}" for a, s in zip(seen, states, strict=True))

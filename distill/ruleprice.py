@@ -1,0 +1,172 @@
+"""Pricing a rule that somebody hands in: is it whole, what does it cost, is every row used?"""
+
+from __future__ import annotations
+
+from dataclasses import asdict
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+
+from thumbwright.distill.case import Case
+from thumbwright.distill.costs import Pricer
+from thumbwright.distill.faults import Faults
+from thumbwright.distill.playing import lay_out
+from thumbwright.distill.rule_reading import read_rule
+from thumbwright.distill.rules import SHOWN, Rule
+from thumbwright.distill.situations import Situations
+
+KNOWN = ("exact", "plain-count", "alone")
+"""Ways of playing that have a name and need no file."""
+
+
+def priced(case: Case, pricer: Pricer, rule: str) -> dict[str, Any]:
+    """Figures of a rule beside exact play, plain count and being alone.
+
+    Parameters
+    ----------
+    case : Case
+    pricer : Pricer
+    rule : str
+        One of :data:`KNOWN`, or the path of a CSV file.
+
+    Returns
+    -------
+    dict
+        ``figures``, ``others`` (name to figures), ``rows``, ``remarks``, ``basis``.
+
+    Raises
+    ------
+    Faults
+        Where the file cannot be read as a rule of this case, or its rows leave gaps or overlap.
+    """
+    plain = pricer.plain_count_tally()
+    others = {"exact": pricer.exact_tally, "plain-count": plain, "alone": pricer.alone_tally}
+    rows: list[dict[str, Any]] = []
+    remarks: list[str] = []
+    if rule in KNOWN:
+        tally = others[rule]
+    else:
+        read = _read(case, pricer, rule)
+        faults = _gaps_and_overlaps(pricer, read, rule)
+        if faults:
+            raise Faults(faults)
+        if read.has_bars:
+            remarks += _refused_bars(pricer, rule)
+        tally, uses = pricer.rule_uses(read)
+        rows_here = pricer.situations.rows_of(read, pricer.settings)
+        for number, (row, use) in enumerate(zip(read.rows, uses, strict=True)):
+            rows.append({"row": number + 1, **_plain_row(row), **asdict(use)})
+            if not (rows_here == number).any():
+                remarks.append(f"row {number + 1} never applies: no such situation can arise")
+    figures = pricer.figures(tally)
+    if figures.risk is not None and figures.benefit_kept is not None and figures.benefit_kept < 0:
+        remarks.append("this rule is worse than ignoring the neighbours")
+    return {
+        "figures": asdict(figures),
+        "others": {name: asdict(pricer.figures(one)) for name, one in others.items()},
+        "rows": rows,
+        "remarks": remarks,
+        "basis": pricer.basis(tally),
+    }
+
+
+def _read(case: Case, pricer: Pricer, path: str) -> Rule:
+    if not Path(path).exists() and not path.lower().endswith(".csv"):
+        raise Faults(
+            [f"{path}: no such rule (allowed: the path of a CSV file, or {', '.join(KNOWN)})"]
+        )
+    evidence = pricer.group.agents[pricer.group.index[pricer.agent]].evidence
+    return read_rule(
+        path,
+        seen=pricer.seen,
+        threshold_names=case.rule.covers,
+        agent=pricer.agent,
+        alpha=float(evidence.alpha[0]) if evidence.kind == "coin" else None,
+    )
+
+
+def _refused_bars(pricer: Pricer, path: str) -> list[str]:
+    evidence = pricer.group.agents[pricer.group.index[pricer.agent]].evidence
+    if not evidence.on_ladder:
+        raise Faults(
+            [
+                f"{path}: bars on the own count need evidence whose own count is one whole number, "
+                f"which this {evidence.kind} evidence has not; give values in nats instead"
+            ]
+        )
+    if evidence.split:
+        return [f"bars are on the tally in steps of {evidence.split.step:.6g} nats"]
+    return []
+
+
+def _gaps_and_overlaps(pricer: Pricer, rule: Rule, path: str) -> list[str]:
+    """One message with an example for gaps, and one for overlaps, among what can arise."""
+    situations = pricer.situations
+    none, several = _cells(pricer, rule)
+    faults = []
+    if none.any():
+        faults.append(
+            f"{path}: rows: no row holds {_where(situations, none, pricer)}; add one, or widen "
+            "a row"
+        )
+    if several.any():
+        example = int(np.flatnonzero(several)[0])
+        numbers = _rows_there(pricer, rule, example)
+        faults.append(
+            f"{path}: rows {' and '.join(map(str, numbers))} all hold "
+            f"{_where(situations, several, pricer)}; narrow all but one"
+        )
+    return faults
+
+
+def _cells(pricer: Pricer, rule: Rule) -> tuple[np.ndarray, np.ndarray]:  # type: ignore[type-arg]
+    situations = pricer.situations
+    count = np.ones(len(situations.step), dtype=np.int64)
+    for number, setting in enumerate(pricer.settings):
+        here = situations.setting == number
+        grid = lay_out(rule, pricer.group.horizon, setting.names).count
+        count[here] = grid[(situations.step[here], *situations.states[here].T)]
+    return count == 0, count > 1
+
+
+def _rows_there(pricer: Pricer, rule: Rule, situation: int) -> list[int]:
+    """Numbers of the rows that hold in one situation."""
+    situations = pricer.situations
+    names = pricer.settings[int(situations.setting[situation])].names
+    cell = (int(situations.step[situation]), *map(int, situations.states[situation]))
+    numbers = []
+    for number, row in enumerate(rule.rows):
+        single = Rule(rule.form, rule.agent, rule.seen, (row,))
+        if lay_out(single, pricer.group.horizon, names).count[cell]:
+            numbers.append(number + 1)
+    return numbers
+
+
+def _where(situations: Situations, mask: np.ndarray, pricer: Pricer) -> str:  # type: ignore[type-arg]
+    """An example of the masked situations in words, and how many steps and states more there are."""
+    example = int(np.flatnonzero(mask)[0])
+    parts = [f"at step {int(situations.step[example])}"]
+    parts += [
+        f"with {agent} showing {SHOWN[int(code)]}"
+        for agent, code in zip(situations.seen, situations.states[example], strict=True)
+    ]
+    names = pricer.settings[int(situations.setting[example])].names
+    parts += [f"and {agent} having thresholds {name}" for agent, name in names.items()]
+    cells = np.unique(
+        np.column_stack([situations.setting, situations.step, situations.states])[mask], axis=0
+    )
+    more = len(cells) - 1
+    return " ".join(parts) + (f" (and in {more} more situations)" if more else "")
+
+
+def _plain_row(row: Any) -> dict[str, Any]:
+    return {
+        "step_from": row.step_from,
+        "step_to": row.step_to,
+        "shows": {agent: [s for s in SHOWN if s in states] for agent, states in row.shows.items()},
+        "thresholds": {agent: sorted(names) for agent, names in row.thresholds.items()},
+        "nats": row.value,
+        "minus_at_or_below": row.minus_at,
+        "plus_at_or_above": row.plus_at,
+    }
