@@ -5,10 +5,8 @@ shows cannot come back to it, nobody else changes and its walk is played against
 of the exact solution. Otherwise the whole group is played again: the actual weights are those of
 this play, while the exact agents go on reading what they see by the exact solution.
 
-Off-model histories. A rule may show a commitment that the exact solution gives probability zero.
-It is read as the same commitment at the latest earlier moment at which the exact solution allowed
-it after the same seen history; where there is none, it counts as no news, and so does a silence
-that the exact solution calls impossible. How often this happened is reported.
+How the others read what the exact solution calls impossible is in ``among``; how often it happened
+is reported.
 """
 
 from __future__ import annotations
@@ -18,6 +16,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from thumbwright.exact.among import AmongOthersReader
 from thumbwright.exact.engine import (
     Events,
     Moment,
@@ -31,7 +30,6 @@ from thumbwright.exact.engine import (
     run,
 )
 from thumbwright.exact.evidence.base import FloatArray, IntArray
-from thumbwright.exact.walk import BoolArray
 
 NEVER = np.int64(1) << 40
 """A bar this high (or, negative, this low) is never reached."""
@@ -165,84 +163,6 @@ class DifferenceReader(Reader):
         one, other = (reader.read(scene) for reader in self._readers)
         differs = (one.plus != other.plus) | (one.minus != other.minus)
         return Reading(differs, (one.plus | one.minus) & ~differs, one.value, compared=False)
-
-
-class AmongOthersReader(Reader):
-    """An exact agent that reads what it is shown by the exact solution, whoever shows it."""
-
-    def __init__(self, solution: Solution, position: int) -> None:
-        group = solution.group
-        self._moments = solution.tracks[position].moments
-        self._times = [(moment.step, moment.round) for moment in self._moments]
-        self._model = tuple(solution.tracks[other].events for other in group.sees[position])
-        self._prior = np.array([group.prior_plus, 1.0 - group.prior_plus])
-        axes = len(self._model)
-        self._index: list[IntArray] = [np.zeros((1,) * axes, dtype=np.int64) for _ in range(axes)]
-        self._held: FloatArray = np.zeros((1,) * axes)
-        self._fresh: BoolArray = np.zeros((1,) * axes, dtype=bool)
-        self.off_model = 0.0
-
-    def read(self, scene: Scene) -> Reading:
-        """The exact worth of what each history is read as; the last level where it is no news."""
-        moment = self._moments[self._latest(scene.step, scene.round)]
-        value = moment.value[tuple(self._index)] if self._index else moment.value
-        self._held = np.where(np.isnan(value), self._held, value)
-        if self._fresh.any():
-            mass = np.exp(scene.walk.log_undecided() + scene.log_shown.reshape(2, -1))
-            self.off_model += float((self._prior @ mass)[self._fresh.ravel()].sum())
-            self._fresh[...] = False
-        return by_value(scene, self._held.ravel())
-
-    def grow(self, shape: tuple[int, ...], axis: int, events: Events, extra: int) -> None:
-        """Decide how the new events of a seen agent are read, per history of the others."""
-        first = len(events) - extra
-        self._index = [np.concatenate([a, *[_undecided(a, axis)] * extra], axis) for a in self._index]
-        self._held = np.concatenate([self._held, *[_undecided(self._held, axis)] * extra], axis)
-        odd = np.zeros_like(_undecided(self._fresh, axis))
-        self._fresh = np.concatenate([self._fresh, *[odd] * extra], axis)
-        for number in range(extra):
-            event = first + number
-            time = (events.step[event], events.round[event])
-            where = (slice(None),) * axis + (slice(shape[axis] + number, shape[axis] + number + 1),)
-            reading = [a[where] for a in self._index]
-            found, same = self._read_as(reading, axis, events.state[event], time)
-            self._index[axis][where] = found
-            self._fresh[where] = ~same
-
-    def _read_as(
-        self, reading: list[IntArray], axis: int, state: int, time: tuple[int, int]
-    ) -> tuple[IntArray, BoolArray]:
-        """The exact solution's event that each history's new commitment is read as, 0 for none."""
-        model = self._model[axis]
-        after = min(self._latest(*time) + 1, len(self._moments) - 1)
-        possible = np.isfinite(self._moments[after].log_shown).any(axis=0)
-        found = np.zeros(reading[axis].shape, dtype=np.int64)
-        same = np.zeros(found.shape, dtype=bool)
-        known = possible.shape[axis]
-        candidates = [
-            e
-            for e in range(known)
-            if model.state[e] == state and (model.step[e], model.round[e]) <= time
-        ]
-        for e in sorted(candidates, key=lambda e: (model.step[e], model.round[e]), reverse=True):
-            asked = list(reading)
-            asked[axis] = np.full_like(found, e)
-            allowed = possible[tuple(asked)] & (found == 0)
-            found[allowed] = e
-            if (model.step[e], model.round[e]) == time:
-                same |= allowed
-        return found, same
-
-    def _latest(self, step: int, round_: int) -> int:
-        """The exact solution's last moment that is not after this one."""
-        position = len(self._times) - 1
-        while position > 0 and self._times[position] > (step, round_):
-            position -= 1
-        return position
-
-
-def _undecided(array: np.ndarray, axis: int) -> np.ndarray:  # type: ignore[type-arg]
-    return np.take(array, [0], axis=axis)
 
 
 def adopt(solution: Solution, agent: str, policy: Policy, rows: int = 0) -> Play:

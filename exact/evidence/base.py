@@ -90,7 +90,7 @@ class Evidence:
     def __post_init__(self) -> None:
         for name, kind in (("plus", np.float64), ("minus", np.float64), ("alpha", np.float64)):
             object.__setattr__(self, name, _frozen(np.array(getattr(self, name), dtype=kind)))
-        offsets = np.array(self.offsets, dtype=np.int64).reshape(len(self.plus), -1)
+        offsets = np.array(self.offsets, dtype=np.int64).reshape(len(self.plus), len(self.alpha))
         object.__setattr__(self, "offsets", _frozen(offsets))
         for side, certain in ((self.plus, self.certain_plus), (self.minus, self.certain_minus)):
             total = float(side.sum()) + certain
