@@ -103,7 +103,8 @@ def thresholds_named(case: Case, name: str, evidence: Evidence, prior: float) ->
     """The thresholds of that name as beliefs (nats), for an agent with this evidence."""
     stated = case.thresholds[name]
     if stated.unit == "observations":
-        assert stated.minus is not None and stated.plus is not None
+        assert stated.minus is not None
+        assert stated.plus is not None
         return units.from_observations(stated.minus, stated.plus, evidence, prior)
     return _without_evidence(stated, prior) or _from_costs(case, evidence)
 

@@ -17,8 +17,8 @@ from thumbwright.distill.findings import CostBasis, Figures, RowUse
 from thumbwright.distill.playing import alone_policy, plain_count_policy, rule_policy
 from thumbwright.distill.rules import Rule
 from thumbwright.distill.situations import Situations, situations_of, values_of
+from thumbwright.exact.arrays import FloatArray
 from thumbwright.exact.engine import Track
-from thumbwright.exact.evidence.base import FloatArray
 from thumbwright.exact.group import Group
 from thumbwright.exact.outcomes import outcome
 from thumbwright.exact.play import Play, Policy, adopt, difference
@@ -55,7 +55,8 @@ class Tally:
         if losses.undecided is None:
             says_plus, says_minus = says_plus + self.lean_plus[1], says_minus + self.lean_minus[0]
         else:
-            horizon = losses.undecided * float(prior_plus * undecided[0] + (1 - prior_plus) * undecided[1])
+            share = prior_plus * undecided[0] + (1 - prior_plus) * undecided[1]
+            horizon = losses.undecided * float(share)
         return float(
             losses.false_plus * (1 - prior_plus) * says_plus
             + losses.false_minus * prior_plus * says_minus
@@ -117,19 +118,14 @@ class Pricer:
         cone: Cone | None = None,
     ) -> Pricer:
         """Play exactly and alone once; everything else is held against these."""
-        exact = average(
-            [
-                (s.weight, tally(s.solution.tracks[s.solution.group.index[agent]]))
-                for s in settings
-            ]
-        )
-        alone = average(
-            [
-                (s.weight, tally((played := adopt(s.solution, agent, alone_policy)).track, played.off_model))
-                for s in settings
-            ]
-        )
-        return cls(agent, settings, situations_of(settings, agent), losses, cone, exact, alone)
+        exact, alone = [], []
+        for setting in settings:
+            solution = setting.solution
+            exact.append((setting.weight, tally(solution.tracks[solution.group.index[agent]])))
+            played = adopt(solution, agent, alone_policy)
+            alone.append((setting.weight, tally(played.track, played.off_model)))
+        situations = situations_of(settings, agent)
+        return cls(agent, settings, situations, losses, cone, average(exact), average(alone))
 
     @property
     def group(self) -> Group:
@@ -151,7 +147,10 @@ class Pricer:
         plays: list[tuple[float, Play]] = [
             (s.weight, adopt(s.solution, self.agent, policy_for(s), rows)) for s in self.settings
         ]
-        usage = sum(w * p.usage for w, p in plays if p.usage is not None) if rows else None
+        usage = np.zeros((rows, 2)) if rows else None
+        for weight, played in plays:
+            if usage is not None and played.usage is not None:
+                usage += weight * played.usage
         return average([(w, tally(p.track, p.off_model)) for w, p in plays]), usage
 
     def rule_policies(self, rule: Rule) -> PolicyFor:

@@ -16,6 +16,7 @@ import numpy as np
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.playing import NO_ROW, lay_out
 from thumbwright.distill.rules import SHOWN, Rule
+from thumbwright.exact.arrays import IntArray
 from thumbwright.exact.evidence.base import Evidence
 
 SHORT = 7
@@ -99,7 +100,7 @@ def _calls(pricer: Pricer, latest: int) -> list[tuple[int, int]]:
 
 
 def _walk(
-    pricer: Pricer, rule: Rule, grid: np.ndarray, evidence: Evidence, path: _Path  # type: ignore[type-arg]
+    pricer: Pricer, rule: Rule, grid: IntArray, evidence: Evidence, path: _Path
 ) -> list[dict[str, Any]]:
     run: list[dict[str, Any]] = []
     peg = 0
@@ -153,7 +154,8 @@ def _notable(run: list[dict[str, Any]]) -> list[dict[str, Any]]:
     """The steps of a long run at which something changes."""
     kept = []
     for before, entry in zip([None, *run[:-1]], run, strict=True):
-        changed = before is None or any(entry[key] != before[key] for key in ("shows", "line", "act"))
+        keys = ("shows", "line", "act")
+        changed = before is None or any(entry[key] != before[key] for key in keys)
         if changed or entry["sign"] == "plus" or entry is run[-1]:
             kept.append(entry)
     return kept

@@ -64,7 +64,7 @@ def gather(case: Case, progress: Progress | None = None) -> Findings:
     """Everything that is printed about the rule's agent of a case."""
     pricer, missing = pricer_of(case, progress)
     wanted = Wanted(case.rule.rows, tuple(case.rule.inputs), case.rule.max_accuracy_lost)
-    forms = {
+    forms: dict[str, FormResult] = {
         name: _form_result(pricer, name, wanted, progress)
         for name in MODULES
         if name in case.rule.forms
@@ -160,7 +160,9 @@ def _caveats(pricer: Pricer, figures: list[Figures], missing: str | None) -> tup
     if missing:
         said.append(missing)
     if not pricer.watching_is_worth:
-        said.append("Watching is worth nothing here: exact watching saves less than 1 % of the risk.")
+        said.append(
+            "Watching is worth nothing here: exact watching saves less than 1 % of the risk."
+        )
     return tuple(said)
 
 
@@ -203,4 +205,5 @@ def _state_label(case: Case, seen: tuple[str, ...], states: tuple[str, ...]) -> 
     }
     if len(seen) == 1:
         return words[states[0]]
-    return "; ".join(f"{case.agents[a].name}: {words[s]}" for a, s in zip(seen, states, strict=True))
+    pairs = zip(seen, states, strict=True)
+    return "; ".join(f"{case.agents[agent].name}: {words[state]}" for agent, state in pairs)

@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thumbwright.distill.rules import SHOWN, Row, Rule
-from thumbwright.exact.evidence.base import FloatArray, IntArray
+from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.group import Group
 from thumbwright.exact.play import NEVER, Act, Policy, Situation
 
@@ -88,8 +88,10 @@ def rule_policy(
     else:
         values = np.array([0.0 if row.value is None else row.value for row in rule.rows])
     # One more entry at the end is what NO_ROW (-1) picks: no news, no answer.
-    values, minus_at, plus_at = np.append(values, 0.0), np.append(minus_at, -NEVER), np.append(
-        plus_at, NEVER
+    values, minus_at, plus_at = (
+        np.append(values, 0.0),
+        np.append(minus_at, -NEVER),
+        np.append(plus_at, NEVER),
     )
 
     def policy(situation: Situation) -> Act:

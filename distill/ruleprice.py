@@ -15,6 +15,7 @@ from thumbwright.distill.playing import lay_out
 from thumbwright.distill.rule_reading import read_rule
 from thumbwright.distill.rules import SHOWN, Rule
 from thumbwright.distill.situations import Situations
+from thumbwright.exact.arrays import BoolArray
 
 KNOWN = ("exact", "plain-count", "alone")
 """Ways of playing that have a name and need no file."""
@@ -120,7 +121,7 @@ def _gaps_and_overlaps(pricer: Pricer, rule: Rule, path: str) -> list[str]:
     return faults
 
 
-def _cells(pricer: Pricer, rule: Rule) -> tuple[np.ndarray, np.ndarray]:  # type: ignore[type-arg]
+def _cells(pricer: Pricer, rule: Rule) -> tuple[BoolArray, BoolArray]:
     situations = pricer.situations
     count = np.ones(len(situations.step), dtype=np.int64)
     for number, setting in enumerate(pricer.settings):
@@ -143,8 +144,8 @@ def _rows_there(pricer: Pricer, rule: Rule, situation: int) -> list[int]:
     return numbers
 
 
-def _where(situations: Situations, mask: np.ndarray, pricer: Pricer) -> str:  # type: ignore[type-arg]
-    """An example of the masked situations in words, and how many steps and states more there are."""
+def _where(situations: Situations, mask: BoolArray, pricer: Pricer) -> str:
+    """An example of the masked situations in words, and how many others like it there are."""
     example = int(np.flatnonzero(mask)[0])
     parts = [f"at step {int(situations.step[example])}"]
     parts += [

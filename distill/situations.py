@@ -10,14 +10,16 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from thumbwright.distill.assemble import Setting
 from thumbwright.distill.forms.boxes import gain
 from thumbwright.distill.playing import NO_ROW, lay_out
 from thumbwright.distill.rules import SHOWN, Rule
-from thumbwright.exact.evidence.base import FloatArray, IntArray
+from thumbwright.exact.arrays import FloatArray, IntArray, sums
 
 
 @dataclass(frozen=True)
@@ -55,12 +57,12 @@ class Situations:
 
     @property
     def everything(self) -> float:
-        """g of all situations kept apart: what exact worths save in log loss."""
+        """G of all situations kept apart: what exact worths save in log loss."""
         return float(gain(self.plus, self.minus).sum())
 
     @property
     def nothing(self) -> float:
-        """g of all situations lumped together: what the best single value saves."""
+        """G of all situations lumped together: what the best single value saves."""
         return float(gain(self.plus.sum(keepdims=True), self.minus.sum(keepdims=True))[0])
 
     def information_kept(self, saved: float) -> float | None:
@@ -82,11 +84,7 @@ class Situations:
     def pooled(self, rows: IntArray, count: int) -> tuple[FloatArray, FloatArray]:
         """Masses of each of ``count`` rows, given plus and given minus."""
         used = rows >= 0
-        sums = [
-            np.bincount(rows[used], weights=side[used], minlength=count)
-            for side in (self.plus, self.minus)
-        ]
-        return sums[0], sums[1]
+        return sums(rows[used], self.plus[used], count), sums(rows[used], self.minus[used], count)
 
 
 def values_of(plus: FloatArray, minus: FloatArray) -> FloatArray:
@@ -98,7 +96,7 @@ def values_of(plus: FloatArray, minus: FloatArray) -> FloatArray:
 
 def situations_of(settings: Sequence[Setting], agent: str) -> Situations:
     """Collect the situations of one agent over all settings."""
-    columns: list[list[np.ndarray]] = [[] for _ in range(7)]  # type: ignore[type-arg]
+    columns: list[list[NDArray[Any]]] = [[] for _ in range(7)]
     seen: tuple[str, ...] = ()
     for number, setting in enumerate(settings):
         group = setting.solution.group
@@ -107,11 +105,11 @@ def situations_of(settings: Sequence[Setting], agent: str) -> Situations:
         state = [np.array(setting.solution.tracks[k].events.state) for k in group.sees[position]]
         for moment in setting.solution.tracks[position].moments:
             possible = np.isfinite(moment.log_shown).any(axis=0)
-            where = np.nonzero(possible) if seen else ((),)
+            where = np.nonzero(possible) if seen else ()
             omega = np.exp(moment.log_before).mean(axis=0)[possible].ravel()
             shown = np.exp(moment.log_shown)[:, possible].reshape(2, -1)
             size = len(omega)
-            states = [s[w] for s, w in zip(state, where, strict=False)]
+            states = [s[w] for s, w in zip(state, where, strict=True)]
             entries = (
                 np.full(size, number),
                 np.full(size, moment.step),

@@ -97,7 +97,10 @@ def sheet_text(findings: Findings, written: Sequence[Path]) -> str:
     case = findings.case
     lines = [f"{case.title}: rule for {case.agents[findings.agent].name}", ""]
     named = [
-        *((f"{name}, {len(form.rule.rows)} rows", form.figures) for name, form in findings.forms.items()),
+        *(
+            (f"{name}, {len(form.rule.rows)} rows", form.figures)
+            for name, form in findings.forms.items()
+        ),
         ("full calculation", findings.exact),
         ("undecided neighbours ignored", findings.plain_count),
         ("everybody ignored", findings.alone),
@@ -174,8 +177,8 @@ def price_text(found: dict[str, Any]) -> str:
     figures = found["figures"]
     lines.append("")
     lines.append(
-        f"accuracy lost {figures['accuracy_lost']:+.6f}, delay added {figures['delay_added']:+.4f} "
-        "steps, against exact"
+        f"accuracy lost {signed(figures['accuracy_lost'], 6)}, delay added "
+        f"{signed(figures['delay_added'], 4)} steps, against exact"
     )
     if not found["watching_is_worth_something"]:
         lines.append("watching is worth nothing here: no benefit is given in per cent")
@@ -190,8 +193,15 @@ def price_text(found: dict[str, Any]) -> str:
     if losses is not None:
         lines += ["", _losses_text(losses)]
     lines += [f"Note: {text}" for text in found["remarks"]]
-    lines.append("exact" if found["exact"] else "not exact: evidence split, or displays read off-model")
+    lines.append(
+        "exact" if found["exact"] else "not exact: evidence split, or displays read off-model"
+    )
     return "\n".join(lines)
+
+
+def signed(number: float, digits: int) -> str:
+    """A number with its sign; what rounds to zero has none."""
+    return f"{number:+.{digits}f}" if round(number, digits) else f"{0:.{digits}f}"
 
 
 def _losses_text(losses: dict[str, Any]) -> str:
@@ -204,8 +214,8 @@ def _losses_text(losses: dict[str, Any]) -> str:
     low, high = losses["loss_ratio_range"]
     cheap, dear = losses["per_step_range"]
     text += (
-        f", the middle of those that make the thresholds best alone (ratio {low:.4g} to {high:.4g}, "
-        f"per step {cheap:.4g} to {dear:.4g}"
+        f", the middle of those that make the thresholds best alone (ratio {low:.4g} to "
+        f"{high:.4g}, per step {cheap:.4g} to {dear:.4g}"
     )
     kept = losses["benefit_kept_range"]
     if kept is not None:

@@ -6,8 +6,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from thumbwright.exact.arrays import FloatArray
 from thumbwright.exact.errors import ModelError
-from thumbwright.exact.evidence.base import Evidence, FloatArray
+from thumbwright.exact.evidence.base import Evidence
 from thumbwright.exact.group import Thresholds, same_thresholds
 from thumbwright.exact.walk import TIE, Walk
 
@@ -84,6 +85,4 @@ def alone(
             )
     answers = np.concatenate([np.zeros((2, 2, 1)), np.stack(laws, axis=2)], axis=2)
     steps = np.stack(survival[:-1]).sum(axis=0)
-    return Alone(
-        answers, survival[-1], steps, (stops[0], stops[1]), (goes_on[0], goes_on[1])
-    )
+    return Alone(answers, survival[-1], steps, (stops[0], stops[1]), (goes_on[0], goes_on[1]))

@@ -18,8 +18,8 @@ from itertools import product
 
 import numpy as np
 
+from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.engine import Events, Moment, Reader, Reading, Scene, Solution, by_value
-from thumbwright.exact.evidence.base import FloatArray, IntArray
 from thumbwright.exact.walk import grown
 
 
@@ -50,7 +50,7 @@ class AmongOthersReader(Reader):
         """The exact worth of what each history is read as; the last level where it is no news."""
         moment = self._moments[self._latest(scene.step, scene.round)]
         if self._level.shape != self._shape:
-            for where, events in self._news(scene.seen):
+            for where, events in self._news():
                 self._settle(where, events, scene.seen, moment)
             self._shape = self._level.shape
         value = moment.value[tuple(self._index)] if self._index else moment.value
@@ -63,15 +63,13 @@ class AmongOthersReader(Reader):
             self.off_model += float((self._prior @ inside) @ self._moved.ravel())
             self._moved[...] = 0.0
 
-    def grow(self, shape: tuple[int, ...], axis: int, events: Events, extra: int) -> None:
+    def grow(self, axis: int, extra: int) -> None:
         """A new event is read as no news until the next round says better."""
         self._index = [grown(array, axis, extra) for array in self._index]
         self._level = grown(self._level, axis, extra)
         self._moved = grown(self._moved, axis, extra)
 
-    def _news(
-        self, seen: tuple[Events, ...]
-    ) -> Iterator[tuple[tuple[slice, ...], tuple[int | None, ...]]]:
+    def _news(self) -> Iterator[tuple[tuple[slice, ...], tuple[int | None, ...]]]:
         """Blocks of histories with the same new events: where they are, and which per agent."""
         choices: list[list[int | None]] = [
             [None, *range(old, new)]
@@ -94,7 +92,7 @@ class AmongOthersReader(Reader):
     ) -> None:
         """Decide what the new events of one block of histories are read as."""
         reading = [array[where] for array in self._index]
-        possible = np.isfinite(moment.log_shown).any(axis=0)
+        possible: BoolArray = np.asarray(np.isfinite(moment.log_shown).any(axis=0))
         waiting = np.ones(reading[0].shape, dtype=bool)
         options = [
             [None]

@@ -20,7 +20,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from thumbwright.exact.evidence.base import FloatArray
+from thumbwright.exact.arrays import FloatArray
 from thumbwright.exact.group import Group
 
 

@@ -20,11 +20,11 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
+from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.contract import Plan, log_shown, plan
-from thumbwright.exact.evidence.base import FloatArray, IntArray
 from thumbwright.exact.forecast import refuse_too_large
 from thumbwright.exact.group import MINUS, PLUS, Agent, Group
-from thumbwright.exact.walk import NEAR, TIE, BoolArray, Walk, grown
+from thumbwright.exact.walk import NEAR, TIE, Walk, grown
 
 Progress = Callable[[str, int, int], None]
 
@@ -123,8 +123,8 @@ class Reader(ABC):
         of having been shown each history and answering now, and of being undecided before.
         """
 
-    def grow(self, shape: tuple[int, ...], axis: int, events: Events, extra: int) -> None:
-        """Told that a seen agent gained ``extra`` events; ``shape`` is the shape before."""
+    def grow(self, axis: int, extra: int) -> None:
+        """Told that the seen agent on this axis gained ``extra`` events."""
 
 
 @dataclass
@@ -159,7 +159,7 @@ class Solution:
 
     @property
     def near_tie_mass(self) -> float:
-        """Probability, summed over agents, decided by the tie rule rather than by a clear margin."""
+        """Probability, summed over agents, decided by the tie rule and by no clear margin."""
         return sum(track.near_tie for track in self.tracks)
 
 
@@ -292,10 +292,10 @@ class Player:
             np.exp(self.walk.log_where(mask) + flat).sum(axis=1) for mask in leanings(belief)
         ]
 
-    def grow(self, axis: int, events: Events, extra: int) -> None:
-        """A seen agent gained ``extra`` events."""
+    def grow(self, axis: int, extra: int) -> None:
+        """The seen agent on this axis gained ``extra`` events."""
         self.walk.grow(self.shape, axis, extra)
-        self.reader.grow(self.shape, axis, events, extra)
+        self.reader.grow(axis, extra)
         self.shape = (*self.shape[:axis], self.shape[axis] + extra, *self.shape[axis + 1 :])
 
 
@@ -332,7 +332,7 @@ class _Stage:
             for axis, other in enumerate(self._group.sees[i]):
                 if gained[other]:
                     self._log_weights[i] = grown(self._log_weights[i], axis + 2, gained[other])
-                    player.grow(axis, self.players[other].track.events, gained[other])
+                    player.grow(axis, gained[other])
         return any(gained)
 
     def _decision(self, i: int, step: int, round_: int) -> tuple[FloatArray, FloatArray]:
@@ -340,9 +340,7 @@ class _Stage:
         seen = tuple(self.players[other].track.events for other in self._group.sees[i])
         return shown, self.players[i].decide(step, round_, seen, shown)
 
-    def _show(
-        self, i: int, step: int, round_: int, shown: FloatArray, gone: FloatArray
-    ) -> int:
+    def _show(self, i: int, step: int, round_: int, shown: FloatArray, gone: FloatArray) -> int:
         """Turn what was cut into display events; those impossible under both answers vanish."""
         track = self.players[i].track
         weights = [track.moments[-1].log_after[:, None], self._log_weights[i][:, 1:]]

@@ -10,8 +10,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.engine import Moment, Solution, Track
-from thumbwright.exact.evidence.base import FloatArray, IntArray
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -35,11 +35,7 @@ def jumps(solution: Solution) -> pd.DataFrame:
 
     group = solution.group
     seen_ids = [a.id for a in group.agents if any(a.id in other.sees for other in group.agents)]
-    frames = [
-        frame
-        for track in solution.tracks
-        for frame in _frames(solution, track, seen_ids)
-    ]
+    frames = [frame for track in solution.tracks for frame in _frames(solution, track, seen_ids)]
     table = pd.concat(frames, ignore_index=True)
     for other in seen_ids:
         table[f"{other}_shows"] = table[f"{other}_shows"].astype("category")
@@ -53,7 +49,8 @@ def jump(moment: Moment, before: Moment | None) -> FloatArray:
     """Change of the worth of every history since the round before, same shape as the worth."""
     if before is None:
         return moment.value.copy()
-    where = np.ix_(*(_prefix(n, m) for n, m in zip(moment.value.shape, before.value.shape, strict=True)))
+    shapes = zip(moment.value.shape, before.value.shape, strict=True)
+    where = np.ix_(*(_prefix(now, then) for now, then in shapes))
     with np.errstate(invalid="ignore"):
         change: FloatArray = moment.value - (before.value[where] if where else before.value)
     return change

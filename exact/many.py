@@ -13,8 +13,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.engine import Solution, leanings
-from thumbwright.exact.evidence.base import Evidence, FloatArray, IntArray
+from thumbwright.exact.evidence.base import Evidence
 from thumbwright.exact.group import Group
 
 
@@ -89,9 +90,7 @@ def play_many(solution: Solution, position: int, bars: Bars) -> ManyTallies:
     )
 
 
-def changed_many(
-    solution: Solution, position: int, reference: Bars, bars: Bars
-) -> FloatArray:
+def changed_many(solution: Solution, position: int, reference: Bars, bars: Bars) -> FloatArray:
     """Probability that each rule ever acts differently from the one reference, shape (B, 2)."""
     walk = _Columns(solution, position, bars, also=reference)
     changed = np.zeros((len(bars.minus_at), 2))
@@ -168,25 +167,24 @@ class _Columns:
             fresh[start + move : stop + move] += old[start:stop] * np.array(chance)
         self._mass = fresh
 
-    def at_or_above(self, bar: IntArray) -> np.ndarray:  # type: ignore[type-arg]
+    def at_or_above(self, bar: IntArray) -> BoolArray:
         """Mask (count, rule, state) of what has reached the bar of the present step."""
-        return self.count[:, None, None] >= bar[None, :, self._step]
+        return np.asarray(self.count[:, None, None] >= bar[None, :, self._step])
 
-    def at_or_below(self, bar: IntArray) -> np.ndarray:  # type: ignore[type-arg]
+    def at_or_below(self, bar: IntArray) -> BoolArray:
         """Mask (count, rule, state) of what has fallen to the bar of the present step."""
-        return self.count[:, None, None] <= bar[None, :, self._step]
+        return np.asarray(self.count[:, None, None] <= bar[None, :, self._step])
 
-    def leave(self, mask: np.ndarray) -> FloatArray:  # type: ignore[type-arg]
+    def leave(self, mask: BoolArray) -> FloatArray:
         """Take the masked mass out; its probability per rule and given answer, shape (B, 2)."""
         gone = self.mass_where(mask)
         self._mass[np.broadcast_to(mask, self._mass.shape[:3])] = 0.0
         return gone
 
-    def mass_where(self, mask: np.ndarray) -> FloatArray:  # type: ignore[type-arg]
+    def mass_where(self, mask: BoolArray) -> FloatArray:
         """Probability of the masked mass, shape (B, 2)."""
-        total: FloatArray = (np.where(mask[..., None], self._mass, 0.0).sum(axis=0) * self._weight).sum(
-            axis=1
-        )
+        mass = np.where(mask[..., None], self._mass, 0.0).sum(axis=0)
+        total: FloatArray = (mass * self._weight).sum(axis=1)
         return total
 
     def undecided(self) -> FloatArray:

@@ -17,6 +17,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from thumbwright.exact.among import AmongOthersReader
+from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.engine import (
     Events,
     Moment,
@@ -29,7 +30,6 @@ from thumbwright.exact.engine import (
     by_value,
     run,
 )
-from thumbwright.exact.evidence.base import FloatArray, IntArray
 
 NEVER = np.int64(1) << 40
 """A bar this high (or, negative, this low) is never reached."""
@@ -106,7 +106,9 @@ class Play:
     usage: FloatArray | None
 
 
-def situation_of(step: int, round_: int, events: tuple[Events, ...], shape: tuple[int, ...]) -> Situation:
+def situation_of(
+    step: int, round_: int, events: tuple[Events, ...], shape: tuple[int, ...]
+) -> Situation:
     """The situations of a round as broadcastable arrays."""
     columns: list[list[IntArray]] = [[], [], []]
     for axis, (one, length) in enumerate(zip(events, shape, strict=True)):
@@ -196,9 +198,8 @@ def _play(solution: Solution, position: int, reader: Reader) -> tuple[Track, flo
     group = solution.group
     if not group.influences(position):
         return _against(solution, position, reader), 0.0
-    readers: list[Reader] = [
-        reader if i == position else AmongOthersReader(solution, i) for i in range(len(group.agents))
-    ]
+    readers: list[Reader] = [AmongOthersReader(solution, i) for i in range(len(group.agents))]
+    readers[position] = reader
     track = run(group, readers)[position]
     return track, sum(r.off_model for r in readers if isinstance(r, AmongOthersReader))
 
@@ -210,7 +211,7 @@ def _against(solution: Solution, position: int, reader: Reader) -> Track:
     seen = tuple(solution.tracks[other].events for other in group.sees[position])
     step = 0
     for moment in solution.tracks[position].moments:
-        _grow_to(player, moment, seen)
+        _grow_to(player, moment)
         if moment.step != step:
             player.observe()
             step = moment.step
@@ -218,11 +219,11 @@ def _against(solution: Solution, position: int, reader: Reader) -> Track:
     return player.track
 
 
-def _grow_to(player: Player, moment: Moment, seen: tuple[Events, ...]) -> None:
+def _grow_to(player: Player, moment: Moment) -> None:
     for axis, length in enumerate(moment.log_shown.shape[1:]):
         extra = length - player.shape[axis]
         if extra:
-            player.grow(axis, seen[axis], extra)
+            player.grow(axis, extra)
 
 
 def exact_policy(solution: Solution, agent: str) -> Policy:
@@ -233,4 +234,3 @@ def exact_policy(solution: Solution, agent: str) -> Policy:
         return Act(moments[situation.step, situation.round].value)
 
     return policy
-

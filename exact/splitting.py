@@ -16,8 +16,9 @@ from collections.abc import Sequence
 import numpy as np
 
 from thumbwright.exact.alone import alone
+from thumbwright.exact.arrays import FloatArray, sums
 from thumbwright.exact.errors import ModelError
-from thumbwright.exact.evidence.base import Evidence, FloatArray, Loose, Split
+from thumbwright.exact.evidence.base import Evidence, Loose, Split
 from thumbwright.exact.group import Thresholds
 
 MOST_VALUES = 20_000
@@ -35,9 +36,7 @@ def on_ladder(loose: Loose, step: float, split: Split | None = None) -> Evidence
     low, width = int(k.min()), int(k.max() - k.min()) + 2
     masses: list[FloatArray] = []
     for below, all_ in ((below_plus, plus), (below_minus, minus)):
-        mass = np.bincount(k - low, weights=below, minlength=width)
-        mass += np.bincount(k + 1 - low, weights=all_ - below, minlength=width)
-        masses.append(mass)
+        masses.append(sums(k - low, below, width) + sums(k + 1 - low, all_ - below, width))
     kept = (masses[0] > 0) & (masses[1] > 0)
     points = np.arange(low, low + width, dtype=np.int64)[kept]
     open_plus, open_minus = 1.0 - loose.certain_plus, 1.0 - loose.certain_minus

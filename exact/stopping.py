@@ -19,8 +19,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from thumbwright.exact.alone import alone
+from thumbwright.exact.arrays import FloatArray
 from thumbwright.exact.errors import ModelError
-from thumbwright.exact.evidence.base import Evidence, FloatArray
+from thumbwright.exact.evidence.base import Evidence
 from thumbwright.exact.group import Thresholds
 
 _FINEST = 0.01
@@ -102,7 +103,7 @@ def _solve(evidence: Evidence, losses: Losses) -> tuple[FloatArray, FloatArray, 
     reach = math.log(max(losses.false_plus, losses.false_minus) / losses.per_step) + 1.0
     reach = max(reach, 1.0) + float(np.abs(worths).max(initial=0.0))
     half = math.ceil(reach / spacing)
-    grid = spacing * np.arange(-half, half + 1)
+    grid: FloatArray = spacing * np.arange(-half, half + 1, dtype=np.float64)
     chance = 1.0 / (1.0 + np.exp(-grid))
     stop = np.minimum(losses.false_plus * (1.0 - chance), losses.false_minus * chance)
     moves = []

@@ -15,19 +15,22 @@ with its own thresholds.
 
 from __future__ import annotations
 
+from typing import TypeVar
+
 import numpy as np
 from numpy.typing import NDArray
 
-from thumbwright.exact.evidence.base import Evidence, FloatArray, IntArray
+from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
+from thumbwright.exact.evidence.base import Evidence
 from thumbwright.exact.group import Thresholds
-
-BoolArray = NDArray[np.bool_]
 
 TIE = 1e-9
 """A belief within this many nats of a threshold has reached it: part of the model."""
 
 NEAR = 1e-12
 """Decisions further than this from a threshold, but within TIE, are reported as near ties."""
+
+Kind = TypeVar("Kind", bound=np.generic)
 
 _BLOCK = np.int64(1) << 52
 _SMALL = 1e-120
@@ -194,7 +197,7 @@ class Walk:
             return np.log(weight) + self.log_scale
 
 
-def grown(array: FloatArray, axis: int, extra: int) -> FloatArray:
+def grown(array: NDArray[Kind], axis: int, extra: int) -> NDArray[Kind]:
     """``array`` with ``extra`` copies of its slice 0 (undecided) appended along ``axis``."""
     if not extra:
         return array

@@ -7,9 +7,15 @@ from collections.abc import Sequence
 import numpy as np
 
 from thumbwright.distill.costs import Pricer, Tally, average
-from thumbwright.distill.forms.runs import Layout, as_rule, count_range, threshold_order
+from thumbwright.distill.forms.runs import (
+    Layout,
+    Sides,
+    as_rule,
+    count_range,
+    threshold_order,
+)
 from thumbwright.distill.situations import values_of
-from thumbwright.exact.evidence.base import FloatArray, IntArray
+from thumbwright.exact.arrays import FloatArray, IntArray, sums
 from thumbwright.exact.many import Bars, ManyTallies, changed_many, fits, play_many
 
 MOST_AT_ONCE = 400
@@ -30,7 +36,7 @@ class Batch:
             where = (situations.setting, situations.states[:, 0], situations.step)
             flat = np.ravel_multi_index(where, shape)
             self._masses = [
-                np.bincount(flat, side, int(np.prod(shape))).reshape(shape)
+                sums(flat, side, int(np.prod(shape))).reshape(shape)
                 for side in (situations.plus, situations.minus)
             ]
 
@@ -52,8 +58,10 @@ class Batch:
                 )
                 for number, setting in enumerate(self._pricer.settings)
             ]
-            for i in range(len(part)):
-                found.append(average([(weight, _one(many, i)) for weight, many in played]))
+            found += [
+                average([(weight, _one(many, i)) for weight, many in played])
+                for i in range(len(part))
+            ]
         return found
 
     def changed(self, original: Layout, layouts: Sequence[Layout]) -> list[float]:
@@ -86,11 +94,9 @@ class Batch:
         low: IntArray = np.full(shape, lowest - 1, dtype=np.int64)
         high: IntArray = np.full(shape, highest + 1, dtype=np.int64)
         value: FloatArray = np.zeros((len(layouts), 3))
-        names = pricer.settings[setting].names
-        order = threshold_order(pricer)
         for i, layout in enumerate(layouts):
             for sides, lines in layout.groups:
-                if len(sides) > 1 and order.index(names[pricer.seen[0]]) not in sides[1]:
+                if not self._holds(sides, setting):
                     continue
                 states = sorted(sides[0])
                 for line in lines:
@@ -102,16 +108,18 @@ class Batch:
                 value[i, states] = self._pooled(sides, lines[-1].start)
         return Bars(low, high, value)
 
-    def _pooled(self, sides: tuple[frozenset[int], ...], start: int) -> float:
+    def _holds(self, sides: Sides, setting: int) -> bool:
+        """Whether a box of contexts includes the thresholds of a setting."""
+        if len(sides) == 1:
+            return True
+        names = self._pricer.settings[setting].names
+        return threshold_order(self._pricer).index(names[self._pricer.seen[0]]) in sides[1]
+
+    def _pooled(self, sides: Sides, start: int) -> float:
         """Best value of the row that is in force at the horizon."""
         pricer = self._pricer
-        settings = range(len(pricer.settings))
-        if len(sides) > 1:
-            order = threshold_order(pricer)
-            settings = [
-                k for k in settings if order.index(pricer.settings[k].names[pricer.seen[0]]) in sides[1]
-            ]
-        where = np.ix_(list(settings), sorted(sides[0]), range(start, pricer.group.horizon + 1))
+        settings = [k for k in range(len(pricer.settings)) if self._holds(sides, k)]
+        where = np.ix_(settings, sorted(sides[0]), range(start, pricer.group.horizon + 1))
         plus, minus = (side[where].sum() for side in self._masses)
         return float(values_of(np.array([plus]), np.array([minus]))[0])
 

@@ -15,9 +15,7 @@ from itertools import product
 import numpy as np
 from numpy.typing import NDArray
 
-FloatArray = NDArray[np.float64]
-
-IntArray = NDArray[np.int64]
+from thumbwright.exact.arrays import FloatArray, IntArray
 
 _ROUNDING = 1e-13
 
@@ -26,7 +24,7 @@ Box = tuple[tuple[int, int], ...]
 
 
 def gain(plus: FloatArray, minus: FloatArray) -> FloatArray:
-    """g of groups with these masses; zero masses give zero."""
+    """G of groups with these masses; zero masses give zero."""
     both = plus + minus
     total = np.zeros_like(both)
     for side in (plus, minus):
@@ -71,7 +69,7 @@ def best_partitions(plus: FloatArray, minus: FloatArray, most: int) -> tuple[Par
         useful = min(most, int(np.prod(lengths)))
         if useful > 1:
             here = tuple(
-                np.arange(base[length], base[length] + n - length + 1)
+                np.arange(base[length], base[length] + n - length + 1, dtype=np.int64)
                 for base, length, n in zip(bases, lengths, shape, strict=True)
             )
             _cut(best, choice, bases, here, lengths, useful)
@@ -95,7 +93,7 @@ def _cut(
 ) -> None:
     """Find the best cuts of all boxes of one size, into 2 .. ``useful`` boxes each."""
     room = tuple(len(index) for index in here)
-    top = best[np.ix_([0], *here)][0]
+    top = best[0][np.ix_(*here)]
     found = np.broadcast_to(top, (useful, *room)).copy()
     codes = np.zeros((3, useful, *room), dtype=np.int16)
     for axis, length in enumerate(lengths):
@@ -115,7 +113,7 @@ def _cut(
             first = (sums >= value - _ROUNDING * np.abs(value)).argmax(axis=0)
             better = value > found[k] + _ROUNDING * np.abs(found[k])
             found[k] = np.where(better, value, found[k])
-            fresh = (np.int64(axis + 1), cuts[first % len(cuts)], first // len(cuts))
+            fresh = (np.full_like(first, axis + 1), cuts[first % len(cuts)], first // len(cuts))
             for code, number in zip(codes, fresh, strict=True):
                 code[k] = np.where(better, number, code[k])
     for k in range(1, useful):
@@ -123,10 +121,11 @@ def _cut(
         found[k] = np.where(same, found[k - 1], found[k])
         codes[:, k] = np.where(same, codes[:, k - 1], codes[:, k])
     # More boxes than cells are never needed.
+    boxes = np.ix_(*here)
     for k in range(1, len(best)):
-        best[(k, *np.ix_(*here))] = found[min(k, useful - 1)]
+        best[k][boxes] = found[min(k, useful - 1)]
         for row in range(3):
-            choice[(row, k, *np.ix_(*here))] = codes[row, min(k, useful - 1)]
+            choice[row, k][boxes] = codes[row, min(k, useful - 1)]
 
 
 def _gathered(

@@ -11,7 +11,7 @@ from __future__ import annotations
 import numpy as np
 
 from thumbwright.distill.forms.boxes import gain
-from thumbwright.exact.evidence.base import FloatArray, IntArray
+from thumbwright.exact.arrays import FloatArray, IntArray, sums
 
 
 def best_groupings(plus: FloatArray, minus: FloatArray, most: int) -> FloatArray:
@@ -28,15 +28,15 @@ def best_groupings(plus: FloatArray, minus: FloatArray, most: int) -> FloatArray
     ndarray of float, shape (most,)
     """
     plus, minus = _sorted_and_merged(plus, minus)
-    sums = [np.concatenate([[0.0], np.cumsum(side)]) for side in (plus, minus)]
+    running = [np.concatenate([[0.0], np.cumsum(side)]) for side in (plus, minus)]
     count = len(plus)
-    best = np.concatenate([[0.0], gain(sums[0][1:], sums[1][1:])])
+    best = np.concatenate([[0.0], gain(running[0][1:], running[1][1:])])
     ceilings = [float(best[count])]
     for groups in range(2, most + 1):
         if groups > count:
             ceilings.append(ceilings[-1])
             continue
-        best = _one_more(best, sums[0], sums[1], groups)
+        best = _one_more(best, running[0], running[1], groups)
         ceilings.append(max(ceilings[-1], float(best[count])))
     return np.array(ceilings)
 
@@ -49,10 +49,7 @@ def _sorted_and_merged(plus: FloatArray, minus: FloatArray) -> tuple[FloatArray,
     order = np.argsort(share, kind="stable")
     starts = np.concatenate([[True], np.diff(share[order]) > 1e-13])
     group: IntArray = np.cumsum(starts) - 1
-    return (
-        np.bincount(group, weights=plus[order]),
-        np.bincount(group, weights=minus[order]),
-    )
+    return sums(group, plus[order]), sums(group, minus[order])
 
 
 def _one_more(best: FloatArray, plus: FloatArray, minus: FloatArray, groups: int) -> FloatArray:
@@ -67,9 +64,9 @@ def _one_more(best: FloatArray, plus: FloatArray, minus: FloatArray, groups: int
             continue
         end = (first + last) // 2
         cuts = np.arange(low, min(high, end - 1) + 1)
-        sums = best[cuts] + gain(plus[end] - plus[cuts], minus[end] - minus[cuts])
-        pick = int(np.argmax(sums))
-        fresh[end] = sums[pick]
+        saved = best[cuts] + gain(plus[end] - plus[cuts], minus[end] - minus[cuts])
+        pick = int(np.argmax(saved))
+        fresh[end] = saved[pick]
         jobs.append((first, end - 1, low, int(cuts[pick])))
         jobs.append((end + 1, last, int(cuts[pick]), high))
     return fresh

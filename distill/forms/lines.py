@@ -68,8 +68,8 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
         search.merge_down_to(wanted.rows)
     if len(search.layout) < before:
         notes.append(
-            f"{before - len(search.layout)} more merged at the least added risk, and bars set between "
-            "the exact ones of each line, where the risk is least."
+            f"{before - len(search.layout)} more merged at the least added risk, and bars set "
+            "between the exact ones of each line, where the risk is least."
         )
         search.settle_bars()
     if mixed:
@@ -81,7 +81,8 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
     rule = as_rule(pricer, search.layout)
     situations = pricer.situations
     pooled = situations.pooled(situations.rows_of(rule, pricer.settings), len(rule.rows))
-    return Distilled(rule, situations.information_kept(float(gain(*pooled).sum())), None, tuple(notes))
+    kept = situations.information_kept(float(gain(*pooled).sum()))
+    return Distilled(rule, kept, None, tuple(notes))
 
 
 class Search:
@@ -139,7 +140,7 @@ class Search:
         return candidates[risks.index(min(risks))]
 
     def settle_bars(self) -> None:
-        """Move bars by one while that lowers the risk, between the exact bars that a line covers."""
+        """Move bars by one while that lowers the risk, between the exact bars of their line."""
         (risk,) = self._batch.objectives([self.layout])
         for _ in range(MOST_MOVES):
             candidates = list(moved_bars(self._pricer, self._wanted.inputs, self.layout))

@@ -16,7 +16,7 @@ import numpy as np
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.rules import SHOWN, Row, Rule
 from thumbwright.distill.situations import values_of
-from thumbwright.exact.evidence.base import FloatArray, IntArray
+from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.walk import TIE
 
 Sides = tuple[frozenset[int], ...]
@@ -37,6 +37,11 @@ class Line:
     def bars(self) -> tuple[int | None, int | None]:
         """The two bars."""
         return self.minus_at, self.plus_at
+
+    @property
+    def apart(self) -> bool:
+        """Whether the bars leave room between them, or at least do not cross."""
+        return self.minus_at is None or self.plus_at is None or self.minus_at < self.plus_at
 
 
 @dataclass(frozen=True)
@@ -124,9 +129,7 @@ def between(one: Line, other: Line) -> list[tuple[int | None, int | None]]:
         else:
             choices.append(list(range(min(a, b), max(a, b) + 1)))
     return [
-        (low, high)
-        for low, high in product(*choices)
-        if low is None or high is None or low < high
+        (low, high) for low, high in product(*choices) if low is None or high is None or low < high
     ]
 
 
@@ -202,9 +205,7 @@ def moved_bars(pricer: Pricer, inputs: tuple[str, ...], layout: Layout) -> Itera
                     continue
                 for to in (bar - 1, bar + 1):
                     other = replace(line, **{name: to})
-                    apart = other.minus_at is None or other.plus_at is None
-                    apart = apart or other.minus_at < other.plus_at
-                    if apart and bars[covered].min() <= to <= bars[covered].max():
+                    if other.apart and bars[covered].min() <= to <= bars[covered].max():
                         yield layout.with_line(number, other)
 
 
@@ -314,18 +315,18 @@ def as_rule(pricer: Pricer, layout: Layout, form: str = "lines") -> Rule:
             for agent, numbers in zip(seen, sides[len(seen) :], strict=False)
             if len(numbers) < len(order)
         }
-        for line in lines:
-            rows.append(
-                Row(
-                    step_from=None if line.start == 1 else line.start,
-                    step_to=None if line.stop == horizon else line.stop,
-                    shows=shows,
-                    thresholds=named,
-                    minus_at=line.minus_at,
-                    plus_at=line.plus_at,
-                    base=line.base,
-                )
+        rows += [
+            Row(
+                step_from=None if line.start == 1 else line.start,
+                step_to=None if line.stop == horizon else line.stop,
+                shows=shows,
+                thresholds=named,
+                minus_at=line.minus_at,
+                plus_at=line.plus_at,
+                base=line.base,
             )
+            for line in lines
+        ]
     return Rule(form, pricer.agent, seen, tuple(rows))
 
 

@@ -9,7 +9,7 @@ into as many groups could keep, whatever it looks at.
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -19,9 +19,9 @@ from thumbwright.distill.forms.boxes import Box, Partition, best_partitions
 from thumbwright.distill.forms.grouping import best_groupings
 from thumbwright.distill.rules import SHOWN, Row, Rule
 from thumbwright.distill.situations import values_of
+from thumbwright.exact.arrays import FloatArray, IntArray, sums
 from thumbwright.exact.engine import Progress
 from thumbwright.exact.errors import ModelError
-from thumbwright.exact.evidence.base import FloatArray, IntArray
 
 NAME = "table"
 
@@ -33,12 +33,12 @@ _STATE_ORDER = ("minus", "undecided", "plus")
 
 @dataclass(frozen=True)
 class Axis:
-    """One input of the grid: how situations map to cells, and what a range of cells says."""
+    """One input of the grid: the cell of each situation, and how a row narrows to some cells."""
 
     name: str
     cells: int
     where: IntArray
-    says: Callable[[int, int], dict[str, object]]
+    says: Callable[[Row, int, int], Row]
 
 
 def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> Distilled:
@@ -118,19 +118,22 @@ def grid_axes(pricer: Pricer, inputs: tuple[str, ...]) -> list[Axis]:
     return axes
 
 
-def _step_range(horizon: int) -> Callable[[int, int], dict[str, object]]:
-    def says(start: int, stop: int) -> dict[str, object]:
-        return {
-            "step_from": None if start == 0 else start + 1,
-            "step_to": None if stop == horizon else stop,
-        }
+def _step_range(horizon: int) -> Callable[[Row, int, int], Row]:
+    def says(row: Row, start: int, stop: int) -> Row:
+        return replace(
+            row,
+            step_from=None if start == 0 else start + 1,
+            step_to=None if stop == horizon else stop,
+        )
 
     return says
 
 
-def _states(agent: str) -> Callable[[int, int], dict[str, object]]:
-    def says(start: int, stop: int) -> dict[str, object]:
-        return {} if stop - start == 3 else {"shows": (agent, frozenset(_STATE_ORDER[start:stop]))}
+def _states(agent: str) -> Callable[[Row, int, int], Row]:
+    def says(row: Row, start: int, stop: int) -> Row:
+        if stop - start == len(_STATE_ORDER):
+            return row
+        return replace(row, shows={**row.shows, agent: frozenset(_STATE_ORDER[start:stop])})
 
     return says
 
@@ -145,10 +148,10 @@ def _thresholds_axis(pricer: Pricer, agent: str) -> Axis:
     order = sorted(sums, key=lambda name: sums[name])
     number = np.array([order.index(setting.names[agent]) for setting in pricer.settings])
 
-    def says(start: int, stop: int) -> dict[str, object]:
+    def says(row: Row, start: int, stop: int) -> Row:
         if stop - start == len(order):
-            return {}
-        return {"thresholds": (agent, frozenset(order[start:stop]))}
+            return row
+        return replace(row, thresholds={**row.thresholds, agent: frozenset(order[start:stop])})
 
     return Axis(f"{agent} thresholds", len(order), number[pricer.situations.setting], says)
 
@@ -158,11 +161,9 @@ def cell_masses(pricer: Pricer, axes: list[Axis]) -> tuple[FloatArray, FloatArra
     shape = tuple(axis.cells for axis in axes)
     flat = np.ravel_multi_index(tuple(axis.where for axis in axes), shape)
     situations = pricer.situations
-    masses = [
-        np.bincount(flat, weights=side, minlength=int(np.prod(shape))).reshape(shape)
-        for side in (situations.plus, situations.minus)
-    ]
-    return masses[0], masses[1]
+    size = int(np.prod(shape))
+    plus, minus = (sums(flat, side, size) for side in (situations.plus, situations.minus))
+    return plus.reshape(shape), minus.reshape(shape)
 
 
 def as_rule(
@@ -173,16 +174,10 @@ def as_rule(
     for box in sorted(partition.boxes, key=lambda box: _print_order(axes, box)):
         where = tuple(slice(start, stop) for start, stop in box)
         value = values_of(plus[where].sum(keepdims=True), minus[where].sum(keepdims=True))
-        said: dict[str, object] = {}
-        named: dict[str, dict[str, frozenset[str]]] = {"shows": {}, "thresholds": {}}
+        row = Row(value=float(value.flat[0]))
         for axis, (start, stop) in zip(axes, box, strict=True):
-            for key, what in axis.says(start, stop).items():
-                if key in named:
-                    agent, accepted = what  # type: ignore[misc]
-                    named[key][agent] = accepted
-                else:
-                    said[key] = what
-        rows.append(Row(**said, **named, value=float(value.flat[0])))  # type: ignore[arg-type]
+            row = axis.says(row, start, stop)
+        rows.append(row)
     return Rule(NAME, pricer.agent, pricer.seen, tuple(rows))
 
 

@@ -26,10 +26,8 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
+from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.errors import ModelError
-
-FloatArray = NDArray[np.float64]
-IntArray = NDArray[np.int64]
 
 
 @dataclass(frozen=True)
@@ -103,7 +101,7 @@ class Evidence:
     @property
     def on_ladder(self) -> bool:
         """Whether the own count is a single whole number."""
-        return self.alpha.shape[0] == 1
+        return len(self.alpha) == 1
 
     @property
     def countable(self) -> bool:
@@ -113,7 +111,8 @@ class Evidence:
     @property
     def informative(self) -> bool:
         """Whether any observation can tell the answers apart."""
-        return bool(self.certain_plus or self.certain_minus or (self.worths() != 0).any())
+        telling = bool((self.worths() != 0).any())
+        return telling or bool(self.certain_plus + self.certain_minus > 0)
 
     def worths(self) -> FloatArray:
         """Log-likelihood ratio of each ordinary value, shape (K,), nats."""
@@ -126,9 +125,10 @@ class Evidence:
         ordinary = np.stack([self.plus, self.minus])
         mixed = (weight * ordinary).sum(axis=0)
         total = float((weight * ordinary * np.log(ordinary / mixed)).sum())
-        for certain, share in ((self.certain_plus, prior_plus), (self.certain_minus, 1 - prior_plus)):
-            if certain and share:
-                total += share * certain * float(np.log(1.0 / share))
+        certain = (self.certain_plus, self.certain_minus)
+        for mass, share in zip(certain, weight.ravel(), strict=True):
+            if mass and share:
+                total += float(share * mass * np.log(1.0 / share))
         return total
 
 

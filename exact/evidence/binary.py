@@ -86,4 +86,3 @@ def calibration(
 
 def _mass(p: float, x: int) -> float:
     return p if x == 1 else 1.0 - p
-

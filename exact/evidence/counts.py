@@ -56,7 +56,9 @@ def poisson(rate_plus: float, rate_minus: float) -> Evidence:
         if not (0.0 < value < math.inf):
             raise ModelError(f"poisson evidence: {name} must be a positive rate, not {value:g}")
     if max(rate_plus, rate_minus) > 10_000:
-        raise ModelError("poisson evidence: rates above 10,000 per step are refused; shorten the step")
+        raise ModelError(
+            "poisson evidence: rates above 10,000 per step are refused; shorten the step"
+        )
     top = int(max(poisson_law.isf(TAIL, rate_plus), poisson_law.isf(TAIL, rate_minus))) + 1
     x = np.arange(top + 1)
     plus, minus = poisson_law.pmf(x, rate_plus), poisson_law.pmf(x, rate_minus)

@@ -8,12 +8,13 @@ itself, which is exact too; more have to be split.
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 
 import numpy as np
 
+from thumbwright.exact.arrays import FloatArray, IntArray, sums
 from thumbwright.exact.errors import ModelError
-from thumbwright.exact.evidence.base import Evidence, FloatArray, IntArray, Loose
+from thumbwright.exact.evidence.base import Evidence, Loose
 
 LONGEST = 1000
 """A common step that makes some worth more than this many steps long is taken for a chance hit."""
@@ -75,8 +76,7 @@ def _merged(
     group = np.cumsum(starts) - 1
     size = int(group[-1]) + 1
     joined = ["|".join(words[i] for i in order[group == g]) for g in range(size)]
-    together = [np.bincount(group, weights=side[order], minlength=size) for side in (plus, minus)]
-    return together[0], together[1], joined
+    return sums(group, plus[order], size), sums(group, minus[order], size), joined
 
 
 def _ladder(worths: FloatArray) -> tuple[IntArray, FloatArray, float] | None:
@@ -113,7 +113,9 @@ def _common_step(lengths: FloatArray) -> float | None:
     return step if np.abs(lengths - count * step).max() <= 1e-12 * max(size, 1.0) else None
 
 
-def _cells_of(plus: FloatArray, minus: FloatArray):  # type: ignore[no-untyped-def]
+def _cells_of(
+    plus: FloatArray, minus: FloatArray
+) -> Callable[[float], tuple[IntArray, FloatArray, FloatArray]]:
     worths = np.log(plus) - np.log(minus)
 
     def cells(step: float) -> tuple[IntArray, FloatArray, FloatArray]:

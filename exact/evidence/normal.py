@@ -5,8 +5,9 @@ from __future__ import annotations
 import numpy as np
 from scipy.stats import norm
 
+from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.errors import ModelError
-from thumbwright.exact.evidence.base import FloatArray, IntArray, Loose
+from thumbwright.exact.evidence.base import Loose
 
 
 def normal(d: float, tail: float = 1e-12) -> Loose:
