@@ -1,0 +1,261 @@
+"""The command line: each verb translates its words into one library call and prints the answer.
+
+Nothing heavy is imported at the top: a verb imports what it needs when it runs, so that
+``--help`` answers at once. No traceback reaches a user; exit status is 0 when done, 2 when
+what was asked cannot be done as it stands (with the reasons), 1 when the machine could not do
+it (no room, no right to write), 130 when stopped by the user.
+"""
+
+from __future__ import annotations
+
+import os
+import signal
+import sys
+from collections.abc import Sequence
+from pathlib import Path
+from types import FrameType
+from typing import NoReturn
+
+import click
+
+CASE = click.argument("case", metavar="CASE")
+JSON = click.option("--json", "as_json", is_flag=True, help="Print all figures as JSON.")
+TRACE = "THUMBWRIGHT_TRACE"
+"""Environment variable: when set, a fault of the program itself is shown in full."""
+
+_TOO_LARGE = (
+    "this case needs more memory than there is: shorten the horizon, let agents see fewer others,"
+    " or split the group"
+)
+
+
+def _print_version(context: click.Context, _option: click.Parameter, asked: bool) -> None:
+    if asked and not context.resilient_parsing:
+        from importlib.metadata import version
+
+        click.echo(f"thumbwright {version('thumbwright')}")
+        context.exit()
+
+
+@click.group(context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 96})
+@click.option(
+    "--version",
+    is_flag=True,
+    is_eager=True,
+    expose_value=False,
+    callback=_print_version,
+    help="Print the version and end.",
+)
+def verbs() -> None:
+    """Put what watching others is worth into a rule that fits on a card, and say what it costs.
+
+    CASE is a case file, or the name of a starter; "thumbwright starter" lists the starters.
+    """
+
+
+@verbs.command()
+@click.argument("name", required=False)
+@click.argument("file", required=False, type=click.Path(path_type=Path))
+def starter(name: str | None, file: Path | None) -> None:
+    """Write a starter case file to begin from; list the starters when none is named.
+
+    FILE is NAME.toml in this folder where it is not given. A file that exists is left alone.
+    """
+    from thumbwright.distill import starters
+
+    if name is None:
+        click.echo(starters.listing())
+        return
+    written = starters.write_starter(name, file or Path(f"{name}.toml"))
+    click.echo(f"Wrote {written}. Next: thumbwright sheet {written}")
+
+
+@verbs.command()
+@click.argument("case", metavar="CASE", required=False)
+@click.option("--schema", is_flag=True, help="Print the JSON Schema of case files, for editors.")
+def check(case: str | None, schema: bool) -> None:
+    """Look through a case: every fault at once, or what will be computed and how long it takes."""
+    if schema:
+        from thumbwright.distill.case import Case
+
+        _show(_as_json(Case.json_schema()))
+        return
+    if case is None:
+        raise click.UsageError("Name a CASE to check, or give --schema.")
+    from thumbwright.distill import job
+    from thumbwright.distill.reading import read_case
+
+    _show(job.check(read_case(case)))
+
+
+@verbs.command()
+@CASE
+@click.option(
+    "--into",
+    type=click.Path(path_type=Path, file_okay=False),
+    metavar="DIR",
+    help="Folder to write into, made where it is missing; otherwise outputs/<name of the case>.",
+)
+def sheet(case: str, into: Path | None) -> None:
+    """The main job: exact beliefs, rules, their costs; writes the policy sheet and its data."""
+    from thumbwright.distill import job
+    from thumbwright.distill.progress import progress_on_terminal
+    from thumbwright.distill.reading import read_case
+
+    read = read_case(case)
+    with progress_on_terminal() as progress:
+        summary = job.sheet(read, into or Path("outputs") / read.name, progress)
+    _show(summary)
+
+
+@verbs.command()
+@CASE
+@click.option(
+    "--csv",
+    "file",
+    type=click.Path(path_type=Path, dir_okay=False),
+    metavar="FILE",
+    help="Write the table to FILE instead of printing it.",
+)
+def jumps(case: str, file: Path | None) -> None:
+    """The exact worth of every seen history, with its weights, as a CSV table."""
+    from thumbwright.distill import job
+    from thumbwright.distill.progress import progress_on_terminal
+    from thumbwright.distill.reading import read_case
+    from thumbwright.distill.writing import write_file
+
+    read = read_case(case)
+    with progress_on_terminal() as progress:
+        table = job.jumps(read, progress)
+    text = table.to_csv(index=False, lineterminator="\n")
+    if file is None:
+        click.echo(text, nl=False)
+    else:
+        click.echo(f"Wrote {write_file(file, text)} ({len(table)} histories).")
+
+
+@verbs.command()
+@CASE
+@JSON
+def outcomes(case: str, as_json: bool) -> None:
+    """What each agent ends up doing when all of them reason exactly."""
+    from thumbwright.distill import job
+    from thumbwright.distill.reading import read_case
+
+    found = job.outcomes(read_case(case))
+    _show(_as_json(found) if as_json else job.outcomes_text(found))
+
+
+@verbs.command()
+@CASE
+@click.argument("rule", metavar="RULE")
+@JSON
+def price(case: str, rule: str, as_json: bool) -> None:
+    """What a given rule costs, and how often each of its rows is used.
+
+    RULE is a CSV file as written by "sheet" (rule.csv), or one of: exact, plain-count, alone.
+    """
+    from thumbwright.distill import job
+    from thumbwright.distill.progress import progress_on_terminal
+    from thumbwright.distill.reading import read_case
+
+    read = read_case(case)
+    with progress_on_terminal() as progress:
+        found = job.price(read, rule, progress)
+    _show(_as_json(found) if as_json else job.price_text(found))
+
+
+def main(argv: Sequence[str] | None = None) -> int:
+    """Run the command line and return its exit status.
+
+    Parameters
+    ----------
+    argv : sequence of str, optional
+        The words after the program's name; those of this process where left out.
+    """
+    try:
+        before = signal.signal(signal.SIGTERM, _end_on_sigterm)
+    except ValueError:  # not the main thread: signals are the caller's affair
+        before = None
+    try:
+        status = _run(argv)
+    finally:
+        if before is not None:
+            signal.signal(signal.SIGTERM, before)
+    return status
+
+
+def _run(argv: Sequence[str] | None) -> int:
+    try:
+        verbs.main(
+            args=None if argv is None else list(argv),
+            prog_name="thumbwright",
+            standalone_mode=False,
+        )
+        # Flushed here rather than at exit, where a full disk or closed pipe prints a traceback.
+        if sys.stdout is not None:
+            sys.stdout.flush()
+    except SystemExit as stop:
+        return stop.code if isinstance(stop.code, int) else 1
+    except (KeyboardInterrupt, click.Abort):
+        return 130
+    except click.ClickException as error:
+        error.show()
+        return error.exit_code
+    except BrokenPipeError:
+        _forget_stdout()
+        return 1
+    except Exception as error:
+        return _explain(error)
+    return 0
+
+
+def _explain(error: Exception) -> int:
+    """Print what went wrong in plain words and return the exit status for it."""
+    from thumbwright.distill.faults import Faults
+    from thumbwright.exact.errors import ModelError
+
+    status = 1
+    if isinstance(error, Faults):
+        messages, status = error.messages, 2
+    elif isinstance(error, ModelError):
+        messages, status = (str(error),), 2
+    elif isinstance(error, MemoryError):
+        messages, status = (_TOO_LARGE,), 2
+    elif isinstance(error, OSError):
+        _forget_stdout()
+        where = f"{error.filename}: " if error.filename else ""
+        messages = (f"{where}{error.strerror or error}",)
+    elif os.environ.get(TRACE):
+        raise error
+    else:
+        messages = (
+            f"a fault in the program itself, not in your case: {type(error).__name__}: {error}",
+            f"(set {TRACE}=1 to see where, and please report it)",
+        )
+    for message in messages:
+        click.echo(message, err=True)
+    return status
+
+
+def _show(text: str) -> None:
+    click.echo(text.rstrip("\n"))
+
+
+def _as_json(found: object) -> str:
+    import json
+
+    return json.dumps(found, indent=2, ensure_ascii=False, allow_nan=False)
+
+
+def _forget_stdout() -> None:
+    """Let what is still buffered for standard output go nowhere, so that exit is quiet."""
+    try:
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+    except (AttributeError, OSError, ValueError):  # no standard output of its own: nothing to do
+        return
+
+
+def _end_on_sigterm(number: int, _frame: FrameType | None) -> NoReturn:
+    """Turn the signal into an exception, so that half-written files are removed on the way out."""
+    raise SystemExit(128 + number)

@@ -1,0 +1,149 @@
+"""Every form of the rule, with every figure, as one JSON file for other programs.
+
+Key order is fixed by this module and by the case; numbers have full double precision;
+infinities are the texts ``INF`` and ``-INF``, since JSON has none. The caution comes first.
+"""
+
+from __future__ import annotations
+
+import json
+from typing import Any
+
+from thumbwright.distill.cautions import cautions
+from thumbwright.distill.decimals import json_number
+from thumbwright.distill.exports.rule_csv import (
+    figure_units,
+    figures_record,
+    is_valued,
+    threshold_names,
+)
+from thumbwright.distill.findings import CostBasis, Findings, FormResult
+from thumbwright.distill.rules import SHOWN, Row, Rule
+
+NAME = "rule as JSON"
+
+
+def render(findings: Findings) -> dict[str, str | bytes]:
+    """Return ``rule.json``."""
+    return {"rule.json": rule_json(findings)}
+
+
+def rule_json(findings: Findings) -> str:
+    """Write the forms with their prices, and the ways of playing they are held against."""
+    case = findings.case
+    document: dict[str, Any] = {
+        "caution": list(cautions(case.question.stakes)),
+        "thumbwright": findings.version,
+        "case": {"name": case.name, "title": case.title, "digest": findings.digest},
+        "question": {
+            "plus": case.question.plus,
+            "minus": case.question.minus,
+            "prior_plus": case.question.prior_plus,
+            "stakes": case.question.stakes,
+        },
+        "time": {
+            "horizon": case.time.horizon,
+            "step_label": case.time.step_label,
+            "exchange": case.time.exchange,
+        },
+        "agent": findings.agent,
+        "seen": list(findings.seen),
+        "units": _units(),
+        "forms": {name: _form(result, findings) for name, result in findings.forms.items()},
+        "costs": {
+            "exact": figures_record(findings.exact),
+            "plain_count": figures_record(findings.plain_count),
+            "alone": figures_record(findings.alone),
+        },
+        "losses": _losses(findings.costs),
+        "watching_is_worth_something": findings.watching_is_worth,
+        "own_count": {
+            "is_whole": findings.count_is_whole,
+            "nats_per_count": json_number(findings.alpha),
+            "nats_per_step": json_number(findings.beta),
+            "count_per_value": (
+                None if findings.value_offsets is None else list(findings.value_offsets)
+            ),
+        },
+        "is_exact": findings.is_exact,
+        "caveats": list(findings.caveats),
+        "near_tie_mass": json_number(findings.near_tie_mass),
+    }
+    return json.dumps(document, indent=2, ensure_ascii=False, allow_nan=False) + "\n"
+
+
+def _units() -> dict[str, str]:
+    return {
+        "step_from": "step, inclusive; null is open",
+        "step_to": "step, inclusive; null is open",
+        "nats": "worth of the situation: what it adds to the log-odds for plus",
+        "minus_at_or_below": "own count; null is never",
+        "plus_at_or_above": "own count; null is never",
+        "steps_in_force": "steps per outing",
+        "calls": "share of outings that end in an answer by this row",
+        "information_kept": "share of what one best fixed worth leaves to gain",
+        "losses": "loss; per_step is loss per step",
+        "near_tie_mass": "probability",
+        **figure_units(),
+    }
+
+
+def _form(result: FormResult, findings: Findings) -> dict[str, Any]:
+    rows = []
+    for row, use in zip(result.rule.rows, result.uses, strict=True):
+        record = _row(row, result.rule, findings)
+        record["steps_in_force"] = json_number(use.steps_in_force)
+        record["calls"] = json_number(use.calls)
+        rows.append(record)
+    return {
+        "rows": rows,
+        "information_kept": json_number(result.information_kept),
+        "information_ceiling": json_number(result.information_ceiling),
+        "costs": figures_record(result.figures),
+        "notes": list(result.notes),
+    }
+
+
+def _row(row: Row, rule: Rule, findings: Findings) -> dict[str, Any]:
+    """Return one row; every seen agent is named with all states that the row accepts."""
+    record: dict[str, Any] = {
+        "step_from": row.step_from,
+        "step_to": row.step_to,
+        "shows": {
+            agent: [state for state in SHOWN if state in row.shows.get(agent, SHOWN)]
+            for agent in rule.seen
+        },
+    }
+    if any(other.thresholds for other in rule.rows):
+        order = threshold_names(rule, findings)
+        record["thresholds"] = {
+            agent: [name for name in order if name in names]
+            for agent, names in row.thresholds.items()
+        }
+    if is_valued(rule):
+        record["nats"] = json_number(row.value)
+    else:
+        record["minus_at_or_below"] = row.minus_at
+        record["plus_at_or_above"] = row.plus_at
+    record["base"] = row.base
+    return record
+
+
+def _losses(basis: CostBasis | None) -> dict[str, Any] | None:
+    """Return the losses used; null where none are known."""
+    if basis is None:
+        return None
+    return {
+        "false_plus": json_number(basis.false_plus),
+        "false_minus": json_number(basis.false_minus),
+        "per_step": json_number(basis.per_step),
+        "undecided": json_number(basis.undecided),
+        "inferred_from_thresholds": basis.inferred,
+        "loss_ratio_range": _range(basis.loss_ratio_range),
+        "per_step_range": _range(basis.per_step_range),
+        "benefit_kept_range": _range(basis.benefit_kept_range),
+    }
+
+
+def _range(pair: tuple[float, float] | None) -> list[Any] | None:
+    return None if pair is None else [json_number(end) for end in pair]

@@ -1,0 +1,1 @@
+"""Tests of thumbwright, and slow independent versions of what it computes."""
