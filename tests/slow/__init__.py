@@ -1,0 +1,1 @@
+"""Slow, independent versions of the engine: enumeration, a pair walk, a simulation."""
