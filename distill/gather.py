@@ -64,17 +64,14 @@ def gather(case: Case, progress: Progress | None = None) -> Findings:
     """Everything that is printed about the rule's agent of a case."""
     pricer, missing = pricer_of(case, progress)
     wanted = Wanted(case.rule.rows, tuple(case.rule.inputs), case.rule.max_accuracy_lost)
-    forms: dict[str, FormResult] = {
-        name: _form_result(pricer, name, wanted, progress)
-        for name in MODULES
-        if name in case.rule.forms
-    }
+    forms, left_out = _forms(pricer, case, wanted, progress)
     main = next(iter(forms.values()))
     exact = pricer.figures(pricer.exact_tally)
     plain = pricer.figures(pricer.plain_count_tally())
     alone = pricer.figures(pricer.alone_tally)
     evidence = _evidence(pricer)
     caveats = _caveats(pricer, [*(f.figures for f in forms.values()), plain, alone], missing)
+    caveats = (*caveats, *left_out)
     return Findings(
         case=case,
         digest=case.digest,
@@ -100,6 +97,26 @@ def gather(case: Case, progress: Progress | None = None) -> Findings:
         near_tie_mass=sum(s.weight * s.solution.near_tie_mass for s in pricer.settings),
         example=example(pricer, main.rule),
     )
+
+
+def _forms(
+    pricer: Pricer, case: Case, wanted: Wanted, progress: Progress | None
+) -> tuple[dict[str, FormResult], tuple[str, ...]]:
+    """Every form asked for that this case can have; sentences on those it cannot.
+
+    Raises ModelError where it can have none.
+    """
+    forms: dict[str, FormResult] = {}
+    refusals: list[ModelError] = []
+    for name in MODULES:
+        if name in case.rule.forms:
+            try:
+                forms[name] = _form_result(pricer, name, wanted, progress)
+            except ModelError as refusal:
+                refusals.append(refusal)
+    if not forms:
+        raise refusals[0]
+    return forms, tuple(f"A form is left out: {refusal}." for refusal in refusals)
 
 
 def _form_result(

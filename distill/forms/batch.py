@@ -27,12 +27,12 @@ class Batch:
 
     def __init__(self, pricer: Pricer) -> None:
         self._pricer = pricer
-        self._together = all(
+        self.together = all(
             fits(s.solution.group, s.solution.group.index[pricer.agent]) for s in pricer.settings
         )
         situations = pricer.situations
         shape = (len(pricer.settings), 3, pricer.group.horizon + 1)
-        if self._together:
+        if self.together:
             where = (situations.setting, situations.states[:, 0], situations.step)
             flat = np.ravel_multi_index(where, shape)
             self._masses = [
@@ -46,7 +46,7 @@ class Batch:
 
     def tallies(self, layouts: Sequence[Layout]) -> list[Tally]:
         """How each layout turns out."""
-        if not self._together:
+        if not self.together:
             return [self._pricer.rule_tally(as_rule(self._pricer, layout)) for layout in layouts]
         found: list[Tally] = []
         for start in range(0, len(layouts), MOST_AT_ONCE):
@@ -67,7 +67,7 @@ class Batch:
     def changed(self, original: Layout, layouts: Sequence[Layout]) -> list[float]:
         """Probability that each layout ever acts differently from the original in one outing."""
         pricer = self._pricer
-        if not self._together:
+        if not self.together:
             rule = as_rule(pricer, original)
             return [pricer.changed(rule, as_rule(pricer, layout)) for layout in layouts]
         prior = np.array([pricer.prior_plus, 1.0 - pricer.prior_plus])

@@ -13,11 +13,13 @@ watch.
 
 from __future__ import annotations
 
+from collections.abc import Iterable
+
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms import Distilled, Wanted
 from thumbwright.distill.forms.batch import Batch
 from thumbwright.distill.forms.boxes import gain
-from thumbwright.distill.forms.runs import Layout, as_rule, lossless, moved_bars
+from thumbwright.distill.forms.runs import Layout, Moves, as_rule, lossless, moved_bars
 from thumbwright.exact.engine import Progress
 from thumbwright.exact.errors import ModelError
 
@@ -28,6 +30,9 @@ UNNOTICED = 1e-4
 
 MOST_STATES = 27
 """More joint shown states than this do not fit a card of lines."""
+
+PRICED_ONE_BY_ONE = 12
+"""So many candidates are priced where each has to be played by itself."""
 
 MOST_MOVES = 200
 """Bars are moved one at a time, at most so often; a search ends long before."""
@@ -40,11 +45,11 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
     grows, or where the agent sees too many others for a card of lines.
     """
     evidence = pricer.group.agents[pricer.group.index[pricer.agent]].evidence
-    if not evidence.on_ladder or not evidence.alpha[0] > 0:
+    if not evidence.countable or not evidence.alpha[0] > 0:
         raise ModelError(
-            'the form "lines" needs an own count that is one whole number and speaks for plus as '
-            f'it grows, which {evidence.kind} evidence with these keys has not; leave "lines" out '
-            "of the forms, or swap the two answers if the count speaks for minus"
+            'the form "lines" needs an own count that a person can keep, one whole number that '
+            f"speaks for plus as it grows, which {evidence.kind} evidence with these keys has not; "
+            'leave "lines" out of the forms, or swap the two answers if the count speaks for minus'
         )
     states = 3 ** len(pricer.seen) if "shown" in wanted.inputs else 1
     if states > MOST_STATES:
@@ -68,16 +73,16 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
         search.merge_down_to(wanted.rows)
     if len(search.layout) < before:
         notes.append(
-            f"{before - len(search.layout)} more merged at the least added risk, and bars set "
-            "between the exact ones of each line, where the risk is least."
+            f"{before - len(search.layout)} more merged at the least added risk, their bars set "
+            "between the exact ones they cover, where the risk is least."
         )
-        search.settle_bars()
     if mixed:
         notes.append(
             f"{mixed} combinations of {' and '.join(wanted.inputs)} have exact bars that depend on "
-            "more than the card may look at, such as the time of a call; they have the bars of "
-            "their pooled worth."
+            "more than the card may look at, such as the time of a call; their bars are set "
+            "between the exact ones, where the risk is least."
         )
+    search.settle_bars()
     rule = as_rule(pricer, search.layout)
     situations = pricer.situations
     pooled = situations.pooled(situations.rows_of(rule, pricer.settings), len(rule.rows))
@@ -93,13 +98,14 @@ class Search:
     ) -> None:
         self._pricer, self._wanted, self._progress = pricer, wanted, progress
         self._batch = Batch(pricer)
+        self._moves = Moves(pricer, wanted.inputs)
         self._first = layout
         self.layout = layout
 
     def merge_unnoticed(self) -> None:
         """Merge while the rule stays within UNNOTICED of the lossless one, least change first."""
         while True:
-            candidates = list(self.layout.merges(keep_base=True))
+            candidates = self._promising(self.layout.merges(unnoticed=True))
             changed = self._batch.changed(self._first, candidates)
             if not changed or min(changed) >= UNNOTICED:
                 return
@@ -133,7 +139,7 @@ class Search:
         )
 
     def _cheapest_merge(self) -> Layout | None:
-        candidates = list(self.layout.merges(keep_base=False))
+        candidates = self._promising(self.layout.merges(unnoticed=False))
         if not candidates:
             return None
         risks = self._batch.objectives(candidates)
@@ -143,13 +149,22 @@ class Search:
         """Move bars by one while that lowers the risk, between the exact bars of their line."""
         (risk,) = self._batch.objectives([self.layout])
         for _ in range(MOST_MOVES):
-            candidates = list(moved_bars(self._pricer, self._wanted.inputs, self.layout))
+            candidates = self._promising(moved_bars(self._pricer, self._wanted.inputs, self.layout))
             risks = self._batch.objectives(candidates)
             if not risks or min(risks) >= risk - 1e-12:
                 return
             risk = min(risks)
             self.layout = candidates[risks.index(risk)].tidied()
             self._tell()
+
+    def _promising(self, candidates: Iterable[Layout]) -> list[Layout]:
+        """All candidates where pricing is cheap; else those that move the fewest bars by least."""
+        every = list(candidates)
+        if self._batch.together or len(every) <= PRICED_ONE_BY_ONE:
+            return every
+        moves = [self._moves.between(self.layout, layout) for layout in every]
+        order = sorted(range(len(every)), key=lambda k: (moves[k], k))
+        return [every[k] for k in order[:PRICED_ONE_BY_ONE]]
 
     def _tell(self) -> None:
         if self._progress:

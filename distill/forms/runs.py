@@ -25,13 +25,19 @@ Sides = tuple[frozenset[int], ...]
 
 @dataclass(frozen=True)
 class Line:
-    """Bars for a range of steps, both ends included; a bar of None is never reached."""
+    """Bars for a range of steps, both ends included; a bar of None is never reached.
+
+    ``free`` marks a line whose bars are not those of all exact worths that it covers: because the
+    situations of one cell differ, or because lines were merged at a cost. Its bars are for pricing
+    to choose.
+    """
 
     start: int
     stop: int
     minus_at: int | None
     plus_at: int | None
     base: bool = False
+    free: bool = False
 
     @property
     def bars(self) -> tuple[int | None, int | None]:
@@ -76,42 +82,47 @@ class Layout:
             kept: list[Line] = []
             for line in lines:
                 if kept and kept[-1].bars == line.bars and kept[-1].base == line.base:
-                    kept[-1] = replace(kept[-1], stop=line.stop)
+                    free = kept[-1].free or line.free
+                    kept[-1] = replace(kept[-1], stop=line.stop, free=free)
                 else:
                     kept.append(line)
             groups.append((sides, tuple(kept)))
         return Layout(tuple(groups))
 
-    def merges(self, keep_base: bool) -> Iterator[Layout]:
+    def merges(self, unnoticed: bool) -> Iterator[Layout]:
         """Every layout with one line fewer: neighbouring lines of a group, or whole groups.
 
-        The merged line takes every pair of bars between those of the two. With ``keep_base`` a
-        base line is not merged into one that is not.
+        The merged line takes every pair of bars between those of the two. With ``unnoticed``, for
+        merges that hardly change anything, a base line is not merged into one that is not and the
+        merged bars are not set free.
         """
         for number, (sides, lines) in enumerate(self.groups):
             for i in range(len(lines) - 1):
                 one, other = lines[i], lines[i + 1]
-                if keep_base and one.base != other.base:
+                if unnoticed and one.base != other.base:
                     continue
+                free = not unnoticed or one.free or other.free
                 for minus_at, plus_at in between(one, other):
-                    line = Line(one.start, other.stop, minus_at, plus_at, one.base and other.base)
+                    base = one.base and other.base
+                    line = Line(one.start, other.stop, minus_at, plus_at, base, free)
                     shorter = (*lines[:i], line, *lines[i + 2 :])
                     yield self._with_group(number, sides, shorter)
         for first in range(len(self.groups)):
             for second in range(first + 1, len(self.groups)):
-                yield from self._joined(first, second, keep_base)
+                yield from self._joined(first, second, unnoticed)
 
-    def _joined(self, first: int, second: int, keep_base: bool) -> Iterator[Layout]:
+    def _joined(self, first: int, second: int, unnoticed: bool) -> Iterator[Layout]:
         """The two groups as one, where both are a single line and together a box of contexts."""
         (sides, lines), (other_sides, other_lines) = self.groups[first], self.groups[second]
         union = joined(sides, other_sides)
         if union is None or len(lines) > 1 or len(other_lines) > 1:
             return
-        if keep_base and lines[0].base != other_lines[0].base:
+        if unnoticed and lines[0].base != other_lines[0].base:
             return
+        free = not unnoticed or lines[0].free or other_lines[0].free
         rest = tuple(g for k, g in enumerate(self.groups) if k not in (first, second))
         for minus_at, plus_at in between(lines[0], other_lines[0]):
-            line = replace(lines[0], minus_at=minus_at, plus_at=plus_at, base=False)
+            line = replace(lines[0], minus_at=minus_at, plus_at=plus_at, base=False, free=free)
             yield Layout((*rest[:first], (union, (line,)), *rest[first:]))
 
     def _with_group(self, number: int, sides: Sides, lines: tuple[Line, ...]) -> Layout:
@@ -180,14 +191,14 @@ def lossless(pricer: Pricer, inputs: tuple[str, ...]) -> tuple[Layout, int]:
                 (pair,) = zip(*exact_bars(pricer, worth, middle), strict=True)
             else:
                 (pair,) = bars
-            _append(lines, int(step), *_named(pricer, pair), silent)
+            _append(lines, int(step), *_named(pricer, pair), silent, free=len(bars) > 1)
         lines[-1] = replace(lines[-1], stop=group.horizon)
         groups.append((_sides(context, len(pricer.seen), "shown" in inputs), tuple(lines)))
     return Layout(_same_lines_together(groups)), mixed
 
 
 def moved_bars(pricer: Pricer, inputs: tuple[str, ...], layout: Layout) -> Iterator[Layout]:
-    """Every layout with one bar moved by one, towards another exact bar that its line covers."""
+    """Every layout with one bar of a free line moved by one, within the exact bars it covers."""
     situations = pricer.situations
     contexts = _contexts(pricer, inputs)
     exact = exact_bars(pricer, situations.worth, situations.step)
@@ -201,12 +212,44 @@ def moved_bars(pricer: Pricer, inputs: tuple[str, ...], layout: Layout) -> Itera
             covered = inside & (situations.step >= line.start) & (situations.step <= line.stop)
             for name, bars in zip(("minus_at", "plus_at"), exact, strict=True):
                 bar = getattr(line, name)
-                if bar is None or not covered.any():
+                if bar is None or not line.free or not covered.any():
                     continue
                 for to in (bar - 1, bar + 1):
                     other = replace(line, **{name: to})
                     if other.apart and bars[covered].min() <= to <= bars[covered].max():
                         yield layout.with_line(number, other)
+
+
+class Moves:
+    """How far bars move from one layout to another, weighted with how often that matters."""
+
+    def __init__(self, pricer: Pricer, inputs: tuple[str, ...]) -> None:
+        situations = pricer.situations
+        self._contexts, self._step = _contexts(pricer, inputs), situations.step
+        self._mass = situations.plus + situations.minus
+        lowest, highest = count_range(pricer)
+        self._never = (lowest - 1, highest + 1)
+
+    def between(self, one: Layout, other: Layout) -> float:
+        """Sum over situations of their mass times the steps by which bars move."""
+        first, second = self._bars(one), self._bars(other)
+        # Beyond a few steps a bar is out of reach either way.
+        moved = np.minimum(np.abs(first - second), 4).sum(axis=0)
+        return float(self._mass @ moved)
+
+    def _bars(self, layout: Layout) -> IntArray:
+        bars = np.empty((2, len(self._step)), dtype=np.int64)
+        for sides, lines in layout.groups:
+            inside = np.ones(len(self._step), dtype=bool)
+            for k, codes in enumerate(sides):
+                inside &= np.isin(self._contexts[:, k], list(codes))
+            where = np.flatnonzero(inside)
+            number = np.searchsorted([line.stop for line in lines], self._step[where])
+            for row, name in enumerate(("minus_at", "plus_at")):
+                named = [getattr(line, name) for line in lines]
+                filled = [self._never[row] if bar is None else bar for bar in named]
+                bars[row, where] = np.array(filled)[number]
+        return bars
 
 
 def _sides(context: tuple[int, ...], seen: int, shown: bool) -> Sides:
@@ -216,17 +259,23 @@ def _sides(context: tuple[int, ...], seen: int, shown: bool) -> Sides:
 
 
 def _append(
-    lines: list[Line], step: int, minus_at: int | None, plus_at: int | None, base: bool
+    lines: list[Line],
+    step: int,
+    minus_at: int | None,
+    plus_at: int | None,
+    base: bool,
+    free: bool = False,
 ) -> None:
     """One more step; a range reaches over steps at which the context cannot occur."""
     if lines and lines[-1].bars == (minus_at, plus_at):
-        lines[-1] = replace(lines[-1], stop=step, base=lines[-1].base and base)
+        last = lines[-1]
+        lines[-1] = replace(last, stop=step, base=last.base and base, free=last.free or free)
         return
     start = 1 if not lines else lines[-1].stop + 1
     if lines and start < step:
         lines[-1] = replace(lines[-1], stop=step - 1)
         start = step
-    lines.append(Line(start, step, minus_at, plus_at, base))
+    lines.append(Line(start, step, minus_at, plus_at, base, free))
 
 
 def exact_bars(pricer: Pricer, worth: FloatArray, step: IntArray) -> tuple[IntArray, IntArray]:

@@ -1,0 +1,250 @@
+"""The back of the sheet: what a modeller needs to judge the card and to make it again."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import Any
+
+from thumbwright.distill.findings import Figures, Findings, FormResult
+from thumbwright.distill.rules import SHOWN, Row
+from thumbwright.distill.sheet_chart import chart
+from thumbwright.distill.sheet_parts import Grid, Modeller, Note
+from thumbwright.distill.sheet_voice import Voice, own_evidence
+from thumbwright.distill.sheet_words import clean, five, listing, signed
+
+FORM_TITLES = {
+    "lines": "The lines: bars on the own count",
+    "table": "The table: values in place of what others show",
+}
+
+
+def modeller(findings: Findings, voice: Voice) -> Modeller:
+    """Build the back."""
+    return Modeller(
+        intro=_intro(findings),
+        chart=chart(findings, voice),
+        rules=tuple(_rule(name, result, findings, voice) for name, result in _forms(findings)),
+        rule_notes=tuple(
+            Note(f"{name}:", " ".join(_rule_notes(result))) for name, result in _forms(findings)
+        ),
+        figures=_figures(findings),
+        figure_notes=_figure_notes(findings),
+        losses=_losses(findings),
+        exactness=_exactness(findings),
+        settings=_settings(findings, voice),
+    )
+
+
+def _forms(findings: Findings) -> list[tuple[str, FormResult]]:
+    order: list[str] = [name for name in ("lines", "table") if name in findings.forms]
+    order += [name for name in findings.forms if name not in order]
+    return [(name, findings.forms[name]) for name in order]
+
+
+def _intro(findings: Findings) -> str:
+    one = "the agent’s own observations so far, this one included"
+    text = f"A step is one observation; its number counts {one}. Worths are in nats (log-odds)."
+    if findings.count_is_whole and findings.alpha is not None:
+        text += f" One unit of the own count is worth {five(findings.alpha)} nats"
+        if findings.beta:
+            text += f", and every observation {five(findings.beta)} nats besides"
+        text += "."
+    return text
+
+
+def _steps(row: Row) -> str:
+    first, last = row.step_from or 1, row.step_to
+    if last is None:
+        return f"{first} on"
+    return str(first) if last == first else f"{first} to {last}"
+
+
+def _shown(row: Row, findings: Findings, voice: Voice) -> str:
+    parts = []
+    for agent in findings.seen:
+        states = [state for state in SHOWN if state in row.shows.get(agent, SHOWN)]
+        text = "any" if len(states) == len(SHOWN) else " or ".join(states)
+        parts.append(f"{voice.names[agent]} {text}")
+    habits = voice.habits(row.thresholds)
+    return "; ".join([*parts, habits] if habits else parts)
+
+
+def _rule(name: str, result: FormResult, findings: Findings, voice: Voice) -> Grid:
+    """Return the rows of one form with how often each is used."""
+    bars = result.rule.has_bars
+    in_units = not bars and findings.count_is_whole and bool(findings.alpha)
+    head = ["row", "steps", "shown"]
+    if bars:
+        head += ["minus at or below", "plus at or above"]
+    else:
+        head += ["nats", "in units of the count"] if in_units else ["nats"]
+    head += ["steps in force", "calls"]
+    rows = []
+    for place, (row, use) in enumerate(zip(result.rule.rows, result.uses, strict=True)):
+        cells = [str(place + 1), _steps(row), _shown(row, findings, voice)]
+        if bars:
+            cells += [_bar(row.minus_at), _bar(row.plus_at)]
+        else:
+            cells.append(five(row.value))
+            if in_units and row.value is not None and findings.alpha:
+                cells.append(five(row.value / findings.alpha))
+        rows.append((*cells, five(use.steps_in_force), five(use.calls)))
+    return Grid(FORM_TITLES.get(name, f"The form {name}"), tuple(head), tuple(rows))
+
+
+def _bar(bar: int | None) -> str:
+    return "never" if bar is None else signed(bar)
+
+
+def _rule_notes(result: FormResult) -> list[str]:
+    said = []
+    if result.information_kept is not None:
+        kept = five(result.information_kept)
+        said.append(f"Information kept {kept} (share of the log-loss gain).")
+    if result.information_ceiling is not None:
+        count = len(result.rule.rows)
+        said.append(
+            f"Ceiling over any {count} groups of situations: {five(result.information_ceiling)}."
+        )
+    return [*said, *(clean(note) for note in result.notes)] or ["no remarks."]
+
+
+def _figures(findings: Findings) -> Grid:
+    """Return every figure of every way of playing, with five digits."""
+    ways = [
+        ("exact", findings.exact),
+        *((name, result.figures) for name, result in _forms(findings)),
+        ("plain count", findings.plain_count),
+        ("alone", findings.alone),
+    ]
+    measures: list[tuple[str, Callable[[Figures], float | None]]] = [
+        ("wrong, given plus", lambda way: way.wrong_given_plus),
+        ("wrong, given minus", lambda way: way.wrong_given_minus),
+        ("undecided at the horizon, given plus", lambda way: way.given_plus["undecided"]),
+        ("undecided at the horizon, given minus", lambda way: way.given_minus["undecided"]),
+        ("mean steps, given plus", lambda way: way.given_plus["steps"]),
+        ("mean steps, given minus", lambda way: way.given_minus["steps"]),
+        ("mean steps", lambda way: way.mean_step),
+        ("accuracy", lambda way: way.accuracy),
+        ("accuracy lost against exact", lambda way: way.accuracy_lost),
+        ("delay added against exact (steps)", lambda way: way.delay_added),
+        ("risk (loss)", lambda way: way.risk),
+        ("benefit kept (share)", lambda way: way.benefit_kept),
+        ("commitments read by the off-model convention", lambda way: way.off_model),
+    ]
+    rows = tuple(
+        (label, *(_measure(measure(way), label, findings) for _, way in ways))
+        for label, measure in measures
+    )
+    return Grid(
+        "Figures with five digits, one adopter",
+        ("measure (probability where no unit stands)", *(name for name, _ in ways)),
+        rows,
+    )
+
+
+def _measure(value: float | None, label: str, findings: Findings) -> str:
+    if value is None and label.startswith("benefit"):
+        return "none" if findings.watching_is_worth else "not stated"
+    return five(value)
+
+
+def _figure_notes(findings: Findings) -> tuple[str, ...]:
+    said = [
+        "One adopter: only this agent uses the rule; the others play exact and take everyone for"
+        " exact. Exact play is a benchmark and no ceiling: thresholds are not chosen anew for"
+        " company, so benefit kept may exceed 1.",
+        "Plain count: a commitment seen counts as that agent’s threshold less the prior, an"
+        " undecided agent as nothing.",
+    ]
+    if not findings.watching_is_worth:
+        said.append(
+            "Watching is worth nothing here (exact play saves less than 1 % of the risk alone), so"
+            " no benefit kept is stated."
+        )
+    return tuple(said)
+
+
+def _span(ends: tuple[float, float] | None) -> str:
+    return "" if ends is None else f"{five(ends[0])} to {five(ends[1])}"
+
+
+def _losses(findings: Findings) -> Grid:
+    """Return the losses that risk is counted in, and what they can be."""
+    basis, head = findings.costs, ("loss", "used", "range that the thresholds allow")
+    if basis is None:
+        return Grid("Losses", head, (("all", "none stated, none inferred: no risk is known", ""),))
+    ratio = basis.false_plus / basis.false_minus
+    undecided = "answers by belief" if basis.undecided is None else five(basis.undecided)
+    rows = [
+        ("false plus", five(basis.false_plus), ""),
+        ("false minus", five(basis.false_minus), ""),
+        ("false plus over false minus", five(ratio), _span(basis.loss_ratio_range)),
+        ("one step", five(basis.per_step), _span(basis.per_step_range)),
+        ("undecided at the horizon", undecided, ""),
+    ]
+    if basis.benefit_kept_range is not None:
+        name, result = _forms(findings)[0]
+        kept = five(result.figures.benefit_kept)
+        rows.append((f"benefit kept ({name})", kept, _span(basis.benefit_kept_range)))
+    how = "inferred from the thresholds" if basis.inferred else "stated in the case"
+    return Grid(f"Losses, {how}", head, tuple(rows))
+
+
+def _exactness(findings: Findings) -> tuple[str, ...]:
+    said = [
+        "All figures are exact sums over the model: nothing was split, dropped, sampled or read"
+        " by the off-model convention."
+        if findings.is_exact
+        else "Not all figures are exact; what is not:"
+    ]
+    said += [clean(text) for text in findings.caveats]
+    said.append(
+        "Probability decided by the tie rule (between 1e−12 and 1e−9 nats of a threshold):"
+        f" {five(findings.near_tie_mass)}."
+    )
+    return tuple(said)
+
+
+def _settings(findings: Findings, voice: Voice) -> Grid:
+    """Return what is needed to make the same sheet again."""
+    case = findings.case
+    rows = [
+        ("program", f"thumbwright {findings.version}"),
+        ("case", f"{clean(case.name)}, digest {findings.digest}"),
+        ("answers", f"plus: {voice.plus}; minus: {voice.minus}"),
+        ("prior probability of plus", f"{case.question.prior_plus:g}"),
+        ("stakes", case.question.stakes),
+        ("evidence", _spec(own_evidence(findings))),
+        ("horizon", f"{case.time.horizon} steps"),
+        ("exchange", case.time.exchange),
+        *((f"thresholds {clean(name)}", _spec(spec)) for name, spec in case.thresholds.items()),
+        *((f"agent {voice.names[key]}", _agent(key, findings, voice)) for key in case.agents),
+        ("rule for", f"{voice.owner}, looking at {listing(list(case.rule.inputs))}"),
+    ]
+    return Grid("Settings", ("setting", "value"), tuple(rows))
+
+
+def _spec(spec: Any) -> str:
+    """Write the keys of a part of the case that are set."""
+    keys = spec.model_dump(by_alias=True, exclude_none=True)
+    return "; ".join(f"{key} {_value(value)}" for key, value in keys.items())
+
+
+def _value(value: Any) -> str:
+    if isinstance(value, bool | int | float):
+        return f"{value:g}".replace("-", "−") if isinstance(value, float) else str(value)
+    if isinstance(value, list):
+        return ", ".join(_value(item) for item in value)
+    return clean(str(value))
+
+
+def _agent(key: str, findings: Findings, voice: Voice) -> str:
+    agent = findings.case.agents[key]
+    if isinstance(agent.thresholds, str):
+        habit = clean(agent.thresholds)
+    else:
+        habit = "unknown: " + ", ".join(f"{clean(n)} {s:g}" for n, s in agent.thresholds.items())
+    sees = ", ".join(voice.names[other] for other in agent.sees) or "nobody"
+    own = "" if agent.evidence is None else f"; own evidence: {_spec(agent.evidence)}"
+    return f"id {key}; thresholds {habit}; sees {sees}{own}"

@@ -1,0 +1,202 @@
+"""The parts of a sheet as plain data: what the templates loop over and nothing else.
+
+Every field is text that is ready to print (not yet escaped), a whole number, or a tuple of
+parts. The templates decide on markup only.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True)
+class Act:
+    """One numbered act of a check."""
+
+    number: int
+    lead: str
+    text: str
+
+
+@dataclass(frozen=True)
+class Note:
+    """A short remark with a lead in bold."""
+
+    lead: str
+    text: str
+
+
+@dataclass(frozen=True)
+class Grid:
+    """A table: the first cell of each row is its header. ``marked`` rows stand out."""
+
+    caption: str
+    head: tuple[str, ...]
+    rows: tuple[tuple[str, ...], ...]
+    marked: frozenset[int] = frozenset()
+
+
+@dataclass(frozen=True)
+class Zone:
+    """A run of boxes with one act. ``label`` is short and may be ""; ``spoken`` is in full."""
+
+    kind: str
+    boxes: int
+    label: str
+    spoken: str
+
+
+@dataclass(frozen=True)
+class Line:
+    """One line of the card.
+
+    ``zones`` is empty where the scale would be too long for boxes; then ``minus_at`` and
+    ``plus_at`` are printed large. ``below`` holds what found no room in a zone.
+    """
+
+    letter: str
+    heading: str
+    note: str
+    minus_at: str
+    plus_at: str
+    zones: tuple[Zone, ...]
+    below: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class Peg:
+    """One box of the scale: the figure printed, and its side in words ("" at the start)."""
+
+    figure: str
+    side: str
+
+
+@dataclass(frozen=True)
+class Block:
+    """The line of one shown state where the numbers change as the checks go on.
+
+    Each row is (range of checks, number for the act on few, number for the act on many).
+    """
+
+    letter: str
+    heading: str
+    note: str
+    rows: tuple[tuple[str, str, str], ...]
+
+
+@dataclass(frozen=True)
+class Card:
+    """What to read the act from.
+
+    ``kind`` is "strips" (boxes), "numbers" (two large numbers per line), "blocks" (numbers by
+    range of checks) or "table" (no card is possible; strengths in words).
+    ``left_boxes`` and ``right_boxes`` split the scale before its start box; ``few`` and ``many``
+    are the column heads for the two acts; ``letter_of_row`` is the letter under which each row
+    of the rule is printed, ``alone`` that of what to use where nobody may be on watch ("" where
+    the card has nothing for that).
+    """
+
+    kind: str
+    heading: str
+    shown: str
+    left: str
+    right: str
+    left_boxes: int
+    right_boxes: int
+    pegs: tuple[Peg, ...]
+    lines: tuple[Line, ...]
+    blocks: tuple[Block, ...]
+    few: str
+    many: str
+    check: str
+    strengths: Grid | None
+    letter_of_row: tuple[str, ...]
+    alone: str
+
+
+@dataclass(frozen=True)
+class Mark:
+    """A tick of an axis: place (user units) and its figure."""
+
+    at: str
+    figure: str
+
+
+@dataclass(frozen=True)
+class Curve:
+    """One curve of the chart as SVG path data; ``label_y`` is where its name stands."""
+
+    label: str
+    path: str
+    rule_path: str
+    band: str
+    dash: str
+    end_y: str
+    label_y: str
+
+
+@dataclass(frozen=True)
+class Chart:
+    """The chart of worths over the checks, in user units of its view box."""
+
+    width: int
+    height: int
+    left: int
+    right: int
+    top: int
+    bottom: int
+    zero_y: str
+    across: tuple[Mark, ...]
+    up: tuple[Mark, ...]
+    curves: tuple[Curve, ...]
+    across_title: str
+    up_title: str
+    title: str
+    description: str
+    reading: str
+    figures: Grid
+
+
+@dataclass(frozen=True)
+class Modeller:
+    """The back of the sheet."""
+
+    intro: str
+    chart: Chart | None
+    rules: tuple[Grid, ...]
+    rule_notes: tuple[Note, ...]
+    figures: Grid
+    figure_notes: tuple[str, ...]
+    losses: Grid
+    exactness: tuple[str, ...]
+    settings: Grid
+
+
+@dataclass(frozen=True)
+class Sheet:
+    """A whole sheet."""
+
+    page_title: str
+    title: str
+    case_title: str
+    owner: str
+    watching: str
+    override: str
+    caution_first: bool
+    caution_lead: str
+    cautions: tuple[str, ...]
+    supposes: tuple[str, ...]
+    acts_heading: str
+    acts: tuple[Act, ...]
+    card: Card
+    notes: tuple[Note, ...]
+    cost_heading: str
+    costs: Grid
+    cost_note: str
+    example_heading: str
+    example: Grid | None
+    foot: str
+    modeller: Modeller
+    tight: bool = False
+    example_on_front: bool = True
+    long: bool = False
