@@ -104,7 +104,7 @@ def changed_many(solution: Solution, position: int, reference: Bars, bars: Bars)
 
 
 class _Columns:
-    """Walks of B rules over a dense ladder; mass has axes (count, rule, shown state, given)."""
+    """Walks of B rules over a dense ladder; mass has axes (given, count, rule, shown state)."""
 
     def __init__(
         self, solution: Solution, position: int, bars: Bars, also: Bars | None = None
@@ -125,11 +125,25 @@ class _Columns:
         self.count: IntArray = np.arange(
             low + min(0, int(moves.min(initial=0))), high + max(0, int(moves.max(initial=0))) + 1
         )
-        self._mass = np.zeros((len(self.count), len(bars.minus_at), 3, 2))
-        self._mass[int(np.flatnonzero(self.count == 0)[0]), :, 0] = 1.0
+        self._mass = np.zeros((2, len(self.count), len(bars.minus_at), 3))
+        self._mass[:, int(np.flatnonzero(self.count == 0)[0]), :, 0] = 1.0
+        self._moves = self._move_matrices()
         self._step, self._known = 0, 1
-        self._weight = np.ones((3, 2))
+        self._weight = np.ones((2, 3))
         self.undecided_before: FloatArray = np.ones((len(bars.minus_at), 2))
+
+    def _move_matrices(self) -> FloatArray:
+        """Probability of moving from count to count in one observation, shape (2, to, from)."""
+        evidence, size = self._evidence, len(self.count)
+        moves = np.zeros((2, size, size))
+        start = np.arange(size)
+        for move, *chance in zip(
+            evidence.offsets[:, 0], evidence.plus, evidence.minus, strict=True
+        ):
+            # A cut leaves the outermost rows empty, so nothing is ever pushed over the edge.
+            inside = start[(start + move >= 0) & (start + move < size)]
+            moves[:, inside + move, inside] = np.array(chance)[:, None]
+        return moves
 
     @property
     def tally(self) -> FloatArray:
@@ -145,27 +159,17 @@ class _Columns:
         for state in (1, 2):
             fresh = [e for e in range(self._known, shown.shape[1]) if self._states[e] == state]
             if fresh:
-                self._mass[:, :, state] += self._mass[:, :, 0] * shown[:, fresh].sum(axis=1)
+                weight = shown[:, fresh].sum(axis=1)
+                self._mass[..., state] += self._mass[..., 0] * weight[:, None, None]
         self._known = shown.shape[1]
-        self._weight[0] = shown[:, 0]
+        self._weight[:, 0] = shown[:, 0]
         begins = moment.step != self._step
         if begins:
             self.undecided_before = self.undecided()
             self._step = moment.step
-            self._observe()
+            flat = self._mass.reshape(2, len(self.count), -1)
+            self._mass = np.matmul(self._moves, flat).reshape(self._mass.shape)
         return begins
-
-    def _observe(self) -> None:
-        evidence, old = self._evidence, self._mass
-        fresh = np.zeros_like(old)
-        size = len(self.count)
-        for move, *chance in zip(
-            evidence.offsets[:, 0], evidence.plus, evidence.minus, strict=True
-        ):
-            # The cut left the outermost rows empty, so nothing is pushed over the edge.
-            start, stop = max(0, -int(move)), size - max(0, int(move))
-            fresh[start + move : stop + move] += old[start:stop] * np.array(chance)
-        self._mass = fresh
 
     def at_or_above(self, bar: IntArray) -> BoolArray:
         """Mask (count, rule, state) of what has reached the bar of the present step."""
@@ -178,16 +182,14 @@ class _Columns:
     def leave(self, mask: BoolArray) -> FloatArray:
         """Take the masked mass out; its probability per rule and given answer, shape (B, 2)."""
         gone = self.mass_where(mask)
-        self._mass[np.broadcast_to(mask, self._mass.shape[:3])] = 0.0
+        self._mass[:, np.broadcast_to(mask, self._mass.shape[1:])] = 0.0
         return gone
 
     def mass_where(self, mask: BoolArray) -> FloatArray:
         """Probability of the masked mass, shape (B, 2)."""
-        mass = np.where(mask[..., None], self._mass, 0.0).sum(axis=0)
-        total: FloatArray = (mass * self._weight).sum(axis=1)
-        return total
+        mass = np.where(mask[None], self._mass, 0.0).sum(axis=1)
+        return np.einsum("gbs,gs->bg", mass, self._weight)
 
     def undecided(self) -> FloatArray:
         """Probability of being still undecided, shape (B, 2)."""
-        total: FloatArray = (self._mass.sum(axis=0) * self._weight).sum(axis=1)
-        return total
+        return np.einsum("gbs,gs->bg", self._mass.sum(axis=1), self._weight)

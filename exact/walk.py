@@ -35,6 +35,8 @@ Kind = TypeVar("Kind", bound=np.generic)
 _BLOCK = np.int64(1) << 52
 _SMALL = 1e-120
 _FEW = 8
+_NARROW = 4
+_SLAB = 512
 
 
 class Walk:
@@ -137,11 +139,16 @@ class Walk:
             start, stop = int(self._code[rows[0]]), int(self._code[rows[-1]]) + 1
             dense = np.zeros((stop - start, self.mass.shape[1]))
             dense[self._code[rows] - start] = self.mass[rows]
-            # Row r of the band holds kernel[r - s] at source s: a view, not a copy.
+            codes.append(np.arange(start + low, stop + low + width - 1, dtype=np.int64))
+            if dense.shape[1] <= _NARROW:
+                masses.append(np.stack([np.convolve(m, kernel) for m in dense.T], axis=1))
+                continue
+            # Row r of the band holds kernel[r - s] at source s. It is a view of overlapping rows,
+            # which matrix products read quickly only once copied: a slab at a time.
             padded = np.pad(kernel[::-1], (stop - start - 1,))
             band = np.lib.stride_tricks.sliding_window_view(padded, stop - start)[::-1]
-            codes.append(np.arange(start + low, stop + low + width - 1, dtype=np.int64))
-            masses.append(band @ dense)
+            slabs = range(0, len(band), _SLAB)
+            masses += [np.ascontiguousarray(band[s : s + _SLAB]) @ dense for s in slabs]
         self._code, self.mass = np.concatenate(codes), np.concatenate(masses)
 
     def _rescale(self) -> None:

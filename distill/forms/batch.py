@@ -91,6 +91,7 @@ class Batch:
         pricer = self._pricer
         lowest, highest = count_range(pricer)
         shape = (len(layouts), pricer.group.horizon + 1, 3)
+        pooled: dict[tuple[Sides, int], float] = {}
         low: IntArray = np.full(shape, lowest - 1, dtype=np.int64)
         high: IntArray = np.full(shape, highest + 1, dtype=np.int64)
         value: FloatArray = np.zeros((len(layouts), 3))
@@ -105,7 +106,10 @@ class Batch:
                         low[where] = line.minus_at
                     if line.plus_at is not None:
                         high[where] = line.plus_at
-                value[i, states] = self._pooled(sides, lines[-1].start)
+                last = (sides, lines[-1].start)
+                if last not in pooled:
+                    pooled[last] = self._pooled(*last)
+                value[i, states] = pooled[last]
         return Bars(low, high, value)
 
     def _holds(self, sides: Sides, setting: int) -> bool:

@@ -101,9 +101,10 @@ def test_what_cannot_arise_needs_no_row(tmp_path: Path) -> None:
     whole = price(tmp_path, CARD)
     text = CARD.replace(",,plus,", "5,,plus,").replace(",,minus,", "3,,minus,")
     assert price(tmp_path, text)["figures"] == whole["figures"]
-    assert "at step 3 with upper showing minus" in faults(
-        tmp_path, CARD.replace(",,minus,", "4,,minus,")
-    )[0]
+    assert (
+        "at step 3 with upper showing minus"
+        in faults(tmp_path, CARD.replace(",,minus,", "4,,minus,"))[0]
+    )
 
 
 def test_unknown_labels_are_reported_with_their_lines(tmp_path: Path) -> None:

@@ -19,9 +19,7 @@ Key = tuple[int, int, int]
 """Step, round, code of the shown state."""
 
 
-def by_hand(
-    case: walk.Pair, rounds: dict[int, int]
-) -> dict[Key, list[tuple[float, float, float]]]:
+def by_hand(case: walk.Pair, rounds: dict[int, int]) -> dict[Key, list[tuple[float, float, float]]]:
     """(mass given plus, mass given minus, worth) of every history, by when and what is shown.
 
     For each history the observer's own walk is run against it with its exact decisions; omega is
