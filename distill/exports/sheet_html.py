@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from thumbwright.distill.findings import Findings
-from thumbwright.distill.sheet_templates import rendered
-from thumbwright.distill.sheet_view import sheet
+from thumbwright.distill.sheet.templates import rendered
+from thumbwright.distill.sheet.view import sheet
 
 NAME = "policy sheet"
 

@@ -11,10 +11,10 @@ import re
 from typing import Any
 
 from thumbwright.distill.findings import Findings
-from thumbwright.distill.sheet_parts import Card, Grid
-from thumbwright.distill.sheet_templates import rendered
-from thumbwright.distill.sheet_view import sheet
-from thumbwright.distill.sheet_words import told
+from thumbwright.distill.sheet.parts import Card, Grid
+from thumbwright.distill.sheet.templates import rendered
+from thumbwright.distill.sheet.view import sheet
+from thumbwright.distill.sheet.words import told
 
 NAME = "policy sheet as text"
 

@@ -113,6 +113,8 @@ def findings(**changes: Any) -> Findings:
         alpha=0.4054651081081644,
         beta=0.0,
         value_offsets=(-1, 1),
+        leans={"upper": "minus", "lower": "even"},
+        alone_rows=(),
         worth_curves=(),
         labels=(),
         is_exact=False,

@@ -6,10 +6,10 @@ from collections.abc import Mapping
 from typing import Any
 
 from thumbwright.distill.findings import Figures, Findings
-from thumbwright.distill.sheet_card import peg_words, short_act
-from thumbwright.distill.sheet_parts import Card, Grid
-from thumbwright.distill.sheet_voice import Counting, Voice
-from thumbwright.distill.sheet_words import capital, of_hundred, quoted
+from thumbwright.distill.sheet.card import peg_words, short_act
+from thumbwright.distill.sheet.parts import Card, Grid
+from thumbwright.distill.sheet.voice import Counting, Voice
+from thumbwright.distill.sheet.words import capital, of_hundred, quoted
 
 MOST_COLUMNS = 3
 """Agents watched that each get a column of the example."""

@@ -4,9 +4,9 @@ from __future__ import annotations
 
 from thumbwright.distill.findings import Findings
 from thumbwright.distill.rules import SHOWN, Row
-from thumbwright.distill.sheet_parts import Block, Card, Grid, Line, Peg, Zone
-from thumbwright.distill.sheet_voice import Counting, Voice
-from thumbwright.distill.sheet_words import fitting, letters, odds_in_words, plural, told, width
+from thumbwright.distill.sheet.parts import Block, Card, Grid, Line, Peg, Zone
+from thumbwright.distill.sheet.voice import Counting, Voice
+from thumbwright.distill.sheet.words import fitting, letters, odds_in_words, plural, told, width
 
 _QUIET = frozenset({"undecided"})
 

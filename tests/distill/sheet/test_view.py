@@ -6,14 +6,14 @@ from dataclasses import replace
 
 import pytest
 
-from tests.distill import sample_findings as samples
+from tests.distill.sheet import sample_findings as samples
 from thumbwright.distill.cautions import cautions
 from thumbwright.distill.findings import Findings, WorthCurve
-from thumbwright.distill.sheet_chart import axis, chart, spread, step_ticks, value_at
-from thumbwright.distill.sheet_fit import PAGE_HEIGHT, front_height, lines_of
-from thumbwright.distill.sheet_parts import Sheet
-from thumbwright.distill.sheet_view import sheet
-from thumbwright.distill.sheet_voice import counting, voice
+from thumbwright.distill.sheet.chart import axis, chart, spread, step_ticks, value_at
+from thumbwright.distill.sheet.fit import PAGE_HEIGHT, front_height, lines_of
+from thumbwright.distill.sheet.parts import Sheet
+from thumbwright.distill.sheet.view import sheet
+from thumbwright.distill.sheet.voice import counting, voice
 
 
 def said(made: Sheet, lead: str) -> str:

@@ -11,10 +11,10 @@ import math
 
 from thumbwright.distill.findings import Findings
 from thumbwright.distill.rules import Row
-from thumbwright.distill.sheet_card import is_quiet
-from thumbwright.distill.sheet_parts import Card, Note
-from thumbwright.distill.sheet_voice import Voice
-from thumbwright.distill.sheet_words import counted, listing, plural, quoted
+from thumbwright.distill.sheet.card import is_quiet
+from thumbwright.distill.sheet.parts import Card, Note
+from thumbwright.distill.sheet.voice import Voice
+from thumbwright.distill.sheet.words import counted, listing, plural, quoted
 
 FAINT = 0.02
 """Worths (nats) this small, or a tenth of the largest, are no news."""

@@ -11,8 +11,8 @@ from __future__ import annotations
 import unicodedata
 from collections.abc import Iterable, Sequence
 
-from thumbwright.distill.sheet_card import ACROSS
-from thumbwright.distill.sheet_parts import Card, Grid, Sheet
+from thumbwright.distill.sheet.card import ACROSS
+from thumbwright.distill.sheet.parts import Card, Grid, Sheet
 
 PAGE_HEIGHT = 773.0
 PAGE_WIDTH = 527.0

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import pytest
 
-from thumbwright.distill import sheet_words as words
+from thumbwright.distill.sheet import words as words
 
 
 @pytest.mark.parametrize(

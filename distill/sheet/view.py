@@ -6,14 +6,14 @@ from dataclasses import replace
 
 from thumbwright.distill.cautions import cautions
 from thumbwright.distill.findings import Findings
-from thumbwright.distill.sheet_card import card
-from thumbwright.distill.sheet_costs import cost_note, costs, example
-from thumbwright.distill.sheet_fit import PAGE_HEIGHT, front_height
-from thumbwright.distill.sheet_modeller import modeller
-from thumbwright.distill.sheet_notes import acts, acts_heading, notes, supposes, thing
-from thumbwright.distill.sheet_parts import Sheet
-from thumbwright.distill.sheet_voice import counting, voice
-from thumbwright.distill.sheet_words import capital, clean
+from thumbwright.distill.sheet.card import card
+from thumbwright.distill.sheet.costs import cost_note, costs, example
+from thumbwright.distill.sheet.fit import PAGE_HEIGHT, front_height
+from thumbwright.distill.sheet.modeller import modeller
+from thumbwright.distill.sheet.notes import acts, acts_heading, notes, supposes, thing
+from thumbwright.distill.sheet.parts import Sheet
+from thumbwright.distill.sheet.voice import counting, voice
+from thumbwright.distill.sheet.words import capital, clean
 
 
 def sheet(findings: Findings) -> Sheet:

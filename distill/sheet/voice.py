@@ -8,7 +8,7 @@ from typing import Any
 
 from thumbwright.distill.findings import Findings
 from thumbwright.distill.rules import SHOWN
-from thumbwright.distill.sheet_words import (
+from thumbwright.distill.sheet.words import (
     act_forms,
     apart,
     capital,

@@ -7,10 +7,10 @@ from typing import Any
 
 from thumbwright.distill.findings import Figures, Findings, FormResult
 from thumbwright.distill.rules import SHOWN, Row
-from thumbwright.distill.sheet_chart import chart
-from thumbwright.distill.sheet_parts import Grid, Modeller, Note
-from thumbwright.distill.sheet_voice import Voice, own_evidence
-from thumbwright.distill.sheet_words import clean, five, listing, signed
+from thumbwright.distill.sheet.chart import chart
+from thumbwright.distill.sheet.parts import Grid, Modeller, Note
+from thumbwright.distill.sheet.voice import Voice, own_evidence
+from thumbwright.distill.sheet.words import clean, five, listing, signed
 
 FORM_TITLES = {
     "lines": "The lines: bars on the own count",

@@ -12,9 +12,9 @@ from typing import TypeGuard
 
 from thumbwright.distill.findings import Findings, WorthCurve
 from thumbwright.distill.rules import SHOWN, Rule
-from thumbwright.distill.sheet_parts import Chart, Curve, Grid, Mark
-from thumbwright.distill.sheet_voice import Voice
-from thumbwright.distill.sheet_words import five
+from thumbwright.distill.sheet.parts import Chart, Curve, Grid, Mark
+from thumbwright.distill.sheet.voice import Voice
+from thumbwright.distill.sheet.words import five
 
 WIDTH, HEIGHT = 480, 300
 LEFT, RIGHT, TOP, BOTTOM = 46, 452, 12, 256

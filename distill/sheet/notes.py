@@ -5,10 +5,10 @@ from __future__ import annotations
 from typing import Any
 
 from thumbwright.distill.findings import Findings
-from thumbwright.distill.sheet_parts import Act, Card, Note
-from thumbwright.distill.sheet_voice import Counting, Voice, own_evidence
-from thumbwright.distill.sheet_why import why
-from thumbwright.distill.sheet_words import (
+from thumbwright.distill.sheet.parts import Act, Card, Note
+from thumbwright.distill.sheet.voice import Counting, Voice, own_evidence
+from thumbwright.distill.sheet.why import why
+from thumbwright.distill.sheet.words import (
     capital,
     clean,
     listing,

@@ -7,10 +7,10 @@ from dataclasses import replace
 import pytest
 from hypothesis import given, strategies as st
 
-from tests.distill import sample_findings as samples
+from tests.distill.sheet import sample_findings as samples
 from thumbwright.distill.findings import Findings
 from thumbwright.distill.rules import Row
-from thumbwright.distill.sheet_card import (
+from thumbwright.distill.sheet.card import (
     MOST_BOXES,
     at_or_above,
     at_or_below,
@@ -18,9 +18,9 @@ from thumbwright.distill.sheet_card import (
     scale,
     zones,
 )
-from thumbwright.distill.sheet_parts import Card
-from thumbwright.distill.sheet_voice import counting, voice
-from thumbwright.distill.sheet_words import width
+from thumbwright.distill.sheet.parts import Card
+from thumbwright.distill.sheet.voice import counting, voice
+from thumbwright.distill.sheet.words import width
 
 
 def made(findings: Findings) -> Card:

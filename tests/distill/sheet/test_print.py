@@ -11,9 +11,9 @@ from pathlib import Path
 
 import pytest
 
-from tests.distill import sample_findings as samples
+from tests.distill.sheet import sample_findings as samples
 from thumbwright.distill.exports import sheet_html
-from thumbwright.distill.sheet_view import sheet
+from thumbwright.distill.sheet.view import sheet
 
 BROWSER = next(filter(None, map(shutil.which, ("chromium", "chromium-browser"))), None)
 FLAGS = (

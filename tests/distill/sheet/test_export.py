@@ -7,10 +7,10 @@ from typing import Any
 
 import pytest
 
-from tests.distill import sample_findings as samples
-from tests.distill.markup import Page
+from tests.distill.sheet import sample_findings as samples
+from tests.distill.sheet.markup import Page
 from thumbwright.distill.exports import sheet_html, sheet_md
-from thumbwright.distill.sheet_parts import Grid
+from thumbwright.distill.sheet.parts import Grid
 
 NASTY = '"><script>alert(1)</script><img src=x onerror=alert(2)>{{ 7*7 }}{% raw %}&amp;|`*_'
 BANNED = r"\b(points?|steps?|silen\w+|commit\w*|log-odds|nats?)\b"
