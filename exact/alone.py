@@ -31,7 +31,8 @@ class Alone:
         Mean number of steps used; an undecided agent has used all of them.
     stops, goes_on : tuple of float
         The beliefs next to the thresholds that were reached: the highest that answered minus and
-        the lowest that answered plus; the lowest and the highest at which the agent went on.
+        the lowest that answered plus; the lowest and the highest at which the agent went on, the
+        prior among them where it lies between the thresholds.
     """
 
     answers: FloatArray
@@ -60,6 +61,8 @@ def alone(
     laws: list[FloatArray] = []
     survival: list[FloatArray] = [np.ones(2)]
     stops, goes_on = [-np.inf, np.inf], [np.inf, -np.inf]
+    if thresholds.minus + TIE < prior < thresholds.plus - TIE:
+        goes_on = [prior, prior]
     last = MOST_STEPS if horizon is None else horizon
     for _ in range(last):
         certain = walk.observe()

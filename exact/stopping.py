@@ -140,18 +140,17 @@ def costs_behind(
         return None
     # Each row r says r . (false_plus, false_minus, per_step) >= 0.
     rows = []
-    for belief, stays in (
-        (reached.stops[1], True),
-        (reached.goes_on[1], False),
-        (reached.stops[0], True),
-        (reached.goes_on[0], False),
+    for belief, stays, plus_side in (
+        (reached.stops[1], True, True),
+        (reached.goes_on[1], False, True),
+        (reached.stops[0], True, False),
+        (reached.goes_on[0], False, False),
     ):
         chance = 1.0 / (1.0 + math.exp(-belief))
         later = alone(evidence, thresholds, belief)
         missed, mistaken = later.wrong()
         steps = chance * later.steps[0] + (1 - chance) * later.steps[1]
         go_on = np.array([(1 - chance) * mistaken, chance * missed, steps])
-        plus_side = belief in (reached.stops[1], reached.goes_on[1])
         stop = np.array([1 - chance, 0, 0] if plus_side else [0, chance, 0])
         rows.append(go_on - stop if stays else stop - go_on)
     return _cone(np.stack(rows))

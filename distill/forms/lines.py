@@ -34,6 +34,9 @@ MOST_STATES = 27
 PRICED_ONE_BY_ONE = 12
 """So many candidates are priced where each has to be played by itself."""
 
+AT_A_LEVEL = 600
+"""About so many layouts are priced for each number of lines in the search for the fewest."""
+
 MOST_MOVES = 200
 """Bars are moved one at a time, at most so often; a search ends long before."""
 
@@ -60,18 +63,19 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
     layout, mixed = lossless(pricer, wanted.inputs)
     search = Search(pricer, wanted, layout, progress)
     notes = [f"Without merging there are {len(layout)} lines."]
-    search.merge_unnoticed()
+    if wanted.max_accuracy_lost is None:
+        search.merge_unnoticed()
     unnoticed = len(layout) - len(search.layout)
     if unnoticed:
         notes.append(
             f"{unnoticed} merged away because together they change fewer than 1 outing in 10,000."
         )
     before = len(search.layout)
-    if wanted.max_accuracy_lost is not None:
-        notes.append(search.merge_within(wanted.max_accuracy_lost))
-    else:
+    if wanted.max_accuracy_lost is None:
         search.merge_down_to(wanted.rows)
-    if len(search.layout) < before:
+    else:
+        notes.append(search.merge_within(wanted.max_accuracy_lost))
+    if wanted.max_accuracy_lost is None and len(search.layout) < before:
         notes.append(
             f"{before - len(search.layout)} more merged at the least added risk, their bars set "
             "between the exact ones they cover, where the risk is least."
@@ -82,7 +86,8 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
             "more than the card may look at, such as the time of a call; their bars are set "
             "between the exact ones, where the risk is least."
         )
-    search.settle_bars()
+    if wanted.max_accuracy_lost is None:
+        search.settle_bars()
     rule = as_rule(pricer, search.layout)
     situations = pricer.situations
     pooled = situations.pooled(situations.rows_of(rule, pricer.settings), len(rule.rows))
@@ -122,21 +127,46 @@ class Search:
             self._tell()
 
     def merge_within(self, most_lost: float) -> str:
-        """Merge as far as the accuracy lost allows; returns a sentence on how it went."""
-        exact = self._pricer.accuracy(self._pricer.exact_tally)
-        while (merged := self._cheapest_merge()) is not None:
-            (found,) = self._batch.tallies([merged])
-            if exact - self._pricer.accuracy(found) > most_lost:
+        """Take the fewest lines that lose no more accuracy; returns a sentence on how it went.
+
+        Level by level one line fewer, keeping at each level the layouts that lose least, as many
+        as can be priced; of those that qualify on the last level, the one of least risk.
+        """
+        best, kept = self.layout, [self.layout]
+        if self._lost(kept)[0] > most_lost:
+            self.merge_down_to(self._wanted.rows)
+            return (
+                f"No rule of up to {self._wanted.rows} lines was found within the accuracy that may "
+                "be lost: even unmerged lines lose more, since they cannot look at all that exact "
+                "play looks at."
+            )
+        while kept:
+            width = max(1, AT_A_LEVEL // max(1, sum(1 for _ in kept[0].merges(unnoticed=False))))
+            merges = (m for layout in kept[:width] for m in layout.merges(unnoticed=False))
+            candidates = self._promising(dict.fromkeys(merges))
+            lost = self._lost(candidates)
+            order = sorted(range(len(candidates)), key=lambda k: (lost[k], k))
+            kept = [candidates[k] for k in order]
+            fits = [candidates[k] for k in order if lost[k] <= most_lost]
+            if not fits:
                 break
-            self.layout = merged
+            risks = self._batch.objectives(fits)
+            best = fits[risks.index(min(risks))]
+            self.layout = best
             self._tell()
-        if len(self.layout) <= self._wanted.rows:
+        self.layout = best
+        if len(best) <= self._wanted.rows:
             return "The fewest lines found within the accuracy that may be lost."
         self.merge_down_to(self._wanted.rows)
         return (
             f"No rule of up to {self._wanted.rows} lines was found within the accuracy that may be "
             "lost; this one loses more."
         )
+
+    def _lost(self, layouts: list[Layout]) -> list[float]:
+        """Accuracy lost against exact play."""
+        exact = self._pricer.accuracy(self._pricer.exact_tally)
+        return [exact - self._pricer.accuracy(found) for found in self._batch.tallies(layouts)]
 
     def _cheapest_merge(self) -> Layout | None:
         candidates = self._promising(self.layout.merges(unnoticed=False))

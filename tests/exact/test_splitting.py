@@ -141,6 +141,13 @@ def test_settling_serves_the_worst_of_several_thresholds() -> None:
         assert got.steps == pytest.approx(fine.steps, rel=2e-3)
 
 
+def test_thresholds_that_are_not_even_lie_midway_too() -> None:
+    made = settle(loose(normal(0.5)), [Thresholds(-1.0, 1.7)], 0.2, 40)
+    assert made.split is not None
+    for reach in (-1.0 - 0.2, 1.7 - 0.2):
+        assert (reach / made.split.step) % 1.0 == pytest.approx(0.5, abs=0.1)
+
+
 def test_what_does_not_settle_is_refused(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr(splitting, "MOST_VALUES", 100)
     with pytest.raises(ModelError, match=r"above the tolerance of 1e-06; raise tolerance"):
