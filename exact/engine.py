@@ -134,6 +134,8 @@ class Track:
     ``answers`` has shape (2, 2, T + 1): axis 0 to plus, to minus; axis 1 given plus, given minus;
     the probability of committing at each step. ``leaning`` has shape (3, 2): of those undecided at
     the horizon, the probability that the belief favours plus, favours minus, or neither.
+    ``log_weights`` has shape (2, events, events of each seen agent): the log weight of each display
+    event at the horizon, given plus and given minus, when those seen are made to show theirs.
     """
 
     agent: Agent
@@ -142,6 +144,7 @@ class Track:
     answers: FloatArray
     leaning: FloatArray
     near_tie: float = 0.0
+    log_weights: FloatArray = field(default_factory=lambda: np.zeros((2, 1)))
 
     @property
     def undecided(self) -> FloatArray:
@@ -218,7 +221,7 @@ def run(
         stage.step(step)
     if progress:
         progress("exact beliefs", group.horizon, group.horizon)
-    return tuple(player.track for player in stage.players)
+    return stage.finish()
 
 
 class Player:
@@ -315,6 +318,12 @@ class _Stage:
         self._log_weights: list[FloatArray] = [
             np.zeros((2, 1, *player.shape)) for player in self.players
         ]
+
+    def finish(self) -> tuple[Track, ...]:
+        """The tracks of all players, with the weights of their displays."""
+        for player, weights in zip(self.players, self._log_weights, strict=True):
+            player.track.log_weights = weights
+        return tuple(player.track for player in self.players)
 
     def step(self, step: int) -> None:
         """Observe, then one round, or rounds until no agent could commit any more."""

@@ -140,11 +140,14 @@ def around(points: list[Point], out: float) -> Iterator[Point]:
         )
 
 
-def decisions(point: Point) -> tuple[int, int]:
-    """Best thresholds in whole signs from the even belief, by value iteration on that lattice."""
+def decisions(point: Point) -> tuple[int, int] | None:
+    """Best thresholds in whole signs from the even belief, by value iteration on that lattice.
+
+    None where no look is worth its price.
+    """
     belief, gain = going_on(0.6, Losses(point[0], 2.0 - point[0], point[1]), 0.0)
     goes_on = [round(x / ALPHA) for x, more in zip(belief, gain, strict=True) if more > 0]
-    return min(goes_on) - 1, max(goes_on) + 1
+    return (min(goes_on) - 1, max(goes_on) + 1) if goes_on else None
 
 
 @pytest.mark.parametrize(("minus", "plus"), [(-2, 4), (-3, 3), (-1, 1), (-1, 2)])
