@@ -65,6 +65,11 @@ class Tally:
         )
 
 
+def _difference(one: float, other: float) -> float:
+    """one - other; what is rounding only is nothing."""
+    return 0.0 if abs(one - other) <= 1e-12 * max(1.0, abs(one)) else one - other
+
+
 def tally(track: Track, off_model: float = 0.0) -> Tally:
     """Count up a track."""
     given = outcome(track)
@@ -142,10 +147,16 @@ class Pricer:
         """Prior probability of plus."""
         return self.group.prior_plus
 
-    def play(self, policy_for: PolicyFor, rows: int = 0) -> tuple[Tally, FloatArray | None]:
-        """Play a policy in every setting; its tally and, with ``rows``, the use of each row."""
+    def play(
+        self, policy_for: PolicyFor, rows: int = 0, whole: bool = True
+    ) -> tuple[Tally, FloatArray | None]:
+        """Play a policy in every setting; its tally and, with ``rows``, the use of each row.
+
+        Without ``whole`` it is not counted how often others are shown what they call impossible.
+        """
         plays: list[tuple[float, Play]] = [
-            (s.weight, adopt(s.solution, self.agent, policy_for(s), rows)) for s in self.settings
+            (s.weight, adopt(s.solution, self.agent, policy_for(s), rows, whole))
+            for s in self.settings
         ]
         usage = np.zeros((rows, 2)) if rows else None
         for weight, played in plays:
@@ -161,9 +172,9 @@ class Pricer:
             values = values_of(*self.situations.pooled(rows, len(rule.rows)))
         return lambda s: rule_policy(rule, s.solution.group, s.names, values)
 
-    def rule_tally(self, rule: Rule) -> Tally:
-        """How a rule turns out."""
-        return self.play(self.rule_policies(rule))[0]
+    def rule_tally(self, rule: Rule, whole: bool = True) -> Tally:
+        """How a rule turns out; ``whole`` as for :meth:`play`."""
+        return self.play(self.rule_policies(rule), whole=whole)[0]
 
     def rule_uses(self, rule: Rule) -> tuple[Tally, tuple[RowUse, ...]]:
         """How a rule turns out and how often each of its rows is in force and decides."""
@@ -215,8 +226,8 @@ class Pricer:
             accuracy=self.accuracy(found),
             mean_step=self.mean_step(found),
             risk=risk,
-            accuracy_lost=self.accuracy(self.exact_tally) - self.accuracy(found),
-            delay_added=self.mean_step(found) - self.mean_step(self.exact_tally),
+            accuracy_lost=_difference(self.accuracy(self.exact_tally), self.accuracy(found)),
+            delay_added=_difference(self.mean_step(found), self.mean_step(self.exact_tally)),
             benefit_kept=None if self.losses is None else self.benefit_kept(found, self.losses),
             off_model=found.off_model,
         )

@@ -28,8 +28,18 @@ def plain_decimal(number: float) -> str:
     return text.rstrip("0").rstrip(".") if "." in text else text
 
 
+DIGITS = 10
+"""Significant digits of figures in files: the last ones of a double differ between machines."""
+
+
 def json_number(number: float | None) -> float | str | None:
-    """Return ``number`` as JSON can hold it: infinities, which JSON lacks, become text."""
-    if number is None or math.isfinite(number):
-        return number
+    """Return ``number`` as JSON holds it here: ten digits, and infinities, which it lacks, as text.
+
+    Only files that are compared from one machine to another are rounded so; what a verb prints
+    with ``--json`` has full double precision.
+    """
+    if number is None:
+        return None
+    if math.isfinite(number):
+        return float(f"{number:.{DIGITS}g}")
     return plain_decimal(number)

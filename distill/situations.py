@@ -2,12 +2,14 @@
 
 A situation is a setting, a step, a round and a history it may have been shown. With P+ and P- the
 probabilities of that history, the agent held to showing undecided, and omega the probability that
-it is still undecided there (the mean over both answers), the situation has the masses omega P+ and
-omega P-. A row that lumps situations is best valued at the log ratio of their masses added up.
+it is still undecided there (the mean over both answers, shared among the rounds of a step), the
+situation has the masses omega P+ and omega P-. A row that lumps situations is best valued at the
+log ratio of their masses added up.
 """
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
@@ -103,10 +105,13 @@ def situations_of(settings: Sequence[Setting], agent: str) -> Situations:
         position = group.index[agent]
         seen = group.agents[position].sees
         state = [np.array(setting.solution.tracks[k].events.state) for k in group.sees[position]]
-        for moment in setting.solution.tracks[position].moments:
+        moments = setting.solution.tracks[position].moments
+        rounds = Counter(moment.step for moment in moments)
+        for moment in moments:
             possible = np.isfinite(moment.log_shown).any(axis=0)
             where = np.nonzero(possible) if seen else ()
-            omega = np.exp(moment.log_before).mean(axis=0)[possible].ravel()
+            # A step that is held in several rounds is still one step spent undecided.
+            omega = np.exp(moment.log_before).mean(axis=0)[possible].ravel() / rounds[moment.step]
             shown = np.exp(moment.log_shown)[:, possible].reshape(2, -1)
             size = len(omega)
             states = [s[w] for s, w in zip(state, where, strict=True)]

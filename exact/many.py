@@ -1,4 +1,4 @@
-"""Pricing many rules of bars at once, for an agent that sees one other and cannot change it.
+"""Pricing many rules of bars at once, for an agent that sees a single other.
 
 A rule of bars that looks only at the step and at the shown state treats all histories alike in
 which the seen agent shows the same state, whenever it committed. The agent's walks over those
@@ -9,14 +9,18 @@ operation. The figures are those of ``play.adopt``, summed in another order.
 
 from __future__ import annotations
 
+from contextlib import AbstractContextManager
 from dataclasses import dataclass
+from functools import cache
+from typing import cast
 
 import numpy as np
+from threadpoolctl import ThreadpoolController
 
 from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.engine import Solution, leanings
 from thumbwright.exact.evidence.base import Evidence
-from thumbwright.exact.group import Group
+from thumbwright.exact.play import silence_is_possible
 
 
 @dataclass(frozen=True)
@@ -54,17 +58,18 @@ class ManyTallies:
     lean_minus: FloatArray
 
 
-def fits(group: Group, position: int) -> bool:
+def fits(solution: Solution, position: int) -> bool:
     """Whether rules of this agent can be priced together.
 
-    It must see a single other agent, be unable to change what that one shows, have thresholds
-    that are known, and keep a whole own count; certain evidence, which ends a walk by itself, is
-    left to the general way of playing.
+    It must see a single other agent, have thresholds that are known, and keep a whole own count,
+    and whoever sees it must have a reading for its silence. Certain evidence, which ends a walk by
+    itself, is left to the general way of playing.
     """
+    group = solution.group
     agent = group.agents[position]
     return (
         len(agent.sees) == 1
-        and not group.influences(position)
+        and (not group.influences(position) or silence_is_possible(solution, position))
         and agent.evidence.on_ladder
         and not (agent.evidence.certain_plus or agent.evidence.certain_minus)
         and len(agent.thresholds) == 1
@@ -73,6 +78,11 @@ def fits(group: Group, position: int) -> bool:
 
 def play_many(solution: Solution, position: int, bars: Bars) -> ManyTallies:
     """Play B rules of bars against the exact displays of the one agent that is seen."""
+    with _one_thread():
+        return _play_many(solution, position, bars)
+
+
+def _play_many(solution: Solution, position: int, bars: Bars) -> ManyTallies:
     walk = _Columns(solution, position, bars)
     rules = len(bars.minus_at)
     plus, minus, steps = (np.zeros((rules, 2)) for _ in range(3))
@@ -92,6 +102,11 @@ def play_many(solution: Solution, position: int, bars: Bars) -> ManyTallies:
 
 def changed_many(solution: Solution, position: int, reference: Bars, bars: Bars) -> FloatArray:
     """Probability that each rule ever acts differently from the one reference, shape (B, 2)."""
+    with _one_thread():
+        return _changed_many(solution, position, reference, bars)
+
+
+def _changed_many(solution: Solution, position: int, reference: Bars, bars: Bars) -> FloatArray:
     walk = _Columns(solution, position, bars, also=reference)
     changed = np.zeros((len(bars.minus_at), 2))
     for index in range(len(walk.moments)):
@@ -101,6 +116,36 @@ def changed_many(solution: Solution, position: int, reference: Bars, bars: Bars)
         changed += walk.leave((ours[0] != theirs[0]) | (ours[1] != theirs[1]))
         walk.leave(ours[0] | ours[1])
     return changed
+
+
+@cache
+def _threads() -> ThreadpoolController:
+    return ThreadpoolController()
+
+
+def _one_thread() -> AbstractContextManager[object]:
+    """Many small matrix products go fastest on one thread, above all on a busy machine."""
+    return cast("AbstractContextManager[object]", _threads().limit(limits=1))
+
+
+def likely_counts(evidence: Evidence, horizon: int, leave: float = 1e-18) -> tuple[int, int]:
+    """Lowest and highest own count by the horizon, but for tails of probability ``leave``.
+
+    The distribution of the sum of all observations, under either answer, by repeated convolution.
+    """
+    moves = evidence.offsets[:, 0]
+    step_low = int(moves.min())
+    low, high = 0, 0
+    for side in (evidence.plus, evidence.minus):
+        one = np.zeros(int(moves.max()) - step_low + 1)
+        one[moves - step_low] = side
+        law, shift = np.ones(1), 0
+        for _ in range(horizon):
+            law, shift = np.convolve(law, one), shift + step_low
+            kept = np.flatnonzero(law > leave)
+            law, shift = law[kept[0] : kept[-1] + 1], shift + int(kept[0])
+            low, high = min(low, shift), max(high, shift + len(law) - 1)
+    return low, high
 
 
 class _Columns:
@@ -116,11 +161,11 @@ class _Columns:
         self.moments = solution.tracks[position].moments
         self._horizon = group.horizon
         moves = self._evidence.offsets[:, 0]
-        reach = np.append(moves, 0) * group.horizon
+        lowest, highest = likely_counts(self._evidence, group.horizon)
         every = [bars] if also is None else [bars, also]
         # Below the lowest bar and above the highest nobody is left after a cut.
-        low = max(int(reach.min()), min(int(b.minus_at[:, 1:].min()) for b in every))
-        high = min(int(reach.max()), max(int(b.plus_at[:, 1:].max()) for b in every))
+        low = max(lowest, min(int(b.minus_at[:, 1:].min()) for b in every))
+        high = min(highest, max(int(b.plus_at[:, 1:].max()) for b in every))
         low, high = min(low, 0), max(high, 0)
         self.count: IntArray = np.arange(
             low + min(0, int(moves.min(initial=0))), high + max(0, int(moves.max(initial=0))) + 1
@@ -140,7 +185,8 @@ class _Columns:
         for move, *chance in zip(
             evidence.offsets[:, 0], evidence.plus, evidence.minus, strict=True
         ):
-            # A cut leaves the outermost rows empty, so nothing is ever pushed over the edge.
+            # A cut leaves the outermost rows empty, or next to: what is pushed over the edge is
+            # less than ``likely_counts`` leaves out.
             inside = start[(start + move >= 0) & (start + move < size)]
             moves[:, inside + move, inside] = np.array(chance)[:, None]
         return moves

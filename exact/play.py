@@ -1,9 +1,12 @@
 """Playing any rule exactly: one agent uses it, the others stay exact and take it for exact.
 
-The agent that uses the rule decides by what the rule says of the histories it is shown. If what it
-shows cannot come back to it, nobody else changes and its walk is played against the probabilities
-of the exact solution. Otherwise the whole group is played again: the actual weights are those of
-this play, while the exact agents go on reading what they see by the exact solution.
+The agent that uses the rule decides by what the rule says of the histories it is shown. Until it
+answers it shows "undecided", and others read that as they would of an exact agent; what it ends up
+doing therefore follows from the probabilities of the exact solution, in which it is held to showing
+undecided, even where what it shows can come back to it. The exception is a silence that the exact
+solution calls impossible: then the whole group is played again, with the actual weights of this
+play, while the exact agents go on reading what they see by the exact solution. The whole play also
+says how often others were shown what their model calls impossible.
 
 How the others read what the exact solution calls impossible is in ``among``; how often it happened
 is reported.
@@ -17,7 +20,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from thumbwright.exact.among import AmongOthersReader
-from thumbwright.exact.arrays import FloatArray, IntArray
+from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.engine import (
     Events,
     Moment,
@@ -167,7 +170,29 @@ class DifferenceReader(Reader):
         return Reading(differs, (one.plus | one.minus) & ~differs, one.value, compared=False)
 
 
-def adopt(solution: Solution, agent: str, policy: Policy, rows: int = 0) -> Play:
+def silence_is_possible(solution: Solution, position: int) -> bool:
+    """Whether others always have a reading for this agent's silence, however long it lasts.
+
+    They have unless exact play leaves it no chance of being undecided after some history in which
+    somebody who sees it may still be undecided himself.
+    """
+    group = solution.group
+    watchers = [k for k, seen in enumerate(group.sees) if position in seen]
+    axes = [group.sees[position].index(k) for k in watchers if k in group.sees[position]]
+    all_seen = len(axes) == len(watchers)
+    for moment in solution.tracks[position].moments:
+        met = np.isfinite(moment.log_shown).any(axis=0)
+        left = np.isfinite(moment.log_after).any(axis=0)
+        lost: BoolArray = np.asarray(met & ~left)
+        waiting = any(np.take(lost, 0, axis=axis).any() for axis in axes)
+        if lost.any() and (waiting or not all_seen):
+            return False
+    return True
+
+
+def adopt(
+    solution: Solution, agent: str, policy: Policy, rows: int = 0, whole: bool = True
+) -> Play:
     """One agent plays by a policy, the others stay exact and take it for exact.
 
     Parameters
@@ -180,23 +205,31 @@ def adopt(solution: Solution, agent: str, policy: Policy, rows: int = 0) -> Play
         ``policy(situation) -> act``.
     rows : int
         If above 0, usage is counted for this many lines.
+    whole : bool
+        Whether to play the whole group where the agent can change what it is shown. Without, and
+        where exact play leaves it a chance of silence after every history, the agent's figures
+        are the same but ``off_model`` is not counted.
     """
     reader = RuleReader(policy, solution.group.prior_plus, rows)
-    track, off_model = _play(solution, solution.group.index[agent], reader)
+    track, off_model = _play(solution, solution.group.index[agent], reader, whole)
     return Play(track, off_model, reader.usage)
 
 
 def difference(solution: Solution, agent: str, one: Policy, other: Policy) -> float:
     """Probability that an agent ever acts differently by two policies, on the same observations."""
-    track, _ = _play(solution, solution.group.index[agent], DifferenceReader(one, other))
+    reader = DifferenceReader(one, other)
+    track, _ = _play(solution, solution.group.index[agent], reader, whole=False)
     group = solution.group
     ever = track.answers[0].sum(axis=1)
     return float(group.prior_plus * ever[0] + (1.0 - group.prior_plus) * ever[1])
 
 
-def _play(solution: Solution, position: int, reader: Reader) -> tuple[Track, float]:
+def _play(
+    solution: Solution, position: int, reader: Reader, whole: bool
+) -> tuple[Track, float]:
     group = solution.group
-    if not group.influences(position):
+    alone = not group.influences(position)
+    if alone or (not whole and silence_is_possible(solution, position)):
         return _against(solution, position, reader), 0.0
     readers: list[Reader] = [AmongOthersReader(solution, i) for i in range(len(group.agents))]
     readers[position] = reader

@@ -1,6 +1,6 @@
 """Every form of the rule, with every figure, as one JSON file for other programs.
 
-Key order is fixed by this module and by the case; numbers have full double precision;
+Key order is fixed by this module and by the case; numbers have ten significant digits;
 infinities are the texts ``INF`` and ``-INF``, since JSON has none. The caution comes first.
 """
 

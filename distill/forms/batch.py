@@ -16,7 +16,14 @@ from thumbwright.distill.forms.runs import (
 )
 from thumbwright.distill.situations import values_of
 from thumbwright.exact.arrays import FloatArray, IntArray, sums
-from thumbwright.exact.many import Bars, ManyTallies, changed_many, fits, play_many
+from thumbwright.exact.many import (
+    Bars,
+    ManyTallies,
+    changed_many,
+    fits,
+    likely_counts,
+    play_many,
+)
 
 MOST_AT_ONCE = 400
 """Layouts priced together: more would only cost memory."""
@@ -28,7 +35,7 @@ class Batch:
     def __init__(self, pricer: Pricer) -> None:
         self._pricer = pricer
         self.together = all(
-            fits(s.solution.group, s.solution.group.index[pricer.agent]) for s in pricer.settings
+            fits(s.solution, s.solution.group.index[pricer.agent]) for s in pricer.settings
         )
         situations = pricer.situations
         shape = (len(pricer.settings), 3, pricer.group.horizon + 1)
@@ -47,7 +54,8 @@ class Batch:
     def tallies(self, layouts: Sequence[Layout]) -> list[Tally]:
         """How each layout turns out."""
         if not self.together:
-            return [self._pricer.rule_tally(as_rule(self._pricer, layout)) for layout in layouts]
+            rules = (as_rule(self._pricer, layout) for layout in layouts)
+            return [self._pricer.rule_tally(rule, whole=False) for rule in rules]
         found: list[Tally] = []
         for start in range(0, len(layouts), MOST_AT_ONCE):
             part = layouts[start : start + MOST_AT_ONCE]
@@ -81,6 +89,14 @@ class Batch:
                 total += setting.weight * (changed @ prior)
             found += total.tolist()
         return found
+
+    def counts(self, layout: Layout) -> int:
+        """How many own counts lie between the outermost bars of a layout."""
+        group = self._pricer.group
+        lowest, highest = likely_counts(group.agents[self._position].evidence, group.horizon)
+        low = [lowest if line.minus_at is None else line.minus_at for line in layout.lines]
+        high = [highest if line.plus_at is None else line.plus_at for line in layout.lines]
+        return max(min(max(high), highest) - max(min(low), lowest), 1)
 
     @property
     def _position(self) -> int:

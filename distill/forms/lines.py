@@ -13,7 +13,7 @@ watch.
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable, Iterator
 
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms import Distilled, Wanted
@@ -35,7 +35,13 @@ PRICED_ONE_BY_ONE = 12
 """So many candidates are priced where each has to be played by itself."""
 
 AT_A_LEVEL = 600
-"""About so many layouts are priced for each number of lines in the search for the fewest."""
+"""At most about so many layouts are priced for each number of lines."""
+
+WORK_AT_A_LEVEL = 500_000
+"""Fewer where layouts times steps times own counts would exceed this."""
+
+SETTLED = 5
+"""The bars of so many of the best layouts are settled before the best is taken."""
 
 MOST_MOVES = 200
 """Bars are moved one at a time, at most so often; a search ends long before."""
@@ -105,6 +111,9 @@ class Search:
         self._batch = Batch(pricer)
         self._moves = Moves(pricer, wanted.inputs)
         self._first = layout
+        self._last: list[Layout] = []
+        work = pricer.group.horizon * self._batch.counts(layout)
+        self._at_a_level = min(AT_A_LEVEL, WORK_AT_A_LEVEL // work)
         self.layout = layout
 
     def merge_unnoticed(self) -> None:
@@ -119,43 +128,27 @@ class Search:
 
     def merge_down_to(self, rows: int) -> None:
         """Merge at the least added risk until there are no more than ``rows`` lines."""
-        while len(self.layout) > rows:
-            merged = self._cheapest_merge()
-            if merged is None:
+        for layouts in self._levels(self._batch.objectives):
+            if len(self.layout) <= rows:
                 return
-            self.layout = merged
+            self.layout = layouts[0]
+            self._last = layouts[:SETTLED]
             self._tell()
 
     def merge_within(self, most_lost: float) -> str:
         """Take the fewest lines that lose no more accuracy; returns a sentence on how it went.
 
-        Level by level one line fewer, keeping at each level the layouts that lose least, as many
-        as can be priced; of those that qualify on the last level, the one of least risk.
+        Of those that qualify with so many lines, the one of least risk.
         """
-        best, kept = self.layout, [self.layout]
-        if self._lost(kept)[0] > most_lost:
-            self.merge_down_to(self._wanted.rows)
-            return (
-                f"No rule of up to {self._wanted.rows} lines was found within the accuracy that may "
-                "be lost: even unmerged lines lose more, since they cannot look at all that exact "
-                "play looks at."
-            )
-        while kept:
-            width = max(1, AT_A_LEVEL // max(1, sum(1 for _ in kept[0].merges(unnoticed=False))))
-            merges = (m for layout in kept[:width] for m in layout.merges(unnoticed=False))
-            candidates = self._promising(dict.fromkeys(merges))
-            lost = self._lost(candidates)
-            order = sorted(range(len(candidates)), key=lambda k: (lost[k], k))
-            kept = [candidates[k] for k in order]
-            fits = [candidates[k] for k in order if lost[k] <= most_lost]
-            if not fits:
-                break
-            risks = self._batch.objectives(fits)
-            best = fits[risks.index(min(risks))]
-            self.layout = best
-            self._tell()
-        self.layout = best
-        if len(best) <= self._wanted.rows:
+        fits = self._lost([self.layout])[0] <= most_lost
+        for layouts in self._levels(self._lost):
+            lost = self._lost(layouts)
+            within = [one for one, loss in zip(layouts, lost, strict=True) if loss <= most_lost]
+            if within:
+                risks = self._batch.objectives(within)
+                self.layout, fits = within[risks.index(min(risks))], True
+                self._tell()
+        if fits and len(self.layout) <= self._wanted.rows:
             return "The fewest lines found within the accuracy that may be lost."
         self.merge_down_to(self._wanted.rows)
         return (
@@ -163,29 +156,45 @@ class Search:
             "lost; this one loses more."
         )
 
+    def _levels(self, loss: Callable[[list[Layout]], list[float]]) -> Iterator[list[Layout]]:
+        """Layouts with one line fewer, two fewer and so on, those of least loss first.
+
+        Each level is made by merging the best layouts of the one before, as many of them as keeps
+        the number of layouts to price near AT_A_LEVEL.
+        """
+        kept = [self.layout]
+        while kept:
+            branches = sum(1 for _ in kept[0].merges(unnoticed=False))
+            width = self._at_a_level // max(branches, 1) if self._batch.together else 1
+            merges = (m for one in kept[: max(width, 1)] for m in one.merges(unnoticed=False))
+            candidates = self._promising(dict.fromkeys(merges))
+            losses = loss(candidates)
+            order = sorted(range(len(candidates)), key=lambda k: (losses[k], k))
+            kept = [candidates[k] for k in order]
+            if kept:
+                yield kept
+
     def _lost(self, layouts: list[Layout]) -> list[float]:
         """Accuracy lost against exact play."""
         exact = self._pricer.accuracy(self._pricer.exact_tally)
         return [exact - self._pricer.accuracy(found) for found in self._batch.tallies(layouts)]
 
-    def _cheapest_merge(self) -> Layout | None:
-        candidates = self._promising(self.layout.merges(unnoticed=False))
-        if not candidates:
-            return None
-        risks = self._batch.objectives(candidates)
-        return candidates[risks.index(min(risks))]
-
     def settle_bars(self) -> None:
         """Move bars by one while that lowers the risk, between the exact bars of their line."""
-        (risk,) = self._batch.objectives([self.layout])
+        settled = [self._settled(layout) for layout in self._last or [self.layout]]
+        self.layout = min(settled, key=lambda pair: pair[0])[1]
+
+    def _settled(self, layout: Layout) -> tuple[float, Layout]:
+        (risk,) = self._batch.objectives([layout])
         for _ in range(MOST_MOVES):
-            candidates = self._promising(moved_bars(self._pricer, self._wanted.inputs, self.layout))
+            moved = moved_bars(self._pricer, self._wanted.inputs, layout)
+            candidates = self._promising(moved)
             risks = self._batch.objectives(candidates)
             if not risks or min(risks) >= risk - 1e-12:
-                return
+                break
             risk = min(risks)
-            self.layout = candidates[risks.index(risk)].tidied()
-            self._tell()
+            layout = candidates[risks.index(risk)].tidied()
+        return risk, layout
 
     def _promising(self, candidates: Iterable[Layout]) -> list[Layout]:
         """All candidates where pricing is cheap; else those that move the fewest bars by least."""

@@ -28,6 +28,9 @@ NAME = "table"
 MOST_BOXES = 3_000_000
 """More boxes than this times the rows wanted take too long to search exactly."""
 
+DIGITS = 10
+"""Significant digits of a value: far more than matter, and the same on every machine."""
+
 _STATE_ORDER = ("minus", "undecided", "plus")
 
 
@@ -174,7 +177,7 @@ def as_rule(
     for box in sorted(partition.boxes, key=lambda box: _print_order(axes, box)):
         where = tuple(slice(start, stop) for start, stop in box)
         value = values_of(plus[where].sum(keepdims=True), minus[where].sum(keepdims=True))
-        row = Row(value=float(value.flat[0]))
+        row = Row(value=float(f"{value.flat[0]:.{DIGITS}g}"))
         for axis, (start, stop) in zip(axes, box, strict=True):
             row = axis.says(row, start, stop)
         rows.append(row)

@@ -23,7 +23,8 @@ def by_hand(case: walk.Pair, rounds: dict[int, int]) -> dict[Key, list[tuple[flo
     """(mass given plus, mass given minus, worth) of every history, by when and what is shown.
 
     For each history the observer's own walk is run against it with its exact decisions; omega is
-    the mean over both answers of the chance of being still undecided before the round.
+    the mean over both answers of the chance of being still undecided before the round, shared
+    among the rounds of the step.
     """
     rule, worths = walk.exact(case), walk.Worths(case)
     laws = [walk.watched_walk(case, answer) for answer in ("plus", "minus")]
@@ -44,7 +45,7 @@ def by_hand(case: walk.Pair, rounds: dict[int, int]) -> dict[Key, list[tuple[flo
             for round_ in range(rounds[step]):
                 known = step - 1 + min(round_, 1)  # nothing new can come after the second look
                 shown = call if call is not None and call.step <= known else None
-                omega = sum(math.fsum(own.values()) for own in walks) / 2
+                omega = sum(math.fsum(own.values()) for own in walks) / 2 / rounds[step]
                 shown_chance = chance if shown else [law[1][known] for law in laws]
                 if (shown is not None or call is None) and max(shown_chance) > 0:
                     state = CODES[shown.answer] if shown else 0

@@ -128,9 +128,11 @@ def agents_with(**changes: Any) -> Group:
 
 
 def test_which_groups_are_priced_together() -> None:
-    assert fits(agents_with(), 1)
+    assert fits(solve(agents_with()), 1)
     certain = listed([0.5, 0.5, 0.0], [0.3, 0.5, 0.2])
     four = listed([0.1, 0.2, 0.3, 0.4], [0.37, 0.31, 0.19, 0.13])
+    # After a call of the one seen nobody stays undecided, and the one seen has no reading for it.
+    narrow = same_thresholds(Thresholds(-0.1, 0.1))
     unsure = tuple((0.5, Thresholds(-m, m)) for m in (1.0, 2.0))
     assert isinstance(certain, Evidence)
     assert isinstance(four, Evidence)
@@ -138,13 +140,14 @@ def test_which_groups_are_priced_together() -> None:
     for changes in (
         {"sees": ()},
         {"sees": ("a", "c")},
-        {"watched_sees": ("b",)},
+        {"watched_sees": ("b",), "thresholds": narrow},
         {"evidence": certain},
         {"evidence": four},
         {"thresholds": unsure},
     ):
-        assert not fits(agents_with(**changes), 1), changes
-    # Being watched by somebody whose display cannot come back is no hindrance.
+        assert not fits(solve(agents_with(**changes)), 1), changes
+    # Being watched is no hindrance where silence always has a reading.
+    assert fits(solve(agents_with(watched_sees=("b",))), 1)
     bars = same_thresholds(Thresholds(-1.0, 1.0))
     chain = Group(
         (
@@ -155,7 +158,7 @@ def test_which_groups_are_priced_together() -> None:
         0.0,
         5,
     )
-    assert fits(chain, 1)
+    assert fits(solve(chain), 1)
     solution, bars_ = solve(chain), random_bars(5, 2, 5, coin(0.6))
     found, track = play_many(solution, 1, bars_), adopt(solution, "b", policy(bars_, 1)).track
     assert found.steps[1, 0] == pytest.approx(outcome(track)[0].mean_steps, abs=1e-12)
