@@ -33,13 +33,14 @@ DIGITS = 10
 
 
 def json_number(number: float | None) -> float | str | None:
-    """Return ``number`` as JSON holds it here: ten digits, and infinities, which it lacks, as text.
-
-    Only files that are compared from one machine to another are rounded so; what a verb prints
-    with ``--json`` has full double precision.
-    """
-    if number is None:
-        return None
-    if math.isfinite(number):
-        return float(f"{number:.{DIGITS}g}")
+    """Return ``number`` as JSON can hold it: infinities, which JSON lacks, become text."""
+    if number is None or math.isfinite(number):
+        return number
     return plain_decimal(number)
+
+
+def json_figure(number: float | None) -> float | str | None:
+    """Return a computed figure for a file that may be compared from one machine to another."""
+    if number is None or not math.isfinite(number):
+        return json_number(number)
+    return float(f"{number:.{DIGITS}g}")

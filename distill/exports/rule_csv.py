@@ -17,7 +17,7 @@ from collections.abc import Iterable, Sequence
 from typing import Any
 
 from thumbwright.distill.cautions import cautions
-from thumbwright.distill.decimals import json_number, plain_decimal
+from thumbwright.distill.decimals import json_figure, plain_decimal
 from thumbwright.distill.findings import Figures, Findings
 from thumbwright.distill.rules import SHOWN, Row, Rule
 
@@ -153,9 +153,9 @@ def figures_record(figures: Figures) -> dict[str, Any]:
     for field in dataclasses.fields(figures):
         found = getattr(figures, field.name)
         if isinstance(found, dict):
-            record[field.name] = {key: json_number(number) for key, number in found.items()}
+            record[field.name] = {key: json_figure(number) for key, number in found.items()}
         else:
-            record[field.name] = json_number(found)
+            record[field.name] = json_figure(found)
     return record
 
 

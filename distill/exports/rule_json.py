@@ -1,6 +1,7 @@
 """Every form of the rule, with every figure, as one JSON file for other programs.
 
-Key order is fixed by this module and by the case; numbers have ten significant digits;
+Key order is fixed by this module and by the case; figures have ten significant digits,
+the values of rows all of theirs;
 infinities are the texts ``INF`` and ``-INF``, since JSON has none. The caution comes first.
 """
 
@@ -10,7 +11,7 @@ import json
 from typing import Any
 
 from thumbwright.distill.cautions import cautions
-from thumbwright.distill.decimals import json_number
+from thumbwright.distill.decimals import json_figure, json_number
 from thumbwright.distill.exports.rule_csv import (
     figure_units,
     figures_record,
@@ -59,15 +60,15 @@ def rule_json(findings: Findings) -> str:
         "watching_is_worth_something": findings.watching_is_worth,
         "own_count": {
             "is_whole": findings.count_is_whole,
-            "nats_per_count": json_number(findings.alpha),
-            "nats_per_step": json_number(findings.beta),
+            "nats_per_count": json_figure(findings.alpha),
+            "nats_per_step": json_figure(findings.beta),
             "count_per_value": (
                 None if findings.value_offsets is None else list(findings.value_offsets)
             ),
         },
         "is_exact": findings.is_exact,
         "caveats": list(findings.caveats),
-        "near_tie_mass": json_number(findings.near_tie_mass),
+        "near_tie_mass": json_figure(findings.near_tie_mass),
     }
     return json.dumps(document, indent=2, ensure_ascii=False, allow_nan=False) + "\n"
 
@@ -92,13 +93,13 @@ def _form(result: FormResult, findings: Findings) -> dict[str, Any]:
     rows = []
     for row, use in zip(result.rule.rows, result.uses, strict=True):
         record = _row(row, result.rule, findings)
-        record["steps_in_force"] = json_number(use.steps_in_force)
-        record["calls"] = json_number(use.calls)
+        record["steps_in_force"] = json_figure(use.steps_in_force)
+        record["calls"] = json_figure(use.calls)
         rows.append(record)
     return {
         "rows": rows,
-        "information_kept": json_number(result.information_kept),
-        "information_ceiling": json_number(result.information_ceiling),
+        "information_kept": json_figure(result.information_kept),
+        "information_ceiling": json_figure(result.information_ceiling),
         "costs": figures_record(result.figures),
         "notes": list(result.notes),
     }
@@ -134,10 +135,10 @@ def _losses(basis: CostBasis | None) -> dict[str, Any] | None:
     if basis is None:
         return None
     return {
-        "false_plus": json_number(basis.false_plus),
-        "false_minus": json_number(basis.false_minus),
-        "per_step": json_number(basis.per_step),
-        "undecided": json_number(basis.undecided),
+        "false_plus": json_figure(basis.false_plus),
+        "false_minus": json_figure(basis.false_minus),
+        "per_step": json_figure(basis.per_step),
+        "undecided": json_figure(basis.undecided),
         "inferred_from_thresholds": basis.inferred,
         "loss_ratio_range": _range(basis.loss_ratio_range),
         "per_step_range": _range(basis.per_step_range),
@@ -146,4 +147,4 @@ def _losses(basis: CostBasis | None) -> dict[str, Any] | None:
 
 
 def _range(pair: tuple[float, float] | None) -> list[Any] | None:
-    return None if pair is None else [json_number(end) for end in pair]
+    return None if pair is None else [json_figure(end) for end in pair]

@@ -5,7 +5,7 @@ import re
 import pytest
 from hypothesis import given, strategies as st
 
-from thumbwright.distill.decimals import json_number, plain_decimal
+from thumbwright.distill.decimals import json_figure, json_number, plain_decimal
 
 
 @given(st.floats(allow_nan=False, allow_infinity=False))
@@ -42,3 +42,9 @@ def test_what_is_not_a_number_is_refused() -> None:
 
 def test_json_has_no_infinity() -> None:
     assert [json_number(x) for x in (None, 1.5, float("-inf"))] == [None, 1.5, "-INF"]
+
+
+def test_figures_have_ten_digits() -> None:
+    assert json_figure(0.1 + 0.2) == 0.3
+    assert json_figure(1 / 3) == 0.3333333333
+    assert [json_figure(x) for x in (None, float("inf"), 0.0)] == [None, "INF", 0.0]
