@@ -107,7 +107,7 @@ class Walk:
             for side, proof in enumerate(proofs):
                 if proof:
                     certain[side, side] = before[side] + np.log(proof)
-        if len(self._moves) > _FEW:
+        if len(self._moves) > _FEW and len(self._code):
             self._move_many()
         else:
             self._move_each()
