@@ -22,6 +22,25 @@ from thumbwright.exact.stopping import Losses, best_alone
 
 
 @dataclass(frozen=True)
+class Limits:
+    """What a run may take, and leave out.
+
+    Attributes
+    ----------
+    drop : float
+        Display events of less probability than this are dropped; the dropped mass is stated.
+    memory : float or None
+        Bytes that a run may take; None is half of what is free.
+    """
+
+    drop: float = 0.0
+    memory: float | None = None
+
+
+NO_LIMITS = Limits()
+
+
+@dataclass(frozen=True)
 class Setting:
     """One exact solution that the rule must serve.
 
@@ -73,16 +92,19 @@ def assemble(case: Case) -> Group:
             if pair not in known:
                 known[pair] = thresholds_named(case, name, evidence[key], prior)
             shares.append((share, known[pair]))
-        agents.append(Agent(key, evidence[key], tuple(shares), tuple(agent.sees)))
+        looks = agent.looks(case.time.horizon)
+        agents.append(Agent(key, evidence[key], tuple(shares), tuple(agent.sees), looks))
     return Group(tuple(agents), prior, case.time.horizon, case.time.exchange)
 
 
-def settings_of(case: Case, progress: Progress | None = None) -> tuple[Setting, ...]:
+def settings_of(
+    case: Case, progress: Progress | None = None, limits: Limits = NO_LIMITS
+) -> tuple[Setting, ...]:
     """Solve the group for every combination of thresholds that the rule must tell apart."""
     group = assemble(case)
     seen = group.agents[group.index[case.rule_agent]].sees
     if "thresholds" not in case.rule.inputs:
-        return (Setting(1.0, {}, solve(group, progress)),)
+        return (Setting(1.0, {}, solve(group, progress, limits.drop, limits.memory)),)
     combinations = list(product(case.rule.covers, repeat=len(seen)))
     settings = []
     for names in combinations:
@@ -92,7 +114,8 @@ def settings_of(case: Case, progress: Progress | None = None) -> tuple[Setting, 
             )
             for other, name in zip(seen, names, strict=True)
         }
-        solution = solve(replace_thresholds(group, known), progress)
+        exact = replace_thresholds(group, known)
+        solution = solve(exact, progress, limits.drop, limits.memory)
         settings.append(
             Setting(1.0 / len(combinations), dict(zip(seen, names, strict=True)), solution)
         )
@@ -144,7 +167,9 @@ def _on_ladder(case: Case, keys: EvidenceKeys, agents: list[str], prior: float) 
     names = dict.fromkeys(n for agent in agents for n in _shares(case.agents[agent].thresholds))
     names.update(dict.fromkeys(case.rule.covers))
     bounds = [_bounds_for_split(case, name, built, prior) for name in names]
-    return settle(built, bounds, prior, case.time.horizon, keys.tolerance)
+    looks = [case.agents[agent].looks(case.time.horizon) for agent in agents]
+    most = max(case.time.horizon if look is None else sum(look) for look in looks)
+    return settle(built, bounds, prior, most, keys.tolerance)
 
 
 def _bounds_for_split(case: Case, name: str, loose: Loose, prior: float) -> Thresholds:

@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import hashlib
 import json
+from collections.abc import Mapping
 from typing import Annotated, Any, Literal, Self, get_args
 
 from pydantic import ConfigDict, Field, ValidationInfo, field_validator, model_validator
@@ -31,7 +32,8 @@ from thumbwright.distill.fields import (
     Text,
     Within,
 )
-from thumbwright.distill.group_keys import Agent, AgentTable, Network
+from thumbwright.distill.group_checks import TIMETABLE
+from thumbwright.distill.group_keys import LONGEST, Agent, AgentTable, Network
 
 __all__ = [
     "FORMS",
@@ -110,7 +112,7 @@ class Words(Part):
 class Time(Part):
     """How long there is, what a step is, and when what was shown is taken in."""
 
-    horizon: Annotated[int, Within(1, 1000, whole=True)] = Field(
+    horizon: Annotated[int, Within(1, LONGEST, whole=True)] = Field(
         description="Number of steps after which no more answers are given."
     )
     step_label: OptionalText = Field(
@@ -217,8 +219,12 @@ class CaseFile(_Shared):
     )
     network: Network | None = None
 
-    def complete(self, name: str, source: str) -> Case:
+    def complete(
+        self, name: str, source: str, members: Mapping[str, list[str]] | None = None
+    ) -> Case:
         """Return the complete case; ``name`` and ``source`` as in :class:`Case`.
+
+        ``members`` is who sees whom by the network file, for a case that names one.
 
         Raises
         ------
@@ -226,7 +232,7 @@ class CaseFile(_Shared):
             If sections contradict each other.
         """
         if self.network is not None:
-            agents = self.network.agents()
+            agents = self.network.agents(members)
         else:
             agents = {key: table.complete(key) for key, table in (self.agents or {}).items()}
         parts = {field: getattr(self, field) for field in _Shared.model_fields}
@@ -286,9 +292,14 @@ class Case(_Shared):
 
         Taken over canonical JSON of the complete case, defaults included and agents in order.
         Name and source are left out: a copy of a file says the same, and so does a file that
-        spells out a default or a network shape.
+        spells out a default or a network shape. A network file counts by what it says.
         """
         content = self.model_dump(mode="json", by_alias=True, exclude={"name", "source"})
+        for agent in content["agents"].values():
+            # An ordinary timetable is left out, as in cases from before there were others.
+            for key in TIMETABLE:
+                if agent[key] == 1:
+                    del agent[key]
         content["agents"] = list(content["agents"].items())
         canonical = json.dumps(content, sort_keys=True, separators=(",", ":"), allow_nan=False)
         return hashlib.sha256(canonical.encode("utf-8")).hexdigest()[:12]

@@ -14,11 +14,27 @@ import sys
 from collections.abc import Sequence
 from pathlib import Path
 from types import FrameType
-from typing import NoReturn
+from typing import TYPE_CHECKING, NoReturn
 
 import click
 
+if TYPE_CHECKING:
+    from thumbwright.distill.assemble import Limits
+
 CASE = click.argument("case", metavar="CASE")
+DROP = click.option(
+    "--drop",
+    type=click.FloatRange(0.0, 0.01),
+    default=0.0,
+    metavar="P",
+    help="Leave out display events less probable than P; what that can change is printed.",
+)
+MEMORY = click.option(
+    "--memory",
+    type=click.FloatRange(0.001),
+    metavar="GB",
+    help="Memory a run may take; left out: half of what is free.",
+)
 JSON = click.option("--json", "as_json", is_flag=True, help="Print all figures as JSON.")
 TRACE = "THUMBWRIGHT_TRACE"
 """Environment variable: when set, a fault of the program itself is shown in full."""
@@ -72,8 +88,9 @@ def starter(name: str | None, file: Path | None) -> None:
 
 @verbs.command()
 @click.argument("case", metavar="CASE", required=False)
+@MEMORY
 @click.option("--schema", is_flag=True, help="Print the JSON Schema of case files, for editors.")
-def check(case: str | None, schema: bool) -> None:
+def check(case: str | None, memory: float | None, schema: bool) -> None:
     """Look through a case: every fault at once, or what will be computed and how long it takes."""
     if schema:
         from thumbwright.distill.case import Case
@@ -85,7 +102,7 @@ def check(case: str | None, schema: bool) -> None:
     from thumbwright.distill import job
     from thumbwright.distill.reading import read_case
 
-    _show(job.check(read_case(case)))
+    _show(job.check(read_case(case), _limits(0.0, memory)))
 
 
 @verbs.command()
@@ -96,7 +113,9 @@ def check(case: str | None, schema: bool) -> None:
     metavar="DIR",
     help="Folder to write into, made where it is missing; otherwise outputs/<name of the case>.",
 )
-def sheet(case: str, into: Path | None) -> None:
+@DROP
+@MEMORY
+def sheet(case: str, into: Path | None, drop: float, memory: float | None) -> None:
     """The main job: exact beliefs, rules, their costs; writes the policy sheet and its data."""
     from thumbwright.distill import job
     from thumbwright.distill.progress import progress_on_terminal
@@ -104,7 +123,8 @@ def sheet(case: str, into: Path | None) -> None:
 
     read = read_case(case)
     with progress_on_terminal() as progress:
-        summary = job.sheet(read, into or Path("outputs") / read.name, progress)
+        folder = into or Path("outputs") / read.name
+        summary = job.sheet(read, folder, progress, _limits(drop, memory))
     _show(summary)
 
 
@@ -117,7 +137,9 @@ def sheet(case: str, into: Path | None) -> None:
     metavar="FILE",
     help="Write the table to FILE instead of printing it.",
 )
-def jumps(case: str, file: Path | None) -> None:
+@DROP
+@MEMORY
+def jumps(case: str, file: Path | None, drop: float, memory: float | None) -> None:
     """The exact worth of every seen history, with its weights, as a CSV table."""
     from thumbwright.distill import job
     from thumbwright.distill.progress import progress_on_terminal
@@ -126,7 +148,7 @@ def jumps(case: str, file: Path | None) -> None:
 
     read = read_case(case)
     with progress_on_terminal() as progress:
-        table = job.jumps(read, progress)
+        table = job.jumps(read, progress, _limits(drop, memory))
     text = table.to_csv(index=False, lineterminator="\n")
     if file is None:
         click.echo(text, nl=False)
@@ -136,21 +158,25 @@ def jumps(case: str, file: Path | None) -> None:
 
 @verbs.command()
 @CASE
+@DROP
+@MEMORY
 @JSON
-def outcomes(case: str, as_json: bool) -> None:
-    """What each agent ends up doing when all of them reason exactly."""
+def outcomes(case: str, drop: float, memory: float | None, as_json: bool) -> None:
+    """What each agent, and the group, ends up doing when all of them reason exactly."""
     from thumbwright.distill import job
     from thumbwright.distill.reading import read_case
 
-    found = job.outcomes(read_case(case))
+    found = job.outcomes(read_case(case), _limits(drop, memory))
     _show(_as_json(found) if as_json else job.outcomes_text(found))
 
 
 @verbs.command()
 @CASE
 @click.argument("rule", metavar="RULE")
+@DROP
+@MEMORY
 @JSON
-def price(case: str, rule: str, as_json: bool) -> None:
+def price(case: str, rule: str, drop: float, memory: float | None, as_json: bool) -> None:
     """What a given rule costs, and how often each of its rows is used.
 
     RULE is a CSV file as written by "sheet" (rule.csv), or one of: exact, plain-count, alone.
@@ -161,8 +187,14 @@ def price(case: str, rule: str, as_json: bool) -> None:
 
     read = read_case(case)
     with progress_on_terminal() as progress:
-        found = job.price(read, rule, progress)
+        found = job.price(read, rule, progress, _limits(drop, memory))
     _show(_as_json(found) if as_json else job.price_text(found))
+
+
+def _limits(drop: float, memory: float | None) -> Limits:
+    from thumbwright.distill.assemble import Limits
+
+    return Limits(drop, None if memory is None else memory * 1e9)
 
 
 def main(argv: Sequence[str] | None = None) -> int:

@@ -66,7 +66,7 @@ class Tally:
 
 
 def _difference(one: float, other: float) -> float:
-    """one - other; what is rounding only is nothing."""
+    """One less the other; what is rounding only is nothing."""
     return 0.0 if abs(one - other) <= 1e-12 * max(1.0, abs(one)) else one - other
 
 

@@ -25,7 +25,9 @@ MASS_TOLERANCE = 1e-9
 
 
 def contradictions(
-    document: Mapping[str, Any], faulty: Collection[Key] = frozenset()
+    document: Mapping[str, Any],
+    faulty: Collection[Key] = frozenset(),
+    members: Mapping[str, list[str]] | None = None,
 ) -> list[tuple[Key, str]]:
     """Return what contradicts itself in a case, as ``(key, text)`` in no special order.
 
@@ -35,8 +37,10 @@ def contradictions(
         A case as parsed from TOML, or as dumped from a complete case.
     faulty : collection of keys
         Keys already reported; nothing that rests on them is reported again.
+    members : mapping of str to list of str, optional
+        Who sees whom by the file that ``[network]`` names.
     """
-    plain = Plain(document, faulty)
+    plain = Plain(document, faulty, members)
     checks = (
         distinct_words(plain),
         *(evidence(plain, *place) for place in evidence_places(plain)),

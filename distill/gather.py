@@ -10,7 +10,13 @@ from importlib.metadata import version
 
 import numpy as np
 
-from thumbwright.distill.assemble import Setting, losses_of, settings_of
+from thumbwright.distill.assemble import (
+    NO_LIMITS,
+    Limits,
+    Setting,
+    losses_of,
+    settings_of,
+)
 from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.example import example
@@ -29,12 +35,15 @@ MOST_CURVES = 9
 """Joint shown states that get a curve of their own, the most frequent first."""
 
 
-def pricer_of(case: Case, progress: Progress | None = None) -> tuple[Pricer, str | None]:
+def pricer_of(
+    case: Case, progress: Progress | None = None, limits: Limits = NO_LIMITS
+) -> tuple[Pricer, str | None]:
     """Exact play and the costs to price by; a sentence where no costs could be found.
 
-    Raises ModelError where the rule's agent has thresholds that are unknown.
+    Raises ModelError where the rule's agent has thresholds that are unknown, or a timetable of its
+    own.
     """
-    settings = settings_of(case, progress)
+    settings = settings_of(case, progress, limits)
     agent = case.rule_agent
     losses, cone, missing = losses_of(case), None, None
     own = settings[0].solution.group.agents[settings[0].solution.group.index[agent]]
@@ -42,6 +51,11 @@ def pricer_of(case: Case, progress: Progress | None = None) -> tuple[Pricer, str
         raise ModelError(
             f"agents.{agent}: the rule is for {agent}, so its own thresholds must be known; give "
             "it one name under thresholds"
+        )
+    if own.looks is not None:
+        raise ModelError(
+            f"agents.{agent}: a rule counts one observation at every step, so its agent cannot "
+            "have first_step, looks_every or looks_per_step; give them to the agents it sees"
         )
     if losses is None:
         losses, cone = _inferred(settings, agent)
@@ -60,9 +74,11 @@ def _inferred(settings: tuple[Setting, ...], agent: str) -> tuple[Losses | None,
     return (None, None) if cone is None else (cone.middle, cone)
 
 
-def gather(case: Case, progress: Progress | None = None) -> Findings:
+def gather(
+    case: Case, progress: Progress | None = None, limits: Limits = NO_LIMITS
+) -> Findings:
     """Everything that is printed about the rule's agent of a case."""
-    pricer, missing = pricer_of(case, progress)
+    pricer, missing = pricer_of(case, progress, limits)
     wanted = Wanted(case.rule.rows, tuple(case.rule.inputs), case.rule.max_accuracy_lost)
     forms, left_out = _forms(pricer, case, wanted, progress)
     main = next(iter(forms.values()))
@@ -151,7 +167,8 @@ def _leans(group: Group, seen: tuple[str, ...]) -> dict[str, str]:
 
 def _is_exact(pricer: Pricer, figures: list[Figures]) -> bool:
     split = any(agent.evidence.split for agent in pricer.group.agents)
-    return not split and all(f.off_model == 0.0 for f in figures)
+    dropped = any(s.solution.dropped_mass > 0 for s in pricer.settings)
+    return not split and not dropped and all(f.off_model == 0.0 for f in figures)
 
 
 def _caveats(pricer: Pricer, figures: list[Figures], missing: str | None) -> tuple[str, ...]:
@@ -167,6 +184,13 @@ def _caveats(pricer: Pricer, figures: list[Figures], missing: str | None) -> tup
             )
         if evidence.kind == "poisson":
             said.append("Counts in the tail of the Poisson law, below 1e-15, were cut.")
+    dropped = sum(s.weight * s.solution.dropped_mass for s in pricer.settings)
+    if dropped > 0:
+        off = sum(s.weight * s.solution.uncertainty for s in pricer.settings)
+        said.append(
+            f"Display events of probability {dropped:.3g} in all were dropped on request; any "
+            f"probability here may be off by up to {off:.3g}."
+        )
     odd = max((f.off_model for f in figures), default=0.0)
     if odd > 0:
         said.append(
@@ -205,13 +229,18 @@ def worth_curves(pricer: Pricer, case: Case) -> tuple[WorthCurve, ...]:
                     situations.minus[cell].sum(keepdims=True),
                 )
                 worths = situations.worth[cell]
-                numbers = [float(pooled[0]), float(worths.min()), float(worths.max())]
+                numbers = [_clean(x) for x in (pooled[0], worths.min(), worths.max())]
             for column, number in zip(columns, numbers, strict=True):
                 column.append(number)
         curves.append(
             WorthCurve(_state_label(case, pricer.seen, states), states, steps, *map(tuple, columns))
         )
     return tuple(curves)
+
+
+def _clean(worth: float) -> float:
+    """A worth to print; what is rounding only is nothing."""
+    return 0.0 if abs(worth) < 1e-12 else float(worth)
 
 
 def _state_label(case: Case, seen: tuple[str, ...], states: tuple[str, ...]) -> str:

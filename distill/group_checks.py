@@ -10,7 +10,7 @@ from collections.abc import Iterator, Mapping
 from typing import Any
 
 from thumbwright.distill.faults import Key, close_match, hint, quoted, shown
-from thumbwright.distill.network import LARGEST_GROUP, PAIRS, SMALLEST, who_sees_whom
+from thumbwright.distill.network import ENDINGS, LARGEST_GROUP, PAIRS, SMALLEST, who_sees_whom
 from thumbwright.distill.plain import Plain
 
 Found = Iterator[tuple[Key, str]]
@@ -18,6 +18,8 @@ Found = Iterator[tuple[Key, str]]
 ANY = "any"
 UNKNOWN = "unknown"
 SHARE_TOLERANCE = 1e-9
+TIMETABLE = ("first_step", "looks_every", "looks_per_step")
+"""Keys of an agent that say when it observes."""
 
 
 def agents_and_network(plain: Plain) -> Found:
@@ -35,6 +37,7 @@ def agents_and_network(plain: Plain) -> Found:
     for agent in plain.table("agents"):
         yield from thresholds_of(plain, agent)
         yield from seen_by(plain, agent)
+        yield from timetable(plain, agent)
         name = (plain.text("agents", agent, "name") or agent).strip()
         if name in called:
             yield (
@@ -62,7 +65,8 @@ def names_of(plain: Plain, section: str, reserved: str) -> Found:
 
 
 def network(plain: Plain) -> Found:
-    """A shape must be possible with its size, and its names must fit."""
+    """A shape must be possible with its size, a file is of a known kind, and names must fit."""
+    yield from shape_or_file(plain)
     shape, size = plain.text("network", "shape"), plain.number("network", "size")
     names = plain.get("network", "names")
     if shape in SMALLEST:
@@ -88,6 +92,39 @@ def network(plain: Plain) -> Found:
         yield from known_thresholds(plain, ("network", "thresholds"), name_used)
 
 
+def shape_or_file(plain: Plain) -> Found:
+    """A network is given by a shape or by a file."""
+    written = plain.get("network", "file")
+    if not plain.has("network", "file"):
+        if not plain.has("network", "shape"):
+            odd = plain.table("network")
+            # A misspelt key has been reported with what was meant.
+            if not any(close_match(key, ("shape", "file")) for key in odd):
+                yield ("network", "shape"), f"is missing{hint('', list(SMALLEST))}; or name a file"
+        return
+    if plain.has("network", "shape"):
+        yield ("network", "file"), "shape and file are both given; keep one"
+    if plain.has("network", "size"):
+        yield ("network", "size"), "goes with a shape only; a file says itself who there is"
+    if isinstance(written, str) and not written.lower().endswith(ENDINGS):
+        yield (
+            ("network", "file"),
+            f"{quoted(written)} is of no known kind (allowed names ending in "
+            f"{' or '.join(ENDINGS)})",
+        )
+
+
+def timetable(plain: Plain, agent: str) -> Found:
+    """Whoever starts late must still start before the end."""
+    first, horizon = plain.number("agents", agent, "first_step"), plain.number("time", "horizon")
+    if first is not None and horizon is not None and first > horizon:
+        yield (
+            ("agents", agent, "first_step"),
+            f"{shown(first)} lies after the last step, {shown(horizon)}, so it would never observe "
+            "anything",
+        )
+
+
 def known_thresholds(plain: Plain, key: Key, name: str) -> Found:
     """A name of thresholds must be one that the case defines."""
     defined = list(plain.table("thresholds"))
@@ -105,7 +142,7 @@ def thresholds_of(plain: Plain, agent: str) -> Found:
         yield (*place, UNKNOWN), "thresholds and unknown are both given; keep one"
         return
     if not stated:
-        known = ("name", "thresholds", UNKNOWN, "sees", "evidence")
+        known = ("name", "thresholds", UNKNOWN, "sees", "evidence", *TIMETABLE)
         odd = [key for key in plain.table(*place) if key not in known]
         # A misspelt key has been reported with what was meant.
         if not any(close_match(key, known) in ("thresholds", UNKNOWN) for key in odd):
@@ -138,14 +175,14 @@ def mixture(plain: Plain, agent: str) -> dict[str, float | None]:
 
 def seen_by(plain: Plain, agent: str) -> Found:
     """An agent sees other agents of the case, each once."""
-    others = [other for other in plain.table("agents") if other != agent]
+    others = plain.table("agents")
     met: set[str] = set()
     for place, name in plain.texts("agents", agent, "sees") or []:
         key = ("agents", agent, "sees", place)
         if name == agent:
             yield key, "an agent cannot see itself; it knows its own state without looking"
         elif name not in others:
-            yield key, f"there is no agent {quoted(name)}{hint(name, others)}"
+            yield key, f"there is no agent {quoted(name)}{hint(name, list(others))}"
         elif name in met:
             yield key, f"{quoted(name)} is listed twice; once is enough"
         met.add(name)
@@ -153,6 +190,8 @@ def seen_by(plain: Plain, agent: str) -> Found:
 
 def network_agents(plain: Plain) -> dict[str, list[str]] | None:
     """Who sees whom in the ``[network]``; ``None`` where that cannot be told."""
+    if plain.has("network", "file"):
+        return None if plain.members is None else dict(plain.members)
     shape, size = plain.text("network", "shape"), plain.get("network", "size")
     if shape in PAIRS and not plain.has("network", "size"):
         size = 2

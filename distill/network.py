@@ -1,5 +1,7 @@
 """Named shapes of groups, written out as who sees whom.
 
+They are shorthands: whatever they say can be said in ``[agents.*]`` tables or in a network file.
+
 Every shape has members ``a1`` … ``aN``. "``a2`` sees ``a1``" means that ``a2`` looks at what
 ``a1`` shows:
 
@@ -20,8 +22,11 @@ from __future__ import annotations
 SMALLEST = {"one-way": 2, "mutual": 2, "relay": 2, "ring": 3, "star": 3, "crowd": 2}
 """Least number of agents of each shape."""
 
-LARGEST_GROUP = 500
-"""Most agents that a shape may be written out for."""
+LARGEST_GROUP = 1000
+"""Most agents that a group may have."""
+
+ENDINGS = (".csv", ".graphml")
+"""Names of network files end in one of these; see ``distill.edges``."""
 
 PAIRS = ("one-way", "mutual")
 """Shapes of exactly two agents."""

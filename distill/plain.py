@@ -16,10 +16,15 @@ from thumbwright.distill.faults import Key
 
 @dataclass(frozen=True)
 class Plain:
-    """A document as parsed, and the keys in it that are known to be faulty."""
+    """A document as parsed, the keys in it that are known to be faulty, and its network file.
+
+    ``members`` is who sees whom by the file that ``[network]`` names; ``None`` where it names none
+    or none that can be relied on.
+    """
 
     document: Mapping[str, Any]
     faulty: Collection[Key] = field(default=frozenset())
+    members: Mapping[str, list[str]] | None = None
 
     def get(self, *key: str | int) -> Any:
         """The value at ``key``, or ``None`` where there is none that can be relied on."""
@@ -58,8 +63,9 @@ class Plain:
         value = self.get(*key)
         if not isinstance(value, list):
             return None
-        found = ((place, self.text(*key, place)) for place in range(len(value)))
-        return [(place, text) for place, text in found if text is not None]
+        # Who sees whom in a large crowd is a million such texts: no look-up of each on its own.
+        bad = {faulty[-1] for faulty in self.faulty if faulty[:-1] == key}
+        return [(n, text) for n, text in enumerate(value) if isinstance(text, str) and n not in bad]
 
     def numbers(self, *key: str | int) -> list[float] | None:
         """The list of numbers at ``key``; ``None`` unless every entry can be relied on."""

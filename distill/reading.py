@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import re
 import tomllib
-from collections.abc import Mapping
+from collections.abc import Collection, Mapping
 from importlib import resources
 from pathlib import Path
 from typing import Any
@@ -17,8 +17,11 @@ from pydantic import ValidationError
 
 from thumbwright.distill.case import Case, CaseFile
 from thumbwright.distill.crosschecks import contradictions
-from thumbwright.distill.faults import Faults, Key, fault_line, hint, key_text
+from thumbwright.distill.edges import read_edges
+from thumbwright.distill.faults import Faults, Key, fault_line, hint, key_text, quoted
 from thumbwright.distill.locate import line_of, locate
+from thumbwright.distill.network import ENDINGS
+from thumbwright.distill.plain import Plain
 from thumbwright.distill.wording import structural_faults
 
 LARGEST_FILE = 1_000_000
@@ -77,10 +80,12 @@ def read_case(source: str | Path) -> Case:
     typed = str(source)
     if typed in starter_names():
         return case_from_text(starter_text(typed), name=typed, file=typed)
-    return case_from_bytes(_bytes_of(Path(source), typed), name=slug(typed), file=typed)
+    path = Path(source)
+    data = _bytes_of(path, typed)
+    return case_from_bytes(data, name=slug(typed), file=typed, folder=path.parent)
 
 
-def case_from_bytes(data: bytes, name: str, file: str) -> Case:
+def case_from_bytes(data: bytes, name: str, file: str, folder: Path | None = None) -> Case:
     """Check the bytes of a case file; like :func:`case_from_text`, after decoding UTF-8.
 
     Raises
@@ -100,11 +105,15 @@ def case_from_bytes(data: bytes, name: str, file: str) -> Case:
         line = data.count(b"\n", 0, error.start) + 1
         bad = f"byte 0x{data[error.start]:02X} is not UTF-8; save the file as UTF-8"
         raise _faults(file, [*found, (line, (), bad)]) from error
-    return case_from_text(text, name=name, file=file, found=found)
+    return case_from_text(text, name=name, file=file, found=found, folder=folder)
 
 
 def case_from_text(
-    text: str, name: str, file: str, found: list[tuple[int, Key, str]] | None = None
+    text: str,
+    name: str,
+    file: str,
+    found: list[tuple[int, Key, str]] | None = None,
+    folder: Path | None = None,
 ) -> Case:
     """Check the TOML text of a case.
 
@@ -118,6 +127,8 @@ def case_from_text(
         What messages call the file; becomes ``Case.source``.
     found : list of (line, key, text), optional
         Faults found already, to be reported along with the rest.
+    folder : Path, optional
+        Where the case file lies, for a network file beside it.
 
     Raises
     ------
@@ -129,13 +140,14 @@ def case_from_text(
         raise _faults(file, [*found, (1, (), empty)])
     document, lines = _parse(text, file, found)
     structural, faulty = structural_faults(document)
-    across = contradictions(document, faulty)
+    members, outside = _members(document, faulty, file, folder, found, lines)
+    across = contradictions(document, faulty, members)
     for key, words in dict.fromkeys([*structural, *across]):
         found.append((line_of(lines, key), key, words))
-    if found:
-        raise _faults(file, found)
+    if found or outside:
+        raise _faults(file, found, outside)
     try:
-        return CaseFile.model_validate(document).complete(name, file)
+        return CaseFile.model_validate(document).complete(name, file, members)
     except ValidationError as error:
         # Contradictions that show only once the gaps are filled, such as a default wording.
         for detail in error.errors(include_url=False):
@@ -170,6 +182,35 @@ def _bytes_of(path: Path, typed: str) -> bytes:
         raise Faults([fault_line(typed, None, "", f"cannot be read: {why}")]) from error
 
 
+def _members(
+    document: Mapping[str, Any],
+    faulty: Collection[Key],
+    file: str,
+    folder: Path | None,
+    found: list[tuple[int, Key, str]],
+    lines: Mapping[Key, int],
+) -> tuple[dict[str, list[str]] | None, tuple[str, ...]]:
+    """Who sees whom by the network file, if the case names one; and what is wrong in that file.
+
+    What is wrong with its name is added to ``found``.
+    """
+    key = ("network", "file")
+    plain = Plain(document, faulty)
+    typed = plain.text(*key)
+    if typed is None or not typed.lower().endswith(ENDINGS) or plain.has("network", "shape"):
+        return None, ()
+    try:
+        if folder is None:
+            raise FileNotFoundError(0, "this case is in no folder")
+        return read_edges(folder / typed, str(Path(file).parent / typed)), ()
+    except Faults as faults:
+        return None, faults.messages
+    except (OSError, ValueError) as error:
+        why = getattr(error, "strerror", None) or "this is no usable path"
+        found.append((line_of(lines, key), key, f"{quoted(typed)} cannot be read: {why}"))
+        return None, ()
+
+
 def _parse(
     text: str, file: str, found: list[tuple[int, Key, str]]
 ) -> tuple[Mapping[str, Any], Mapping[Key, int]]:
@@ -189,6 +230,7 @@ def _parse(
         raise _faults(file, [*found, (line, (), f"not TOML: {words}{column}")]) from error
 
 
-def _faults(file: str, found: list[tuple[int, Key, str]]) -> Faults:
+def _faults(file: str, found: list[tuple[int, Key, str]], outside: tuple[str, ...] = ()) -> Faults:
     ordered = sorted(found, key=lambda fault: fault[0])
-    return Faults(fault_line(file, line, key_text(key), text) for line, key, text in ordered)
+    inside = (fault_line(file, line, key_text(key), text) for line, key, text in ordered)
+    return Faults([*inside, *outside])

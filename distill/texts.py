@@ -66,8 +66,8 @@ def _agent_cells(agent: Agent) -> tuple[str, str, str, str, str]:
     worth = f"{evidence.kind}, {evidence.information():.4g} nats of information each"
     if evidence.split:
         worth += (
-            f", split in steps of {evidence.split.step:.4g} nats (twice as fine moves outcomes alone "
-            f"by {evidence.split.change:.1g})"
+            f", split in steps of {evidence.split.step:.4g} nats (twice as fine moves outcomes "
+            f"alone by {evidence.split.change:.1g})"
         )
     return agent.id, ", ".join(agent.sees) or "nobody", f"{low} nats", f"{high} nats", worth
 
@@ -166,10 +166,45 @@ def outcomes_text(found: dict[str, Any]) -> str:
                 )
             )
     lines = columns(rows, right=range(2, 6))
+    lines += _group_lines(found)
+    if found["dropped_mass"] > 0:
+        lines.append(
+            f"dropped on request: probability {found['dropped_mass']:.3g}; any probability may be "
+            f"off by up to {found['may_be_off_by']:.3g}"
+        )
     if found["near_tie_mass"] > 0:
         lines.append(f"near ties: probability {found['near_tie_mass']:.3g}")
-    lines.append("exact" if found["exact"] else "exact but for the split of the evidence")
+    lines.append("exact" if found["exact"] else "not exact: evidence split, or displays dropped")
     return "\n".join(lines)
+
+
+_GROUP_WORDS = {
+    "mean_step_of_first": "mean step of the first answer",
+    "mean_step_of_last": "mean step of the last answer, where all answer",
+    "mean_followers_at_once": "mean number that follow the first at once",
+    "nobody": "nobody answers",
+    "not_everybody": "somebody stays undecided",
+    "right_majority": "more right answers than wrong",
+    "wrong_majority": "more wrong answers than right",
+    "tie": "as many right as wrong",
+    "split": "both answers given",
+    "all_right": "all right",
+    "all_wrong": "all wrong",
+}
+
+
+def _group_lines(found: dict[str, Any]) -> list[str]:
+    """The group's figures side by side, or why there are none."""
+    group = found["group"]
+    if group is None:
+        why = found.get("why_no_group")
+        return [] if why is None else ["", f"no figures for the group as a whole: {why}", ""]
+    rows = [("the group", "given plus", "given minus")]
+    for name, words in _GROUP_WORDS.items():
+        cells = [group[key][name] for key in ("given_plus", "given_minus")]
+        plus, minus = ("never" if cell is None else f"{cell:.6f}" for cell in cells)
+        rows.append((words, plus, minus))
+    return ["", *columns(rows, right=(1, 2)), ""]
 
 
 def price_text(found: dict[str, Any]) -> str:

@@ -38,10 +38,6 @@ _SECTIONS: dict[str, type[BaseModel]] = {
 }
 _NAMED: dict[str, type[BaseModel]] = {"thresholds": Thresholds, "agents": AgentTable}
 
-NO_FILE = (
-    "reading a network from a file is not part of this version; write the [agents.*] tables instead"
-)
-
 
 def structural_faults(document: Mapping[str, Any]) -> tuple[list[tuple[Key, str]], set[Key]]:
     """Check every key of a document on its own.
@@ -105,8 +101,6 @@ def _is_explained(document: Mapping[str, Any], kind: str, key: Key) -> bool:
     """Whether a missing key needs no message, because a better one says what is wrong."""
     if kind != "missing":
         return False
-    if key[0] == "network" and Plain(document).has("network", "file"):
-        return True
     allowed = allowed_keys(document, key[:-1])
     written = Plain(document).table(*key[:-1]) if key[:-1] else document
     return any(close_match(word, allowed) == key[-1] for word in written if word not in allowed)
@@ -119,8 +113,6 @@ def _text(document: Mapping[str, Any], detail: ErrorDetails, key: Key) -> str:
     if kind == "missing":
         return _missing(document, key)
     if kind == "extra_forbidden":
-        if key == ("network", "file"):
-            return NO_FILE
         name = "section" if isinstance(value, dict) and len(key) == 1 else "key"
         return f"is an unknown {name}{hint(key[-1], allowed_keys(document, key[:-1]))}"
     if kind == "literal_error":

@@ -7,140 +7,229 @@ Given the answer, the display histories of all agents factorise,
 where W_j is the probability that j shows h_j when those it sees are made to show theirs. What one
 agent has been shown, itself held to showing undecided, is the product over all others with the
 agent's own axis fixed and everything it does not see summed out. An agent that is not upstream of
-what is seen sums to one and is left out beforehand; the rest is summed one agent at a time, the
-last product of each sum as a batched matrix product.
+what is seen sums to one and is left out beforehand; the rest is summed one agent at a time, each
+sum ending in one batched matrix product.
+
+What has been shown does not become more or less likely afterwards: an entry of a result, or of a
+sum on the way to it, all of whose agents committed before this round, stays as it is. So after a
+round only the entries are computed anew where some agent is still undecided or has just committed,
+one axis at a time: on that axis a handful of entries, on the others all. Sums that do not
+involve that axis are kept from round to round, brought up to date in the same way, and shared by
+all agents: along a relay one short sum per link.
 
 Where nothing has to be summed the logarithms are added instead and nothing can underflow.
 """
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import math
+from collections.abc import Sequence, Set
 from dataclasses import dataclass
 
 import numpy as np
 
-from thumbwright.exact.arrays import FloatArray
+from thumbwright.exact.arrays import FloatArray, IntArray
+from thumbwright.exact.expressions import Expression, Leaf, Pair, Workspace
 from thumbwright.exact.group import Group
+from thumbwright.exact.ordering import Ordering
+from thumbwright.exact.store import Store, along
+
+_THIN = 4.0
+"""About how many entries of the thin axis a round renews."""
 
 
-@dataclass(frozen=True)
-class Plan:
-    """What enters the contraction for one agent, worked out once per network.
+class Display:
+    """The weights of what one agent may have shown, given what those it sees have shown.
 
     Attributes
     ----------
-    position : int
-        The agent that is held to showing undecided.
-    seen : tuple of int
-        The axes of the result, in the agent's own order.
-    factors : tuple of int
-        The agents whose weights enter.
-    summed : tuple of int
-        Those of them whose display is summed out, in the order of summing.
+    log, linear : Store or None
+        The weights as logarithms, where some contraction adds them, and as probabilities, where
+        some contraction sums over them; axes (own event, event of each seen agent).
+    events : int
+        Own display events so far, "undecided" included.
     """
 
-    position: int
-    seen: tuple[int, ...]
-    factors: tuple[int, ...]
-    summed: tuple[int, ...]
+    def __init__(self, axes: int, added: bool, summed: bool) -> None:
+        self.linear = Store(axes, 1.0) if summed else None
+        self.log = Store(axes, 0.0) if added or not summed else None
+        self.events = 1
+
+    def show(self, undecided: FloatArray, events: Sequence[FloatArray]) -> None:
+        """Set the log weight of still showing undecided, and append those of new events."""
+        before, self.events = self.events, self.events + len(events)
+        entries = [0, *range(before, self.events)]
+        for store in self.stores():
+            store.grow(0, len(events))
+            for entry, weight in zip(entries, (undecided, *events), strict=True):
+                if store is self.linear:
+                    np.exp(weight, out=store.array[:, entry])
+                else:
+                    store.array[:, entry] = weight
+
+    def grow(self, axis: int, extra: int) -> None:
+        """The seen agent on this axis gained ``extra`` events."""
+        for store in self.stores():
+            store.grow(axis + 1, extra)
+
+    def log_weights(self) -> FloatArray:
+        """A copy of the log weights, shape (2, own events, events of each seen agent)."""
+        if self.log:
+            return self.log.array.copy()
+        assert self.linear is not None
+        with np.errstate(divide="ignore"):
+            logs: FloatArray = np.log(self.linear.array)
+        return logs
+
+    def stores(self) -> list[Store]:
+        """Those of the two that there are."""
+        return [store for store in (self.log, self.linear) if store]
 
 
-def plan(group: Group, position: int) -> Plan:
-    """The contraction for one agent; the order of summing keeps the intermediates small."""
-    factors = group.sources(position)
-    seen = group.sees[position]
-    scopes = [frozenset((j, *group.sees[j])) - {position} for j in sorted(factors)]
-    waiting, order = set(factors) - set(seen), []
-    while waiting:
-        # Summing v joins all factors that mention v: take the v whose join is narrowest.
-        joined = {v: frozenset().union(*(s for s in scopes if v in s)) for v in waiting}
-        best = min(sorted(waiting), key=lambda v: len(joined[v]))
-        scopes = [s for s in scopes if best not in s] + [joined[best] - {best}]
-        waiting.remove(best)
-        order.append(best)
-    return Plan(position, seen, tuple(sorted(factors)), tuple(order))
+@dataclass(frozen=True)
+class Kept:
+    """A sum that is kept up to date from round to round."""
+
+    sum: Pair
+    store: Store
 
 
-def log_shown(group: Group, recipe: Plan, log_weights: Sequence[FloatArray]) -> FloatArray:
-    """Log probability of every history that the agent may have been shown.
+@dataclass(frozen=True)
+class Result:
+    """The log probability of every history that one agent may have been shown.
 
-    Parameters
+    Attributes
     ----------
-    group : Group
-    recipe : Plan
-    log_weights : sequence of ndarray
-        For each agent j an array of shape (2, n_j, n_k for k in sees(j)): the log weights given
-        plus and given minus; entry 0 of every event axis is "undecided".
-
-    Returns
-    -------
-    ndarray of float, shape (2, n_k for k in sees(agent))
-        ``-inf`` for a history that is impossible under that answer.
+    axes : tuple of int
+        The agents it sees: the axes of ``store``.
+    factors : frozenset of int
+        The agents whose weights enter.
+    store : Store
+    sums : tuple of tuple of Expression
+        Per axis that is renewed, the sums that are multiplied.
+    leaves : tuple of Leaf
+        Weights over which nothing is summed; their logarithms are added.
     """
-    parts = []
-    for j in recipe.factors:
-        axes = (j, *group.sees[j])
-        array = log_weights[j]
-        if recipe.position in axes:
-            where = axes.index(recipe.position)
-            array = np.take(array, 0, axis=where + 1)
-            axes = axes[:where] + axes[where + 1 :]
-        parts.append((array, axes))
-    if not recipe.summed:
-        total = np.zeros((2, *(1 for _ in recipe.seen)))
-        for array, axes in parts:
-            total = total + _spread(array, axes, recipe.seen)
+
+    axes: tuple[int, ...]
+    factors: frozenset[int]
+    store: Store
+    sums: tuple[tuple[Expression, ...], ...]
+    leaves: tuple[Leaf, ...]
+
+
+class Contractions:
+    """All contractions of a group, planned once, shared where they can be, kept up to date.
+
+    Attributes
+    ----------
+    displays : list of Display
+        Per agent the weights of its display histories.
+    """
+
+    def __init__(self, group: Group) -> None:
+        ordering = Ordering(group)
+        self._results = [_result(group, ordering, i) for i in range(len(group.agents))]
+        self._kept = [Kept(pair, Store(len(pair.axes), 1.0)) for pair in ordering.kept()]
+        added = {leaf.agent for result in self._results for leaf in result.leaves}
+        self.displays = [
+            Display(1 + len(seen), j in added, j in ordering.summed_over)
+            for j, seen in enumerate(group.sees)
+        ]
+        self._workspace = Workspace(self.displays, {k.sum.number: k.store for k in self._kept})
+
+    def log_shown(self, position: int) -> FloatArray:
+        """Log probability of every history that an agent may have been shown.
+
+        Returns
+        -------
+        ndarray of float, shape (2, n_k for k in sees(agent))
+            Given plus and given minus; entry 0 of every other axis is "undecided so far";
+            ``-inf`` for a history that is impossible under that answer. To be read before the
+            displays change.
+        """
+        return self._results[position].store.array
+
+    def sources(self, position: int) -> frozenset[int]:
+        """The agents whose displays bear on what this one may have been shown."""
+        return self._results[position].factors
+
+    def entries(self, events: Sequence[float]) -> tuple[float, float]:
+        """How much the contractions hold, given both answers, if agents have so many events.
+
+        Returns
+        -------
+        tuple of two floats
+            Entries of all results and sums that are kept, and of the largest one in passing.
+        """
+        held = sum(2.0 * math.prod(events[a] for a in kept.sum.axes) for kept in self._kept)
+        passing = 0.0
+        for result in self._results:
+            held += 2.0 * math.prod(events[a] for a in result.axes)
+            for axis, thin in enumerate(result.axes):
+                lengths = [*events]
+                lengths[thin] = min(_THIN, events[thin])
+                for one in result.sums[axis]:
+                    passing = max(passing, 2.0 * self._workspace.largest(one, lengths, thin))
+        return held, passing
+
+    def renew(self, gained: Sequence[int], changed: Set[int]) -> None:
+        """Take in what a round added to the displays.
+
+        Parameters
+        ----------
+        gained : sequence of int
+            Per agent the number of events that it gained.
+        changed : set of int
+            The agents whose weights changed otherwise than by growing with others.
+        """
+        fresh = [
+            np.array([0, *range(display.events - g, display.events)])
+            for display, g in zip(self.displays, gained, strict=True)
+        ]
+        self._workspace.forget()
+        for kept in self._kept:
+            _grow(kept.store, kept.sum.axes, gained)
+            if not kept.sum.factors.isdisjoint(changed):
+                for axis, thin in enumerate(kept.sum.axes):
+                    block = self._workspace.renewed(kept.sum, thin, fresh[thin])
+                    kept.store.array[along(axis, fresh[thin])] = block
+        for result in self._results:
+            _grow(result.store, result.axes, gained)
+            if not result.factors.isdisjoint(changed):
+                for axis, thin in enumerate(result.axes):
+                    block = self._block(result, axis, fresh[thin])
+                    result.store.array[along(axis, fresh[thin])] = block
+
+    def _block(self, result: Result, axis: int, entries: IntArray) -> FloatArray:
+        """The result for a few entries of one axis."""
+        thin = result.axes[axis]
+        terms = [
+            self._workspace.laid_out_log(leaf, thin, entries, result.axes) for leaf in result.leaves
+        ]
+        if result.sums[axis]:
+            product = math.prod(
+                self._workspace.laid_out(one, thin, entries, result.axes)
+                for one in result.sums[axis]
+            )
+            with np.errstate(divide="ignore"):
+                terms.append(np.log(product))
+        total: FloatArray = sum(terms[1:], terms[0])
         return total
-    pieces = [(np.exp(array), axes) for array, axes in parts]
-    for out in recipe.summed:
-        touching = [piece for piece in pieces if out in piece[1]]
-        rest = [piece for piece in pieces if out not in piece[1]]
-        pieces = [*rest, _summed(touching, out)]
-    product = np.ones((2, *(1 for _ in recipe.seen)))
-    for array, axes in pieces:
-        product = product * _spread(array, axes, recipe.seen)
-    with np.errstate(divide="ignore"):
-        return np.log(product)
 
 
-Piece = tuple[FloatArray, tuple[int, ...]]
+def _result(group: Group, ordering: Ordering, position: int) -> Result:
+    seen = group.sees[position]
+    leaves: tuple[Leaf, ...] = ()
+    sums = []
+    for thin in seen:
+        pieces = ordering.pieces(position, thin)
+        # Whatever the order of summing, what no sum touches is the same.
+        leaves = tuple(piece for piece in pieces if isinstance(piece, Leaf))
+        sums.append(tuple(piece for piece in pieces if not isinstance(piece, Leaf)))
+    return Result(seen, group.sources(position), Store(len(seen), 0.0), tuple(sums), leaves)
 
 
-def _spread(array: FloatArray, axes: Sequence[int], wanted: Sequence[int]) -> FloatArray:
-    """The array with its axes in the wanted order and axes of length 1 where it has none."""
-    present = [axis for axis in wanted if axis in axes]
-    turned = np.transpose(array, (0, *(axes.index(axis) + 1 for axis in present)))
-    lengths = dict(zip(present, turned.shape[1:], strict=True))
-    return turned.reshape(2, *(lengths.get(axis, 1) for axis in wanted))
-
-
-def _summed(pieces: list[Piece], out: int) -> Piece:
-    """The product of the pieces summed over one of their axes."""
-    pieces = sorted(pieces, key=lambda piece: piece[0].size)
-    left = pieces[0]
-    for right in pieces[1:-1]:
-        axes = tuple(dict.fromkeys((*left[1], *right[1])))
-        left = (_spread(*left, axes) * _spread(*right, axes), axes)
-    if len(pieces) == 1:
-        array, axes = left
-        where = axes.index(out)
-        return array.sum(axis=where + 1), axes[:where] + axes[where + 1 :]
-    return _matrix_product(left, pieces[-1], out)
-
-
-def _matrix_product(left: Piece, right: Piece, out: int) -> Piece:
-    """Sum over ``out`` of left times right, as one batched matrix product."""
-    both = tuple(a for a in left[1] if a in right[1] and a != out)
-    only_left = tuple(a for a in left[1] if a not in right[1])
-    only_right = tuple(a for a in right[1] if a not in left[1])
-    size = dict(zip(left[1], left[0].shape[1:], strict=True))
-    size.update(zip(right[1], right[0].shape[1:], strict=True))
-
-    def length(axes: Sequence[int]) -> int:
-        return int(np.prod([size[a] for a in axes], dtype=np.int64))
-
-    a = _spread(*left, (*both, *only_left, out)).reshape(2, length(both), length(only_left), -1)
-    b = _spread(*right, (*both, out, *only_right)).reshape(2, length(both), size[out], -1)
-    axes = (*both, *only_left, *only_right)
-    return np.matmul(a, b).reshape(2, *(size[axis] for axis in axes)), axes
+def _grow(store: Store, axes: Sequence[int], gained: Sequence[int]) -> None:
+    for axis, agent in enumerate(axes):
+        store.grow(axis, gained[agent])

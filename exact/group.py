@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 from thumbwright.exact.errors import ModelError
@@ -57,12 +57,17 @@ class Agent:
         of the answer and of everybody else's.
     sees : tuple of str
         Ids of the agents whose shown states it sees, each once, never itself.
+    looks : tuple of int, or None
+        How many private observations it makes at each step, from step 1 to the horizon; 0 is
+        none. None stands for one at every step. Until its first observation an agent has not
+        started: it shows undecided and cannot commit, whatever it is shown. Everybody knows.
     """
 
     id: str
     evidence: Evidence
     thresholds: tuple[tuple[float, Thresholds], ...]
     sees: tuple[str, ...] = ()
+    looks: tuple[int, ...] | None = None
 
     def __post_init__(self) -> None:
         if not self.thresholds:
@@ -77,6 +82,22 @@ class Agent:
             raise ModelError(f"agent {self.id} cannot see itself")
         if len(set(self.sees)) != len(self.sees):
             raise ModelError(f"agent {self.id} sees somebody twice")
+        if self.looks is not None:
+            if any(number != int(number) or number < 0 for number in self.looks):
+                raise ModelError(
+                    f"agent {self.id}: the number of observations at a step must be a whole "
+                    "number, 0 or more"
+                )
+            if not any(self.looks):
+                raise ModelError(f"agent {self.id} makes no observation, so it can never commit")
+
+    def looks_at(self, step: int) -> int:
+        """Number of private observations at a step (from 1)."""
+        return 1 if self.looks is None else self.looks[step - 1]
+
+    def observed_by(self, step: int) -> int:
+        """Number of private observations up to and including a step (from 0)."""
+        return step if self.looks is None else sum(self.looks[:step])
 
 
 @dataclass(frozen=True)
@@ -112,6 +133,12 @@ class Group:
                     raise ModelError(f"agent {agent.id} sees {other}, who is not in the group")
         if self.horizon < 1:
             raise ModelError(f"the horizon must be at least 1 step, not {self.horizon}")
+        for agent in self.agents:
+            if agent.looks is not None and len(agent.looks) != self.horizon:
+                raise ModelError(
+                    f"agent {agent.id} has {len(agent.looks)} entries in its timetable of "
+                    f"observations, but there are {self.horizon} steps"
+                )
         if not math.isfinite(self.prior):
             raise ModelError("the prior must leave both answers possible")
         if self.exchange not in EXCHANGES:
@@ -160,7 +187,7 @@ def same_thresholds(thresholds: Thresholds) -> tuple[tuple[float, Thresholds], .
 def replace_thresholds(group: Group, known: dict[str, Thresholds]) -> Group:
     """The same group with the thresholds of some agents known to be these."""
     agents: Sequence[Agent] = [
-        Agent(a.id, a.evidence, same_thresholds(known[a.id]), a.sees) if a.id in known else a
+        replace(a, thresholds=same_thresholds(known[a.id])) if a.id in known else a
         for a in group.agents
     ]
     return Group(tuple(agents), group.prior, group.horizon, group.exchange)

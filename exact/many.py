@@ -61,9 +61,9 @@ class ManyTallies:
 def fits(solution: Solution, position: int) -> bool:
     """Whether rules of this agent can be priced together.
 
-    It must see a single other agent, have thresholds that are known, and keep a whole own count,
-    and whoever sees it must have a reading for its silence. Certain evidence, which ends a walk by
-    itself, is left to the general way of playing.
+    It must see a single other agent, observe once at every step, have thresholds that are known and
+    keep a whole own count, and whoever sees it must have a reading for its silence. Certain
+    evidence, which ends a walk by itself, is left to the general way of playing.
     """
     group = solution.group
     agent = group.agents[position]
@@ -71,6 +71,7 @@ def fits(solution: Solution, position: int) -> bool:
         len(agent.sees) == 1
         and (not group.influences(position) or silence_is_possible(solution, position))
         and agent.evidence.on_ladder
+        and agent.looks is None
         and not (agent.evidence.certain_plus or agent.evidence.certain_minus)
         and len(agent.thresholds) == 1
     )
@@ -234,8 +235,8 @@ class _Columns:
     def mass_where(self, mask: BoolArray) -> FloatArray:
         """Probability of the masked mass, shape (B, 2)."""
         mass = np.where(mask[None], self._mass, 0.0).sum(axis=1)
-        return np.einsum("gbs,gs->bg", mass, self._weight)
+        return np.asarray(np.einsum("gbs,gs->bg", mass, self._weight))
 
     def undecided(self) -> FloatArray:
         """Probability of being still undecided, shape (B, 2)."""
-        return np.einsum("gbs,gs->bg", self._mass.sum(axis=1), self._weight)
+        return np.asarray(np.einsum("gbs,gs->bg", self._mass.sum(axis=1), self._weight))

@@ -37,6 +37,7 @@ _SMALL = 1e-120
 _FEW = 8
 _NARROW = 4
 _SLAB = 512
+_HALVES = np.array([[0.5], [-0.5]])
 
 
 class Walk:
@@ -87,9 +88,8 @@ class Walk:
                 taken, rest = np.divmod(rest, stride)
                 tally += taken * worth
             self.tally = tally + self._evidence.beta * self.observed
-        half = np.exp(0.5 * self.tally)
         # Row 0 turns the measure into mass given plus, row 1 into mass given minus.
-        self._given: FloatArray = np.stack([half, 1.0 / half])
+        self._given: FloatArray = np.exp(_HALVES * self.tally)
 
     def observe(self) -> FloatArray:
         """Make one private observation.
@@ -161,33 +161,59 @@ class Walk:
             self.log_scale = self.log_scale.copy()
             self.log_scale[small] += np.log(peak[small])
 
-    def log_undecided(self) -> FloatArray:
-        """Log probability of being still undecided, shape (2, C), given plus and given minus."""
-        return self._log(self._given @ self.mass)
+    def log_undecided(self, columns: IntArray | None = None) -> FloatArray:
+        """Log probability of being still undecided, shape (2, C), given plus and given minus.
 
-    def log_where(self, rows: BoolArray) -> FloatArray:
+        Like the methods below it may be asked about some columns only, C then being their number.
+        """
+        return self._log(self._of(columns), columns)
+
+    def log_where(self, rows: BoolArray, columns: IntArray | None = None) -> FloatArray:
         """Log mass of the chosen rows and columns, shape (2, C); ``rows`` has shape (R, C)."""
-        return self._log(self._given @ np.where(rows, self.mass, 0.0))
+        return self._log(np.where(rows, self._of(columns), 0.0), columns)
 
-    def cut(self, plus: BoolArray, minus: BoolArray) -> FloatArray:
+    def cut(self, plus: BoolArray, minus: BoolArray, columns: IntArray | None = None) -> FloatArray:
         """Take out what commits to plus and to minus.
 
         Parameters
         ----------
         plus, minus : ndarray of bool, shape (R, C)
+        columns : ndarray of int, shape (C,), optional
+            The columns that the masks are about, if not all.
 
         Returns
         -------
         ndarray of float, shape (2, 2, C)
             Log weight of committing: axis 0 to plus, to minus; axis 1 given plus, given minus.
         """
-        gone = np.stack([self.log_where(plus), self.log_where(minus)])
-        self.mass[plus | minus] = 0.0
-        alive = self.mass.any(axis=1)
-        if not alive.all():
-            self._code, self.mass = self._code[alive], self.mass[alive]
-            self._describe()
-        return gone
+        return self.divide(plus, minus, columns)[:2]
+
+    def divide(
+        self, plus: BoolArray, minus: BoolArray, columns: IntArray | None = None
+    ) -> FloatArray:
+        """As :meth:`cut`, with a third entry on axis 0: the log weight of what is left."""
+        mass = self._of(columns)
+        parts = np.zeros((3, *mass.shape))
+        for part, mask in zip(parts, (plus, minus, ~(plus | minus)), strict=True):
+            np.copyto(part, mass, where=mask)
+        divided = self._log(parts, columns)
+        if columns is None:
+            self.mass = parts[2]
+            alive: BoolArray = np.asarray(self.mass.any(axis=1))
+            if not alive.all():
+                self._keep(alive)
+        else:
+            self.mass[:, columns] = parts[2]
+        return divided
+
+    def _keep(self, rows: BoolArray) -> None:
+        self._code, self.mass = self._code[rows], self.mass[rows]
+        self.count, self.tally = self.count[rows], self.tally[rows]
+        self.low, self.high = self.low[rows], self.high[rows]
+        self._given = self._given[:, rows]
+
+    def _of(self, columns: IntArray | None) -> FloatArray:
+        return self.mass if columns is None else self.mass[:, columns]
 
     def grow(self, shape: tuple[int, ...], axis: int, extra: int) -> None:
         """Give ``extra`` new histories on one seen agent's axis a copy of its undecided slice.
@@ -199,9 +225,10 @@ class Walk:
         mass = grown(self.mass.reshape(rows, *shape), axis + 1, extra)
         self.mass = mass.reshape(rows, len(self.log_scale))
 
-    def _log(self, weight: FloatArray) -> FloatArray:
+    def _log(self, mass: FloatArray, columns: IntArray | None) -> FloatArray:
+        scale = self.log_scale if columns is None else self.log_scale[columns]
         with np.errstate(divide="ignore"):
-            return np.log(weight) + self.log_scale
+            return np.log(self._given @ mass) + scale
 
 
 def grown(array: NDArray[Kind], axis: int, extra: int) -> NDArray[Kind]:

@@ -1,7 +1,8 @@
 """Every form of the rule, with every figure, as one JSON file for other programs.
 
 Key order is fixed by this module and by the case; figures have ten significant digits, the
-values of rows all of theirs; infinities are the texts ``INF`` and ``-INF``, since JSON has none. The caution comes first.
+values of rows all of theirs; infinities are the texts ``INF`` and ``-INF``, since JSON has none.
+The caution comes first.
 """
 
 from __future__ import annotations

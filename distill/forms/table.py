@@ -31,6 +31,9 @@ MOST_BOXES = 3_000_000
 DIGITS = 10
 """Significant digits of a value: far more than matter, and the same on every machine."""
 
+ROUNDED = 12
+"""Decimals beyond which a value is rounding only."""
+
 _STATE_ORDER = ("minus", "undecided", "plus")
 
 
@@ -177,7 +180,8 @@ def as_rule(
     for box in sorted(partition.boxes, key=lambda box: _print_order(axes, box)):
         where = tuple(slice(start, stop) for start, stop in box)
         value = values_of(plus[where].sum(keepdims=True), minus[where].sum(keepdims=True))
-        row = Row(value=float(f"{value.flat[0]:.{DIGITS}g}"))
+        rounded = round(float(value.flat[0]), ROUNDED)
+        row = Row(value=float(f"{rounded:.{DIGITS}g}"))
         for axis, (start, stop) in zip(axes, box, strict=True):
             row = axis.says(row, start, stop)
         rows.append(row)

@@ -267,6 +267,24 @@ def test_the_digest_depends_on_what_is_said_and_on_nothing_else() -> None:
     assert len(others | {case.digest}) == 5
 
 
+def test_an_agent_may_start_late_skip_steps_and_look_several_times() -> None:
+    keys = "first_step = 2\nlooks_every = 3\nlooks_per_step = 2\n"
+    case = read(PLAIN + PAIR + keys)
+    lead, follower = case.agents.values()
+    assert lead.looks(7) is None
+    assert follower.looks(7) == (0, 2, 0, 0, 2, 0, 0)
+    assert (follower.first_step, follower.looks_every, follower.looks_per_step) == (2, 3, 2)
+    assert read(PLAIN + PAIR + "first_step = 10\n").agents["follower"].looks(10) == (0,) * 9 + (1,)
+    plain = read(PLAIN + PAIR)
+    digests = {
+        read(PLAIN + PAIR + keys[:end]).digest for end in (len("first_step = 2\n"), len(keys))
+    }
+    assert len({plain.digest, *digests}) == 3
+    assert read(PLAIN + PAIR + "first_step = 1\nlooks_every = 1\n").digest == plain.digest
+    again = Case.model_validate(json.loads(case.model_dump_json(by_alias=True)))
+    assert (again, again.digest) == (case, case.digest)
+
+
 def test_digests_stay_what_they_were() -> None:
     # Results in the field carry these; a change of the models must not change them unnoticed.
     assert {name: read_case(name).digest for name in starter_names()} == {
@@ -310,6 +328,9 @@ def test_starters_satisfy_the_schema(name: str) -> None:
         ('thresholds = "even"\n[agents.f', "[agents.f"),
         (PAIR, ""),
         (PAIR, PAIR + '[network]\nshape = "mutual"\nthresholds = "even"\n'),
+        (PAIR, '[network]\nthresholds = "even"\n'),
+        (PAIR, '[network]\nshape = "mutual"\nfile = "e.csv"\nthresholds = "even"\n'),
+        (PAIR, PAIR + "first_step = 0\n"),
     ],
 )
 def test_what_the_schema_refuses_reading_refuses_too(old: str, new: str) -> None:

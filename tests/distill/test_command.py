@@ -13,6 +13,7 @@ import pandas as pd
 import pytest
 
 from thumbwright.distill import job
+from thumbwright.distill.assemble import Limits
 from thumbwright.distill.case import Case
 from thumbwright.distill.command import TRACE, main, verbs
 from thumbwright.distill.faults import Faults
@@ -118,7 +119,7 @@ def test_unknown_starter(capsys: pytest.CaptureFixture[str]) -> None:
 
 
 def test_check(patch: Patch, capsys: pytest.CaptureFixture[str]) -> None:
-    patch("check", lambda case: f"looked at {case.name}\n")
+    patch("check", lambda case, _limits: f"looked at {case.name}\n")
     assert main(["check", "frost-watch"]) == 0
     assert capsys.readouterr().out == "looked at frost-watch\n"
 
@@ -136,19 +137,19 @@ def test_sheet(
 ) -> None:
     asked = []
 
-    def sheet(case: Case, into: Path, progress: object) -> str:
-        asked.append((case.name, into, progress))
+    def sheet(case: Case, into: Path, progress: object, limits: object) -> str:
+        asked.append((case.name, into, progress, limits))
         return "done\n"
 
     patch("sheet", sheet)
     assert main(["sheet", "frost-watch", *words]) == 0
-    assert asked == [("frost-watch", folder, None)]
+    assert asked == [("frost-watch", folder, None, Limits())]
     assert capsys.readouterr() == ("done\n", "")
 
 
 def test_jumps(patch: Patch, capsys: pytest.CaptureFixture[str]) -> None:
     table = pd.DataFrame({"agent": ["mill"], "worth": [0.1 + 0.2]})
-    patch("jumps", lambda _case, _progress: table)
+    patch("jumps", lambda _case, _progress, _limits: table)
     assert main(["jumps", "frost-watch"]) == 0
     text = "agent,worth\nmill,0.30000000000000004\n"
     assert capsys.readouterr().out == text
@@ -158,9 +159,9 @@ def test_jumps(patch: Patch, capsys: pytest.CaptureFixture[str]) -> None:
 
 
 def test_outcomes_and_price(patch: Patch, capsys: pytest.CaptureFixture[str]) -> None:
-    patch("outcomes", lambda case: {"who": case.name, "mean": None, "share": 0.1 + 0.2})
+    patch("outcomes", lambda case, _limits: {"who": case.name, "mean": None, "share": 0.1 + 0.2})
     patch("outcomes_text", lambda found: f"text of {found['who']}")
-    patch("price", lambda case, rule, _progress: {"who": case.name, "rule": rule})
+    patch("price", lambda case, rule, _progress, _limits: {"who": case.name, "rule": rule})
     patch("price_text", lambda found: f"price of {found['rule']}")
     assert main(["outcomes", "frost-watch"]) == 0
     assert capsys.readouterr().out == "text of frost-watch\n"
@@ -257,9 +258,57 @@ def write(path, content):
     path.write_bytes(content)
     os.kill(os.getpid(), {int(number)})
 writing._write = write
-job.sheet = lambda case, into, progress: str(writing.write_files(into, {{"a": "1", "b": "2"}}))
+files = {{"a": "1", "b": "2"}}
+job.sheet = lambda case, into, progress, limits: str(writing.write_files(into, files))
 """
     done = program("sheet", "frost-watch", "--into", "deep/here", before=before)
     assert done.returncode == status
     assert (done.stdout, done.stderr.strip()) == ("", "")
     assert list(Path().iterdir()) == []
+
+
+def test_limits_reach_the_run(patch: Patch) -> None:
+    asked: list[object] = []
+
+    def outcomes(_case: Case, limits: object) -> dict[str, object]:
+        asked.append(limits)
+        return {}
+
+    patch("outcomes", outcomes)
+    assert main(["outcomes", "frost-watch", "--json", "--drop", "1e-9", "--memory", "2"]) == 0
+    assert asked == [Limits(1e-9, 2e9)]
+    assert main(["outcomes", "frost-watch", "--drop", "0.5"]) == 2
+
+
+def test_a_case_too_large_for_the_memory_is_refused(capsys: pytest.CaptureFixture[str]) -> None:
+    Path("crowd.toml").write_text(CROWD, "utf-8")
+    for verb in ("check", "outcomes", "sheet"):
+        assert main([verb, "crowd.toml", "--memory", "0.1"]) == 2
+        told = capsys.readouterr()
+        assert "more than the" in told.err
+        assert "Ways out" in told.err
+        assert told.out == ""
+    assert [path.name for path in Path().iterdir()] == ["crowd.toml"]
+
+
+CROWD = """title = "everybody sees everybody"
+[question]
+plus = "yes"
+minus = "no"
+stakes = "none"
+[evidence]
+kind = "coin"
+p = 0.6
+[time]
+horizon = 40
+[thresholds.even]
+plus = 3
+minus = -3
+unit = "observations"
+[network]
+shape = "crowd"
+size = 8
+thresholds = "even"
+[rule]
+agent = "any"
+"""

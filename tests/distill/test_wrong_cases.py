@@ -61,6 +61,16 @@ WRONG = {
     "same answers": ('"no frost tonight"', '"frost tonight"', "minus =", "the same as plus"),
     "same states": ('"lamp dark"', '"lamp lit"', "shows_nothing", "the same as shows_plus"),
     "same names": ('"Mill field"', '"Upper field"', '"Upper field"\nthresholds = "even"', "differ"),
+    # when an agent observes
+    "late": (
+        'sees = ["upper"]',
+        'sees = ["upper"]\nfirst_step = 41',
+        "first_step",
+        "first_step: 41 lies after the last step, 40",
+    ),
+    "never": ("sees = []", "sees = []\nlooks_every = 0", "looks_every", "whole number from 1 to"),
+    "half a look": ("sees = []", "sees = []\nlooks_per_step = 1.5", "looks_per", "not 1.5"),
+    "misspelt look": ("sees = []", "sees = []\nlooks_evry = 2", "evry", "mean looks_every"),
     # numbers
     "number as text": ("p = 0.6", 'p = "0.6"', 'p = "0.6"', "write it without quotes"),
     "true as number": ("p = 0.6", "p = true", "p = true", "must be a number, not true"),
@@ -335,12 +345,19 @@ NETWORK = re.sub(r"(?ms)^\[agents\..*?(?=^\[rule)", "", FROST).replace('"mill" '
         ('shape = "ring"\nthresholds = "even"', "network.size: is missing: a ring needs"),
         ('shape = "ring"\nsize = 2\nthresholds = "even"', "do not form a ring (allowed 3 or more)"),
         ('shape = "mutual"\nsize = 3\nthresholds = "even"', "do not form a mutual (allowed 2)"),
-        ('shape = "crowd"\nsize = 501\nthresholds = "even"', "from 2 to 500"),
+        ('shape = "crowd"\nsize = 1001\nthresholds = "even"', "from 2 to 1000"),
         ('shape = "crowd"\nsize = 3\nthresholds = "evn"', "did you mean even"),
         ('shape = "crowd"\nsize = 3', "network.thresholds: is missing"),
         ('shape = "mutual"\nthresholds = "even"\nnames = ["A"]', "has 1 names for 2 agents"),
         ('shape = "mutual"\nthresholds = "even"\nnames = ["A", "A"]', "names two agents"),
-        ('file = "edges.csv"', "write the [agents.*] tables instead"),
+        (
+            'file = "e.csv"\nthresholds = "even"',
+            '"e.csv" cannot be read: this case is in no folder',
+        ),
+        ('file = "e.xls"\nthresholds = "even"', "(allowed names ending in .csv or .graphml)"),
+        ('file = "e.csv"\nshape = "mutual"\nthresholds = "even"', "both given; keep one"),
+        ('file = 3\nthresholds = "even"', "network.file: must be text in quotes"),
+        ('thresholds = "even"', "network.shape: is missing (allowed one-way, mutual, relay, ring"),
         ('shape = "mutual"\nthresholds = "even"\n[agents.a]\nthresholds = "even"', "stated twice"),
     ],
 )

@@ -31,7 +31,8 @@ def built(group: slow.Group) -> Group:
         )
         assert isinstance(evidence, Evidence)
         bars = tuple((t.share, Thresholds(t.minus, t.plus)) for t in group.thresholds[number])
-        agents.append(Agent(f"a{number}", evidence, bars, tuple(f"a{k}" for k in seen)))
+        looks = None if group.looks is None else group.looks[number]
+        agents.append(Agent(f"a{number}", evidence, bars, tuple(f"a{k}" for k in seen), looks))
     return Group(tuple(agents), group.prior, group.horizon, group.exchange)
 
 

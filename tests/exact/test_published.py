@@ -20,19 +20,16 @@ from thumbwright.exact.engine import solve
 from thumbwright.exact.evidence.base import Evidence
 from thumbwright.exact.evidence.binary import bernoulli, calibration, coin
 from thumbwright.exact.evidence.listed import listed
-from thumbwright.exact.group import Agent, Group, Thresholds, same_thresholds
+from thumbwright.exact.group import MINUS, PLUS, Agent, Group, Thresholds, same_thresholds
+from thumbwright.exact.jointly import displays, elimination, total
 from thumbwright.exact.stopping import Losses, best_alone
 from thumbwright.exact.thresholds import from_error_rates
+from thumbwright.exact.together import together
 
 FILE = Path(__file__).parents[1] / "reference" / "published.json"
 ENTRIES: dict[str, dict[str, Any]] = {e["id"]: e for e in json.loads(FILE.read_text())}
 
-NOT_ASKED = {
-    "jury-.6": "a majority vote of one observation each; agents here commit one by one",
-    "jury-.7": "a majority vote of one observation each; agents here commit one by one",
-    "cascade-none": "agents who act in turn and break ties by a coin flip are another model",
-    "cascade-correct": "agents who act in turn and break ties by a coin flip are another model",
-}
+NOT_ASKED: dict[str, str] = {}
 """Entries outside the model, each with the reason."""
 
 FAIR = 0.5 + 1e-7
@@ -295,6 +292,70 @@ def test_best_thresholds_tend_to_the_diffusion() -> None:
     )
     assert 2.0 * off[2] - off[1] == pytest.approx(0.0, abs=1e-3)
     assert 1.0 / (1.0 + math.exp(threshold)) == pytest.approx(wrong, rel=1e-10)
+
+
+# --- groups --------------------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize(
+    ("name", "p", "sizes"), [("jury-.6", 0.6, (3, 5, 7, 11)), ("jury-.7", 0.7, (3, 5, 7))]
+)
+def test_a_jury_of_one_observation_each(name: str, p: float, sizes: tuple[int, ...]) -> None:
+    """Meets jury-.6 and jury-.7: agents who see nobody and answer by their only sign."""
+    evidence = coin(p)
+    worth = float(evidence.alpha[0])
+    bars = same_thresholds(Thresholds(-worth, worth))
+    for size, expected in zip(sizes, value(name), strict=True):
+        jury = Group(tuple(Agent(f"a{k}", evidence, bars) for k in range(size)), 0.0, 1)
+        got = together(solve(jury))
+        assert got.right_majority.tolist() == pytest.approx([expected] * 2, rel=1e-12)
+        assert got.tie.tolist() == pytest.approx([0.0] * 2, abs=1e-14)
+
+
+def in_turn(p: float, size: int) -> Group:
+    """Agents who answer in turn after one observation each, having seen everybody before them.
+
+    No belief lies strictly between the thresholds, so each answers at its first observation. At a
+    belief of 0 it says plus or minus by which of two thresholds it has, and nobody else knows
+    which: a coin flip.
+    """
+    evidence, short = coin(p), 1e-6
+    flip = ((0.5, Thresholds(-short, 0.0)), (0.5, Thresholds(0.0, short)))
+    agents = []
+    for place in range(size):
+        before = tuple(f"a{k}" for k in range(place))
+        looks = tuple(int(step == place) for step in range(size))
+        agents.append(Agent(f"a{place}", evidence, flip, before, looks))
+    return Group(tuple(agents), 0.0, size)
+
+
+def test_cascades() -> None:
+    """Meets cascade-none and cascade-correct, and their sequence: nobody thinks once two agree.
+
+    A cascade is in force once the two of a pair (first and second, third and fourth) agree.
+    """
+    solution = solve(in_turn(0.7, 4))
+    order = elimination(solution.group)
+
+    def answered(*signs: int) -> Any:
+        """Probability, given plus and given minus, that the first agents say these."""
+        picks = []
+        for place, track in enumerate(solution.tracks):
+            state = np.array(track.events.state)
+            assert track.undecided.tolist() == [0.0, 0.0]
+            picks.append(
+                np.flatnonzero(state == signs[place] if place < len(signs) else state >= 0)
+            )
+        ones = [np.ones((1, len(pick))) for pick in picks]
+        return total(displays(solution, 4, picks), ones, order)[0]
+
+    mixed = ((PLUS, MINUS), (MINUS, PLUS))
+    up, down = (answered(s, s) + sum(answered(*m, s, s) for m in mixed) for s in (PLUS, MINUS))
+    none = sum(answered(*m, *n) for m in mixed for n in mixed)
+    assert [float(up.mean()), float(none.mean())] == pytest.approx(value("cascade-none"), rel=1e-12)
+    assert float(down.mean()) == pytest.approx(value("cascade-none")[0], rel=1e-12)
+    assert [float(up[0]), float(down[0])] == pytest.approx(value("cascade-correct"), rel=1e-12)
+    assert answered(PLUS, PLUS, PLUS, PLUS) == pytest.approx(answered(PLUS, PLUS), rel=1e-12)
 
 
 def test_no_entry_is_forgotten() -> None:

@@ -183,11 +183,22 @@ def _ratio(plus: float, minus: float) -> float:
     return -math.inf if plus == 0.0 else math.log(plus) - math.log(minus)
 
 
-def _observe(group: Group, branches: Iterable[Branch], held: int | None) -> list[Branch]:
-    """One more observation for every undecided agent but the one held."""
+def _observe(group: Group, branches: Iterable[Branch], held: int | None, step: int) -> list[Branch]:
+    """The observations of one step for every undecided agent but the one held."""
+    agents = range(len(group.sees))
+    looks = [1 if group.looks is None else group.looks[a][step - 1] for a in agents]
+    grown = list(branches)
+    for turn in range(max(looks)):
+        looking = [a for a in agents if looks[a] > turn and a != held]
+        grown = _observe_once(group, grown, looking)
+    return grown
+
+
+def _observe_once(group: Group, branches: Iterable[Branch], looking: Sequence[int]) -> list[Branch]:
+    """One more observation for those of these agents that are undecided."""
     grown = []
     for branch in branches:
-        watching = [a for a, e in enumerate(branch.shown) if e is None and a != held]
+        watching = [a for a in looking if branch.shown[a] is None]
         for values in product(*(range(len(group.evidence[a])) for a in watching)):
             plus, minus = branch.plus, branch.minus
             observed, tally = list(branch.observed), list(branch.tally)
@@ -236,8 +247,8 @@ def _commit(
     for branch in branches:
         shown, odd, silent = list(branch.shown), branch.odd_commitments, branch.odd_silence
         for agent, event in enumerate(branch.shown):
-            if event is not None or agent == held:
-                continue
+            if event is not None or agent == held or not branch.observed[agent]:
+                continue  # nobody commits before its first observation
             seen, tally = tables.seen(agent, branch.shown), branch.tally[agent]
             if adopter is not None and agent == adopter[0]:
                 answer = adopter[1](*now, seen, tally, branch.observed[agent])
@@ -322,8 +333,8 @@ def enumerate_group(group: Group) -> Enumeration:
     held = {agent: list(actual) for agent in agents}
     rounds: list[int] = []
     for step in range(1, group.horizon + 1):
-        actual = _observe(group, actual, None)
-        held = {agent: _observe(group, held[agent], agent) for agent in agents}
+        actual = _observe(group, actual, None, step)
+        held = {agent: _observe(group, held[agent], agent, step) for agent in agents}
         round_, going = 0, True
         while going:
             last = tables.moments[-1] if tables.moments else None
@@ -358,7 +369,7 @@ def play_rule(
     last: Moment | None = None
     held = []
     for step in range(1, group.horizon + 1):
-        actual = _observe(group, actual, None)
+        actual = _observe(group, actual, None, step)
         round_, going = 0, True
         while going:
             now = (step, round_)

@@ -51,6 +51,7 @@ class Group:
     horizon : number of steps.
     exchange : ``"once"`` or ``"settle"``.
     prior_plus : probability of plus.
+    looks : per agent, how many observations it makes at each step; ``None``: one each.
     """
 
     sees: tuple[tuple[int, ...], ...]
@@ -59,6 +60,7 @@ class Group:
     horizon: int
     exchange: str = "once"
     prior_plus: float = 0.5
+    looks: tuple[tuple[int, ...], ...] | None = None
 
     def __post_init__(self) -> None:
         if not len(self.sees) == len(self.evidence) == len(self.thresholds):
