@@ -312,7 +312,7 @@ def test_the_schema_is_valid_and_describes_every_key() -> None:
 
 @pytest.mark.parametrize("name", starter_names())
 def test_starters_satisfy_the_schema(name: str) -> None:
-    SCHEMA.validate(tomllib.loads(starter_text(name)))
+    assert list(SCHEMA.iter_errors(tomllib.loads(starter_text(name)))) == []
 
 
 @pytest.mark.parametrize(
