@@ -122,10 +122,10 @@ class Group:
     exchange: str = "once"
 
     def __post_init__(self) -> None:
-        ids = [agent.id for agent in self.agents]
+        ids = {agent.id for agent in self.agents}
         if not ids:
             raise ModelError("a group needs at least one agent")
-        if len(set(ids)) != len(ids):
+        if len(ids) != len(self.agents):
             raise ModelError("two agents have the same id")
         for agent in self.agents:
             for other in agent.sees:
