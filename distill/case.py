@@ -53,7 +53,18 @@ __all__ = [
 ]
 
 Form = Literal["lines", "table"]
-Input = Literal["step", "shown", "thresholds"]
+Input = Literal[
+    "step",
+    "shown",
+    "thresholds",
+    "plus_shown",
+    "minus_shown",
+    "undecided_shown",
+    "steps_since_first",
+    "steps_since_last",
+    "came_first",
+    "first_answer",
+]
 
 FORMS: tuple[str, ...] = get_args(Form)
 """The forms a rule can be distilled into in this version."""

@@ -14,8 +14,9 @@ from typing import Any
 import numpy as np
 
 from thumbwright.distill.costs import Pricer
-from thumbwright.distill.playing import NO_ROW, lay_out
+from thumbwright.distill.playing import lay_out
 from thumbwright.distill.rules import SHOWN, Rule
+from thumbwright.distill.views import NO_ROW
 from thumbwright.exact.arrays import IntArray
 from thumbwright.exact.evidence.base import Evidence
 
@@ -36,7 +37,7 @@ class _Path:
 def example(pricer: Pricer, rule: Rule) -> tuple[dict[str, Any], ...]:
     """The run, as the findings print it; empty where the rule has no bars."""
     evidence = pricer.group.agents[pricer.group.index[pricer.agent]].evidence
-    if not rule.has_bars or len(evidence.plus) < 2:
+    if not rule.has_bars or not rule.is_grid or len(evidence.plus) < 2:
         return ()
     names = pricer.settings[0].names
     grid = lay_out(rule, pricer.group.horizon, names).row

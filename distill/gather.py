@@ -74,9 +74,7 @@ def _inferred(settings: tuple[Setting, ...], agent: str) -> tuple[Losses | None,
     return (None, None) if cone is None else (cone.middle, cone)
 
 
-def gather(
-    case: Case, progress: Progress | None = None, limits: Limits = NO_LIMITS
-) -> Findings:
+def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIMITS) -> Findings:
     """Everything that is printed about the rule's agent of a case."""
     pricer, missing = pricer_of(case, progress, limits)
     wanted = Wanted(case.rule.rows, tuple(case.rule.inputs), case.rule.max_accuracy_lost)

@@ -56,9 +56,7 @@ def sheet(
     return texts.sheet_text(findings, written)
 
 
-def jumps(
-    case: Case, progress: Progress | None = None, limits: Limits = NO_LIMITS
-) -> pd.DataFrame:
+def jumps(case: Case, progress: Progress | None = None, limits: Limits = NO_LIMITS) -> pd.DataFrame:
     """The worth of every seen history; one more column per seen agent where thresholds vary."""
     import pandas as pd
 

@@ -1,23 +1,23 @@
 """Rules in action: which row holds in which situation, and what the row says there.
 
-Rows are looked up by step and shown states, so a rule is compiled once into a grid
-[step, state of each seen agent] of row numbers. Gaps and overlaps show in the same grid.
+A rule that looks at step and shown states is compiled once into a grid [step, state of each seen
+agent] of row numbers. One that looks at numbers of agents or at times is read situation by
+situation.
 """
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 from thumbwright.distill.rules import SHOWN, Row, Rule
+from thumbwright.distill.views import NO_ROW, Named, rows_in
 from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.group import Group
 from thumbwright.exact.play import NEVER, Act, Policy, Situation
-
-NO_ROW = -1
 
 
 @dataclass(frozen=True)
@@ -81,7 +81,7 @@ def rule_policy(
         For a rule of bars, the worth of each row (nats): it decides which answer an agent favours
         that is undecided at the horizon. Zero where left out.
     """
-    grid = lay_out(rule, group.horizon, names).row
+    rows_at = _looked_up(rule, group, names)
     minus_at, plus_at = _bars(rule)
     if rule.has_bars:
         values = np.zeros(len(rule.rows)) if row_values is None else row_values
@@ -95,12 +95,42 @@ def rule_policy(
     )
 
     def policy(situation: Situation) -> Act:
-        row = grid[situation.step][situation.states]
+        row = rows_at(situation)
         if not rule.has_bars:
             return Act(values[row], row=row)
         return Act(values[row], minus_at[row], plus_at[row], row)
 
     return policy
+
+
+def view_of(
+    rule: Rule, names: Mapping[str, str], step: IntArray, told: Sequence[Sequence[IntArray]]
+) -> Named:
+    """A view of agents that are told apart.
+
+    ``told`` has, per seen agent in the rule's order, the codes of what it shows and the steps and
+    rounds of its answers.
+    """
+    states, steps, rounds = (
+        {agent: one[k] for agent, one in zip(rule.seen, told, strict=True)} for k in range(3)
+    )
+    return Named(step, states, steps, rounds, names)
+
+
+def _looked_up(
+    rule: Rule, group: Group, names: Mapping[str, str]
+) -> Callable[[Situation], IntArray]:
+    """Which row of a rule holds in a situation: from a grid where that is enough."""
+    if rule.is_grid:
+        grid = lay_out(rule, group.horizon, names).row
+        return lambda situation: grid[situation.step][situation.states]
+
+    def read(situation: Situation) -> IntArray:
+        told = zip(situation.states, situation.shown_steps, situation.shown_rounds, strict=True)
+        view = view_of(rule, names, np.array(situation.step), tuple(told))
+        return rows_in(rule, view)[0]
+
+    return read
 
 
 def _bars(rule: Rule) -> tuple[IntArray, IntArray]:

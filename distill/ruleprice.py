@@ -11,10 +11,10 @@ import numpy as np
 from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.faults import Faults
-from thumbwright.distill.playing import lay_out
 from thumbwright.distill.rule_reading import read_rule
 from thumbwright.distill.rules import SHOWN, Rule
 from thumbwright.distill.situations import Situations
+from thumbwright.distill.views import holds
 from thumbwright.exact.arrays import BoolArray
 
 KNOWN = ("exact", "plain-count", "alone")
@@ -104,7 +104,8 @@ def _refused_bars(pricer: Pricer, path: str) -> list[str]:
 def _gaps_and_overlaps(pricer: Pricer, rule: Rule, path: str) -> list[str]:
     """One message with an example for gaps, and one for overlaps, among what can arise."""
     situations = pricer.situations
-    none, several = _cells(pricer, rule)
+    count = situations.held_by(rule, pricer.settings)[1]
+    none, several = count == 0, count > 1
     faults = []
     if none.any():
         faults.append(
@@ -121,27 +122,12 @@ def _gaps_and_overlaps(pricer: Pricer, rule: Rule, path: str) -> list[str]:
     return faults
 
 
-def _cells(pricer: Pricer, rule: Rule) -> tuple[BoolArray, BoolArray]:
-    situations = pricer.situations
-    count = np.ones(len(situations.step), dtype=np.int64)
-    for number, setting in enumerate(pricer.settings):
-        here = situations.setting == number
-        grid = lay_out(rule, pricer.group.horizon, setting.names).count
-        count[here] = grid[(situations.step[here], *situations.states[here].T)]
-    return count == 0, count > 1
-
-
 def _rows_there(pricer: Pricer, rule: Rule, situation: int) -> list[int]:
     """Numbers of the rows that hold in one situation."""
     situations = pricer.situations
-    names = pricer.settings[int(situations.setting[situation])].names
-    cell = (int(situations.step[situation]), *map(int, situations.states[situation]))
-    numbers = []
-    for number, row in enumerate(rule.rows):
-        single = Rule(rule.form, rule.agent, rule.seen, (row,))
-        if lay_out(single, pricer.group.horizon, names).count[cell]:
-            numbers.append(number + 1)
-    return numbers
+    here = np.arange(len(situations.step)) == situation
+    view = situations.view(here, pricer.settings[int(situations.setting[situation])].names)
+    return [n + 1 for n, row in enumerate(rule.rows) if np.all(holds(row, view))]
 
 
 def _where(situations: Situations, mask: BoolArray, pricer: Pricer) -> str:
@@ -166,6 +152,8 @@ def _plain_row(row: Any) -> dict[str, Any]:
         "step_from": row.step_from,
         "step_to": row.step_to,
         "shows": {agent: [s for s in SHOWN if s in states] for agent, states in row.shows.items()},
+        "ranges": {name: list(ends) for name, ends in row.ranges.items()},
+        "first_answer": None if row.first_answer is None else sorted(row.first_answer),
         "thresholds": {agent: sorted(names) for agent, names in row.thresholds.items()},
         "nats": row.value,
         "minus_at_or_below": row.minus_at,

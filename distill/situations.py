@@ -10,7 +10,7 @@ log ratio of their masses added up.
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -19,9 +19,9 @@ from numpy.typing import NDArray
 
 from thumbwright.distill.assemble import Setting
 from thumbwright.distill.forms.boxes import gain
-from thumbwright.distill.playing import NO_ROW, lay_out
 from thumbwright.distill.rules import SHOWN, Rule
-from thumbwright.exact.arrays import FloatArray, IntArray, sums
+from thumbwright.distill.views import Named, rows_in
+from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray, sums
 
 
 @dataclass(frozen=True)
@@ -33,8 +33,8 @@ class Situations:
     seen : tuple of str
         Ids of the seen agents.
     setting, step, round : ndarray of int, shape (R,)
-    states : ndarray of int, shape (R, number of seen agents)
-        Codes of the shown states.
+    states, shown_steps, shown_rounds : ndarray of int, shape (R, number of seen agents)
+        Codes of the shown states; step and round of each answer, 0 while undecided.
     plus, minus : ndarray of float, shape (R,)
         Masses given plus and given minus.
     worth : ndarray of float, shape (R,)
@@ -46,6 +46,8 @@ class Situations:
     step: IntArray
     round: IntArray
     states: IntArray
+    shown_steps: IntArray
+    shown_rounds: IntArray
     plus: FloatArray
     minus: FloatArray
     worth: FloatArray
@@ -76,12 +78,36 @@ class Situations:
 
     def rows_of(self, rule: Rule, settings: Sequence[Setting]) -> IntArray:
         """Which row of a rule holds in each situation, shape (R,); NO_ROW in a gap."""
-        rows = np.full(len(self.step), NO_ROW, dtype=np.int64)
+        return self.held_by(rule, settings)[0]
+
+    def held_by(self, rule: Rule, settings: Sequence[Setting]) -> tuple[IntArray, IntArray]:
+        """Which row of a rule holds in each situation, and how many do; both shape (R,)."""
+        rows, count = np.empty((2, len(self.step)), dtype=np.int64)
         for number, setting in enumerate(settings):
             here = self.setting == number
-            grid = lay_out(rule, setting.solution.group.horizon, setting.names).row
-            rows[here] = grid[(self.step[here], *self.states[here].T)]
-        return rows
+            rows[here], count[here] = rows_in(rule, self.view(here, setting.names))
+        return rows, count
+
+    def number(self, name: str) -> IntArray:
+        """One of ``rules.NUMBERS`` in every situation, shape (R,)."""
+        return np.broadcast_to(self.view(self.everywhere, {}).number(name), self.step.shape)
+
+    def first_answer(self) -> IntArray:
+        """Code of the first answer in every situation, shape (R,)."""
+        return np.broadcast_to(self.view(self.everywhere, {}).first_answer(), self.step.shape)
+
+    @property
+    def everywhere(self) -> BoolArray:
+        """All situations, shape (R,)."""
+        return np.ones(len(self.step), dtype=bool)
+
+    def view(self, which: BoolArray, names: Mapping[str, str]) -> Named:
+        """What a rule may look at in the chosen situations."""
+        states, steps, rounds = (
+            dict(zip(self.seen, column[which].T, strict=True))
+            for column in (self.states, self.shown_steps, self.shown_rounds)
+        )
+        return Named(self.step[which], states, steps, rounds, names)
 
     def pooled(self, rows: IntArray, count: int) -> tuple[FloatArray, FloatArray]:
         """Masses of each of ``count`` rows, given plus and given minus."""
@@ -98,13 +124,18 @@ def values_of(plus: FloatArray, minus: FloatArray) -> FloatArray:
 
 def situations_of(settings: Sequence[Setting], agent: str) -> Situations:
     """Collect the situations of one agent over all settings."""
-    columns: list[list[NDArray[Any]]] = [[] for _ in range(7)]
+    columns: list[list[NDArray[Any]]] = [[] for _ in range(9)]
     seen: tuple[str, ...] = ()
     for number, setting in enumerate(settings):
         group = setting.solution.group
         position = group.index[agent]
         seen = group.agents[position].sees
-        state = [np.array(setting.solution.tracks[k].events.state) for k in group.sees[position]]
+        events = [setting.solution.tracks[k].events for k in group.sees[position]]
+        told = [
+            [np.array(e.state) for e in events],
+            [np.array(e.step) for e in events],
+            [np.array(e.round) for e in events],
+        ]
         moments = setting.solution.tracks[position].moments
         rounds = Counter(moment.step for moment in moments)
         for moment in moments:
@@ -114,12 +145,17 @@ def situations_of(settings: Sequence[Setting], agent: str) -> Situations:
             omega = np.exp(moment.log_before).mean(axis=0)[possible].ravel() / rounds[moment.step]
             shown = np.exp(moment.log_shown)[:, possible].reshape(2, -1)
             size = len(omega)
-            states = [s[w] for s, w in zip(state, where, strict=True)]
+            columns_seen = [
+                np.stack([x[w] for x, w in zip(one, where, strict=True)], axis=1)
+                if seen
+                else np.zeros((size, 0), dtype=np.int64)
+                for one in told
+            ]
             entries = (
                 np.full(size, number),
                 np.full(size, moment.step),
                 np.full(size, moment.round),
-                np.stack(states, axis=1) if states else np.zeros((size, 0), dtype=np.int64),
+                *columns_seen,
                 setting.weight * omega * shown[0],
                 setting.weight * omega * shown[1],
                 moment.value[possible].ravel(),

@@ -60,6 +60,12 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
             f"speaks for plus as it grows, which {evidence.kind} evidence with these keys has not; "
             'leave "lines" out of the forms, or swap the two answers if the count speaks for minus'
         )
+    others = [name for name in wanted.inputs if name not in ("step", "shown", "thresholds")]
+    if others:
+        raise ModelError(
+            f'the form "lines" looks at step, shown and thresholds, not at {", ".join(others)}; '
+            'use the form "table" for these'
+        )
     states = 3 ** len(pricer.seen) if "shown" in wanted.inputs else 1
     if states > MOST_STATES:
         raise ModelError(

@@ -8,18 +8,16 @@ into as many groups could keep, whatever it looks at.
 
 from __future__ import annotations
 
-from collections.abc import Callable
-from dataclasses import dataclass, replace
-
 import numpy as np
 
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms import Distilled, Wanted
+from thumbwright.distill.forms.axes import Axis, grid_axes
 from thumbwright.distill.forms.boxes import Box, Partition, best_partitions
 from thumbwright.distill.forms.grouping import best_groupings
-from thumbwright.distill.rules import SHOWN, Row, Rule
+from thumbwright.distill.rules import Row, Rule
 from thumbwright.distill.situations import values_of
-from thumbwright.exact.arrays import FloatArray, IntArray, sums
+from thumbwright.exact.arrays import FloatArray, sums
 from thumbwright.exact.engine import Progress
 from thumbwright.exact.errors import ModelError
 
@@ -33,18 +31,6 @@ DIGITS = 10
 
 ROUNDED = 12
 """Decimals beyond which a value is rounding only."""
-
-_STATE_ORDER = ("minus", "undecided", "plus")
-
-
-@dataclass(frozen=True)
-class Axis:
-    """One input of the grid: the cell of each situation, and how a row narrows to some cells."""
-
-    name: str
-    cells: int
-    where: IntArray
-    says: Callable[[Row, int, int], Row]
 
 
 def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> Distilled:
@@ -103,63 +89,6 @@ def _choose(
             f"{len(largest.boxes)} rows already say all that a table of these inputs can say.",
         )
     return largest, ()
-
-
-def grid_axes(pricer: Pricer, inputs: tuple[str, ...]) -> list[Axis]:
-    """The axes of the grid, in the order in which the inputs are declared."""
-    situations = pricer.situations
-    axes: list[Axis] = []
-    for name in inputs:
-        if name == "step":
-            horizon = pricer.group.horizon
-            axes.append(Axis("step", horizon, situations.step - 1, _step_range(horizon)))
-        elif name == "shown":
-            code = np.array([_STATE_ORDER.index(state) for state in SHOWN])
-            axes += [
-                Axis(f"{agent} shown", 3, code[situations.states[:, k]], _states(agent))
-                for k, agent in enumerate(situations.seen)
-            ]
-        elif name == "thresholds":
-            axes += [_thresholds_axis(pricer, agent) for agent in situations.seen]
-    return axes
-
-
-def _step_range(horizon: int) -> Callable[[Row, int, int], Row]:
-    def says(row: Row, start: int, stop: int) -> Row:
-        return replace(
-            row,
-            step_from=None if start == 0 else start + 1,
-            step_to=None if stop == horizon else stop,
-        )
-
-    return says
-
-
-def _states(agent: str) -> Callable[[Row, int, int], Row]:
-    def says(row: Row, start: int, stop: int) -> Row:
-        if stop - start == len(_STATE_ORDER):
-            return row
-        return replace(row, shows={**row.shows, agent: frozenset(_STATE_ORDER[start:stop])})
-
-    return says
-
-
-def _thresholds_axis(pricer: Pricer, agent: str) -> Axis:
-    """Named thresholds in the order of the sum of their two beliefs."""
-    sums: dict[str, float] = {}
-    for setting in pricer.settings:
-        group = setting.solution.group
-        bounds = group.agents[group.index[agent]].thresholds[0][1]
-        sums[setting.names[agent]] = bounds.plus + bounds.minus
-    order = sorted(sums, key=lambda name: sums[name])
-    number = np.array([order.index(setting.names[agent]) for setting in pricer.settings])
-
-    def says(row: Row, start: int, stop: int) -> Row:
-        if stop - start == len(order):
-            return row
-        return replace(row, thresholds={**row.thresholds, agent: frozenset(order[start:stop])})
-
-    return Axis(f"{agent} thresholds", len(order), number[pricer.situations.setting], says)
 
 
 def cell_masses(pricer: Pricer, axes: list[Axis]) -> tuple[FloatArray, FloatArray]:

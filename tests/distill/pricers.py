@@ -8,8 +8,9 @@ from collections.abc import Sequence
 from tests.slow import pair_walk as walk
 from thumbwright.distill.assemble import Setting
 from thumbwright.distill.costs import Pricer
-from thumbwright.distill.playing import NO_ROW, lay_out
+from thumbwright.distill.playing import lay_out
 from thumbwright.distill.rules import Rule
+from thumbwright.distill.views import NO_ROW
 from thumbwright.exact.engine import solve
 from thumbwright.exact.evidence.base import Evidence
 from thumbwright.exact.evidence.binary import coin

@@ -13,6 +13,7 @@ from thumbwright.distill.evidence_keys import EVIDENCE_KINDS
 from thumbwright.distill.faults import Faults
 from thumbwright.distill.network import SMALLEST, who_sees_whom
 from thumbwright.distill.reading import case_from_text, read_case, starter_names, starter_text
+from thumbwright.distill.rules import FIRST_ANSWER, NUMBERS
 
 SCHEMA = jsonschema.Draft202012Validator(Case.json_schema())
 
@@ -107,7 +108,7 @@ def test_what_is_left_out_is_filled_in() -> None:
     assert case.time.exchange == "once"
     assert case.rule.inputs == ["step", "shown"]
     assert case.rule.forms == list(FORMS) == ["lines", "table"]
-    assert INPUTS == ("step", "shown", "thresholds")
+    assert ("step", "shown", "thresholds", *NUMBERS, FIRST_ANSWER) == INPUTS
     assert (case.rule.rows, case.rule.covers, case.rule.max_accuracy_lost) == (6, [], None)
     assert case.agents["lead"].name == "lead"
     assert case.rule_agent == "follower"

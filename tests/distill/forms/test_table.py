@@ -172,7 +172,7 @@ def test_duplicating_a_situation_or_rescaling_changes_nothing() -> None:
     s = pricer.situations
     twice = {
         name: np.concatenate([getattr(s, name)] * 2)
-        for name in ("setting", "step", "round", "states", "worth")
+        for name in ("setting", "step", "round", "states", "worth", "shown_steps", "shown_rounds")
     }
     halves = {
         name: np.concatenate([0.3 * getattr(s, name), 0.7 * getattr(s, name)])
