@@ -52,7 +52,7 @@ __all__ = [
     "Words",
 ]
 
-Form = Literal["lines", "table"]
+Form = Literal["lines", "table", "tree"]
 Input = Literal[
     "step",
     "shown",

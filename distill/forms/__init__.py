@@ -17,7 +17,7 @@ from types import ModuleType
 
 from thumbwright.distill.rules import Rule
 
-MODULES = ("lines", "table")
+MODULES = ("lines", "table", "tree")
 """The form modules of this package, in the order in which they are printed."""
 
 
