@@ -52,7 +52,7 @@ __all__ = [
     "Words",
 ]
 
-Form = Literal["lines", "table", "tree"]
+Form = Literal["lines", "table", "table-by-risk", "tree"]
 Input = Literal[
     "step",
     "shown",

@@ -67,7 +67,7 @@ class Batch:
                 for number, setting in enumerate(self._pricer.settings)
             ]
             found += [
-                average([(weight, _one(many, i)) for weight, many in played])
+                average([(weight, one_of(many, i)) for weight, many in played])
                 for i in range(len(part))
             ]
         return found
@@ -144,7 +144,8 @@ class Batch:
         return float(values_of(np.array([plus]), np.array([minus]))[0])
 
 
-def _one(many: ManyTallies, i: int) -> Tally:
+def one_of(many: ManyTallies, i: int) -> Tally:
+    """The outcome of one of many rules that were priced together."""
     return Tally(
         many.plus[i],
         many.minus[i],

@@ -34,13 +34,7 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
     Raises ModelError where the grid of inputs is too large for the exact search.
     """
     axes = grid_axes(pricer, wanted.inputs)
-    boxes = int(np.prod([axis.cells * (axis.cells + 1) // 2 for axis in axes], dtype=float))
-    if boxes * wanted.rows > MOST_BOXES:
-        raise ModelError(
-            f"the table would be searched over {boxes:,} boxes of situations, which takes too "
-            'long; look at fewer neighbours, shorten the horizon, drop "step" from the inputs or '
-            'leave "table" out of the forms'
-        )
+    refuse_too_large(axes, wanted.rows, NAME)
     if progress:
         progress("table", 0, 1)
     plus, minus = cell_masses(pricer, axes)
@@ -61,6 +55,17 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
     )
 
 
+def refuse_too_large(axes: list[Axis], rows: int, form: str) -> None:
+    """Raise ModelError where the exact search over this grid would take too long."""
+    boxes = int(np.prod([axis.cells * (axis.cells + 1) // 2 for axis in axes], dtype=float))
+    if boxes * rows > MOST_BOXES:
+        raise ModelError(
+            f"the {form} would be searched over {boxes:,} boxes of situations, which takes too "
+            'long; look at fewer neighbours, shorten the horizon, drop "step" from the inputs or '
+            f'leave "{form}" out of the forms'
+        )
+
+
 def cell_masses(pricer: Pricer, axes: list[Axis]) -> tuple[FloatArray, FloatArray]:
     """Masses of the situations in each cell of the grid, given plus and given minus."""
     shape = tuple(axis.cells for axis in axes)
@@ -76,14 +81,14 @@ def as_rule(
 ) -> Rule:
     """A partition of the grid as rows with their best values."""
     rows = []
-    for box in sorted(partition.boxes, key=lambda box: _print_order(axes, box)):
+    for box in sorted(partition.boxes, key=lambda box: print_order(axes, box)):
         where = tuple(slice(start, stop) for start, stop in box)
         value = values_of(plus[where].sum(keepdims=True), minus[where].sum(keepdims=True))
         rows.append(valued_row(axes, box, float(value.flat[0])))
     return Rule(NAME, pricer.agent, pricer.seen, tuple(rows))
 
 
-def _print_order(axes: list[Axis], box: Box) -> tuple[tuple[int, int], ...]:
+def print_order(axes: list[Axis], box: Box) -> tuple[tuple[int, int], ...]:
     """Shown states before steps: rows are looked up by what is seen, then by when."""
     ranges = dict(zip((axis.name for axis in axes), box, strict=True))
     return tuple(ranges[name] for name in sorted(ranges, key=lambda name: name == "step"))

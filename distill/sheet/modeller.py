@@ -16,6 +16,7 @@ from thumbwright.distill.sheet.words import clean, five, listing, signed
 FORM_TITLES = {
     "lines": "The lines: bars on the own count",
     "table": "The table: values in place of what others show",
+    "table-by-risk": "The table by risk: boxes and values chosen for least risk",
     "tree": "The tree: values found by one cut after another",
 }
 
