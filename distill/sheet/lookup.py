@@ -13,7 +13,6 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
-from thumbwright.distill.assemble import assemble
 from thumbwright.distill.exports.rule_csv import SHOWS, THRESHOLDS
 from thumbwright.distill.findings import Findings
 from thumbwright.distill.rules import FIRST_ANSWERS, NUMBERS, SHOWN, Row, Rule
@@ -238,14 +237,12 @@ def _alone(
 
 def _own(findings: Findings) -> dict[str, Any]:
     """What the own evidence is worth and where the agent answers, all in nats."""
-    group = assemble(findings.case)
-    bounds = group.agents[group.index[findings.agent]].thresholds[0][1]
     return {
-        "prior": group.prior,
+        "prior": findings.prior,
         "per_count": findings.alpha if findings.count_is_whole else None,
         "per_step": (findings.beta or 0.0) if findings.count_is_whole else 0.0,
-        "minus": bounds.minus,
-        "plus": bounds.plus,
+        "minus": findings.bounds[0],
+        "plus": findings.bounds[1],
         "tie": TIE,
     }
 
