@@ -20,7 +20,8 @@ class Figures:
     (what the agent has shown by the horizon) and ``steps`` (mean number of steps used; an
     agent that is undecided at the horizon has used all of them). ``wrong_given_plus`` and
     ``wrong_given_minus`` count the answers shown, not those forced at the horizon.
-    ``risk`` is ``None`` only where no costs are known or could be inferred.
+    ``risk`` is ``None`` only where no costs are known or could be inferred. ``errors`` holds
+    standard errors of figures by name, where histories were sampled.
     """
 
     given_plus: dict[str, float]
@@ -34,6 +35,7 @@ class Figures:
     delay_added: float
     benefit_kept: float | None
     off_model: float
+    errors: dict[str, float] | None = None
 
 
 @dataclass(frozen=True)
@@ -109,6 +111,11 @@ class Findings:
         Whether a person can keep the own count.
     alpha, beta : float or None
         Worth (nats) of one count and of one step; None off a ladder.
+    prior : float
+        Log-odds of plus before anybody has observed anything (nats).
+    bounds : tuple of float
+        The agent's own thresholds: it answers minus at the first belief or below, plus at the
+        second or above (nats).
     value_offsets : tuple of int or None
         By how much each possible observation moves the own count, in the order of ``labels``.
     leans : mapping of agent id to "minus", "plus" or "even"
@@ -138,6 +145,8 @@ class Findings:
     count_is_whole: bool
     alpha: float | None
     beta: float | None
+    prior: float
+    bounds: tuple[float, float]
     value_offsets: tuple[int, ...] | None
     leans: dict[str, str]
     alone_rows: tuple[Row, ...]

@@ -6,7 +6,6 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from thumbwright.distill.costs import Pricer, Tally, average
 from thumbwright.distill.forms.runs import (
     Layout,
     Sides,
@@ -14,7 +13,9 @@ from thumbwright.distill.forms.runs import (
     count_range,
     threshold_order,
 )
+from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.situations import values_of
+from thumbwright.distill.tallies import Tally, average
 from thumbwright.exact.arrays import FloatArray, IntArray, sums
 from thumbwright.exact.many import (
     Bars,
@@ -32,7 +33,7 @@ MOST_AT_ONCE = 400
 class Batch:
     """Prices layouts of one agent's lines; results do not depend on which way is taken."""
 
-    def __init__(self, pricer: Pricer) -> None:
+    def __init__(self, pricer: NetworkPricer) -> None:
         self._pricer = pricer
         self.together = all(
             fits(s.solution, s.solution.group.index[pricer.agent]) for s in pricer.settings

@@ -6,7 +6,7 @@ from collections.abc import Callable
 from typing import Any
 
 from thumbwright.distill.findings import Figures, Findings, FormResult
-from thumbwright.distill.rules import SHOWN, Row
+from thumbwright.distill.rules import FIRST_ANSWERS, NUMBERS, SHOWN, Row
 from thumbwright.distill.sheet.chart import chart
 from thumbwright.distill.sheet.nested import nested
 from thumbwright.distill.sheet.parts import Grid, Modeller, Note
@@ -80,8 +80,23 @@ def _shown(row: Row, findings: Findings, voice: Voice) -> str:
         states = [state for state in SHOWN if state in row.shows.get(agent, SHOWN)]
         text = "any" if len(states) == len(SHOWN) else " or ".join(states)
         parts.append(f"{voice.names[agent]} {text}")
+    if row.ranges or row.first_answer is not None:
+        parts = [part for part in parts if not part.endswith(" any")]
+    parts += [_range(name, row) for name in NUMBERS if name in row.ranges]
+    if row.first_answer is not None:
+        said = [answer for answer in FIRST_ANSWERS if answer in row.first_answer]
+        parts.append(f"first answer {' or '.join(said)}")
     habits = voice.habits(row.thresholds)
     return "; ".join([*parts, habits] if habits else parts)
+
+
+def _range(name: str, row: Row) -> str:
+    """Say the least and greatest of a number that a row accepts."""
+    least, most = row.ranges[name]
+    words = name.replace("_", " ")
+    if most is None:
+        return f"{words} any" if least is None else f"{words} {least} or more"
+    return f"{words} {most}" if least == most else f"{words} {least or 0} to {most}"
 
 
 def _rule(name: str, result: FormResult, findings: Findings, voice: Voice) -> Grid:
@@ -261,5 +276,7 @@ def _agent(key: str, findings: Findings, voice: Voice) -> str:
     else:
         habit = "unknown: " + ", ".join(f"{clean(n)} {s:g}" for n, s in agent.thresholds.items())
     sees = ", ".join(voice.names[other] for other in agent.sees) or "nobody"
+    if len(agent.sees) > 1 and len(agent.sees) == len(findings.case.agents) - 1:
+        sees = "everybody else"
     own = "" if agent.evidence is None else f"; own evidence: {_spec(agent.evidence)}"
     return f"id {key}; thresholds {habit}; sees {sees}{own}"

@@ -6,7 +6,9 @@ parts. The templates decide on markup only.
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
+from typing import Any
 
 
 @dataclass(frozen=True)
@@ -190,6 +192,42 @@ class Modeller:
 
 
 @dataclass(frozen=True)
+class Ask:
+    """One thing that the look-up asks for: a whole number, or one of some options.
+
+    ``options`` is empty for a number, which is then from ``least`` to ``most`` (None: open).
+    """
+
+    label: str
+    options: tuple[str, ...] = ()
+    least: int = 0
+    most: int | None = None
+
+
+@dataclass(frozen=True)
+class Lookup:
+    """The card as something to ask.
+
+    ``asks`` come in the order of ``data["asks"]``; ``data`` is what the script reads, ready for
+    JSON. The peg (``kind`` "peg") or the number (``kind`` "number") goes from ``least`` to
+    ``most``; ``kind`` "worth" has one field for the reader's own evidence instead, and ``kind``
+    "none" nothing. ``fewer`` and ``more`` are what the buttons beside the peg say.
+    """
+
+    heading: str
+    intro: str
+    asks: tuple[Ask, ...]
+    kind: str
+    own: str
+    least: int
+    most: int
+    fewer: str
+    more: str
+    again: str
+    data: Mapping[str, Any]
+
+
+@dataclass(frozen=True)
 class Sheet:
     """A whole sheet."""
 
@@ -213,6 +251,7 @@ class Sheet:
     example_heading: str
     example: Grid | None
     foot: str
+    lookup: Lookup
     modeller: Modeller
     tight: bool = False
     example_on_front: bool = True
