@@ -109,6 +109,11 @@ class Findings:
         Whether a person can keep the own count.
     alpha, beta : float or None
         Worth (nats) of one count and of one step; None off a ladder.
+    prior : float
+        Log-odds of plus before anybody has observed anything (nats).
+    bounds : tuple of float
+        The agent's own thresholds: it answers minus at the first belief or below, plus at the
+        second or above (nats).
     value_offsets : tuple of int or None
         By how much each possible observation moves the own count, in the order of ``labels``.
     leans : mapping of agent id to "minus", "plus" or "even"
@@ -138,6 +143,8 @@ class Findings:
     count_is_whole: bool
     alpha: float | None
     beta: float | None
+    prior: float
+    bounds: tuple[float, float]
     value_offsets: tuple[int, ...] | None
     leans: dict[str, str]
     alone_rows: tuple[Row, ...]

@@ -101,6 +101,8 @@ def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIM
         count_is_whole=evidence.countable,
         alpha=float(evidence.alpha[0]) if evidence.on_ladder else None,
         beta=evidence.beta if evidence.on_ladder else None,
+        prior=_firm(pricer.group.prior),
+        bounds=_bounds(pricer),
         value_offsets=tuple(map(int, evidence.offsets[:, 0])) if evidence.countable else None,
         leans=_leans(pricer.group, pricer.seen),
         alone_rows=alone_rows(pricer) if evidence.countable and evidence.alpha[0] > 0 else (),
@@ -150,6 +152,16 @@ def _form_result(
 
 def _evidence(pricer: Pricer) -> Evidence:
     return pricer.group.agents[pricer.group.index[pricer.agent]].evidence
+
+
+def _bounds(pricer: Pricer) -> tuple[float, float]:
+    own = pricer.group.agents[pricer.group.index[pricer.agent]].thresholds[0][1]
+    return _firm(own.minus), _firm(own.plus)
+
+
+def _firm(belief: float) -> float:
+    """A belief to twelve digits: the last ones of a double differ between machines."""
+    return float(f"{belief:.12g}")
 
 
 def _leans(group: Group, seen: tuple[str, ...]) -> dict[str, str]:
