@@ -34,7 +34,6 @@ from thumbwright.distill.exports.rule_csv import (
 from thumbwright.distill.findings import Findings, FormResult
 from thumbwright.distill.price_tag import price_tag
 from thumbwright.distill.rules import FIRST_ANSWER, FIRST_ANSWERS, NUMBERS, SHOWN, Row, Rule
-from thumbwright.exact.thresholds import log_odds
 
 NAME = "rule as DMN"
 
@@ -184,9 +183,7 @@ def _add_row(
     table: ET.Element, number: int, row: Row, rule: Rule, clauses: Sequence[Clause]
 ) -> None:
     """Add a row of the rule: one line for each combination of texts and each answer."""
-    line = 0
-    for tests, result in _lines(row, rule):
-        line += 1
+    for line, (tests, result) in enumerate(_lines(row, rule), 1):
         entry = _child(table, "rule", id=f"row_{number}_{line}")
         _child(entry, "description", f"row {number}")
         for place, clause in enumerate(clauses, 1):
@@ -287,8 +284,9 @@ def _what(rule: Rule, findings: Findings, valued: bool) -> str:
         said.append(
             "nats: what the situation adds to the agent's log-odds for plus (natural logarithm),"
             " a level and not a change. Belief = prior log-odds"
-            f" {plain_decimal(log_odds(question.prior_plus))} + the agent's own log-likelihood"
-            " ratios, summed + nats."
+            f" {plain_decimal(findings.prior)} + the agent's own log-likelihood ratios, summed +"
+            f" nats; the agent answers minus at {plain_decimal(findings.bounds[0])} or less, plus"
+            f" at {plain_decimal(findings.bounds[1])} or more."
         )
         if any(row.value is not None and math.isinf(row.value) for row in rule.rows):
             said.append(f"{BEYOND} and -{BEYOND} stand for worths without bound.")

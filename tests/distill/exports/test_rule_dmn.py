@@ -2,7 +2,6 @@ from __future__ import annotations
 
 import math
 import random
-import xml.etree.ElementTree as ET
 from collections.abc import Mapping
 from dataclasses import replace
 from pathlib import Path
@@ -158,7 +157,7 @@ def standard() -> Any:
 
 def test_tests_have_one_side_texts_stand_alone_and_numbers_have_no_exponent() -> None:
     for xml in export.render(FOUND).values():
-        root = ET.fromstring(str(xml))
+        root = parsed(str(xml))
         for cell in root.iterfind(".//d:inputEntry/d:text", SPACE):
             assert cell.text is not None
             sides = (">= ", "<= ")
@@ -193,7 +192,7 @@ def test_one_file_for_each_form_with_caution_price_and_digest() -> None:
     files = export.render(FOUND)
     assert list(files) == ["rule.dmn", "rule-table.dmn"]
     for xml in files.values():
-        said = ET.fromstring(str(xml)).findtext("d:description", "", SPACE)
+        said = parsed(str(xml)).findtext("d:description", "", SPACE)
         for sentence in (*cautions("property"), FOUND.digest, "mean step 7.250"):
             assert sentence in said
 
@@ -228,9 +227,9 @@ def test_labels_are_data(label: str) -> None:
     changed = FOUND.case.model_copy(update={"question": question, "title": label})
     xml = export.rule_dmn(sample.rule_of_bars(), replace(FOUND, case=changed))
     standard().assertValid(parsed(xml))
-    root = ET.fromstring(xml)
+    root = parsed(xml)
     shape = [element.tag for element in root.iter()]
-    plain = ET.fromstring(export.rule_dmn(sample.rule_of_bars(), FOUND))
+    plain = parsed(export.rule_dmn(sample.rule_of_bars(), FOUND))
     assert shape == [element.tag for element in plain.iter()]
     if label.isprintable():
         assert root.get("name") == label

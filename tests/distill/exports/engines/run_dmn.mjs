@@ -30,9 +30,13 @@ const run = async ({ xml, situations }) => {
     row.outputEntry.map((entry) => sound(entry.text, evaluate(entry.text, {}))),
   );
   return situations.map((situation) => {
+    const read = new Map();
     const values = table.input.map((clause) => {
       const expression = clause.inputExpression.text;
-      return sound(expression, evaluate(expression, situation));
+      if (!read.has(expression)) {
+        read.set(expression, sound(expression, evaluate(expression, situation)));
+      }
+      return read.get(expression);
     });
     const hit = table.rule.findIndex((row) =>
       row.inputEntry.every((cell, place) => holds(cell.text, values[place])),
