@@ -22,7 +22,7 @@ from dataclasses import dataclass
 from itertools import product
 
 from thumbwright.distill.cautions import cautions
-from thumbwright.distill.decimals import plain_decimal
+from thumbwright.distill.decimals import DIGITS, plain_decimal
 from thumbwright.distill.exports.rule_csv import (
     SHOWS,
     THRESHOLDS,
@@ -34,6 +34,7 @@ from thumbwright.distill.exports.rule_csv import (
 from thumbwright.distill.findings import Findings, FormResult
 from thumbwright.distill.price_tag import price_tag
 from thumbwright.distill.rules import FIRST_ANSWER, FIRST_ANSWERS, NUMBERS, SHOWN, Row, Rule
+from thumbwright.exact.walk import TIE
 
 NAME = "rule as DMN"
 
@@ -284,9 +285,9 @@ def _what(rule: Rule, findings: Findings, valued: bool) -> str:
         said.append(
             "nats: what the situation adds to the agent's log-odds for plus (natural logarithm),"
             " a level and not a change. Belief = prior log-odds"
-            f" {plain_decimal(findings.prior)} + the agent's own log-likelihood ratios, summed +"
-            f" nats; the agent answers minus at {plain_decimal(findings.bounds[0])} or less, plus"
-            f" at {plain_decimal(findings.bounds[1])} or more."
+            f" {_figure(findings.prior)} + the agent's own log-likelihood ratios, summed +"
+            f" nats; the agent answers minus at {_figure(findings.bounds[0])} or less, plus"
+            f" at {_figure(findings.bounds[1])} or more, give or take {plain_decimal(TIE)}."
         )
         if any(row.value is not None and math.isinf(row.value) for row in rule.rows):
             said.append(f"{BEYOND} and -{BEYOND} stand for worths without bound.")
@@ -328,6 +329,11 @@ def _moves(findings: Findings) -> str:
         return ""
     each = (f"{label}: {move:+d}" for label, move in zip(findings.labels, offsets, strict=True))
     return f" What each observation adds: {'; '.join(each)}."
+
+
+def _figure(number: float) -> str:
+    """A computed figure to as many digits as do not differ from one machine to another."""
+    return plain_decimal(float(f"{number:.{DIGITS}g}"))
 
 
 def _quoted(text: str) -> str:
