@@ -6,8 +6,9 @@ from collections.abc import Callable
 from typing import Any
 
 from thumbwright.distill.findings import Figures, Findings, FormResult
-from thumbwright.distill.rules import SHOWN, Row
+from thumbwright.distill.rules import FIRST_ANSWERS, NUMBERS, SHOWN, Row
 from thumbwright.distill.sheet.chart import chart
+from thumbwright.distill.sheet.nested import nested
 from thumbwright.distill.sheet.parts import Grid, Modeller, Note
 from thumbwright.distill.sheet.voice import Voice, own_evidence
 from thumbwright.distill.sheet.words import clean, five, listing, signed
@@ -15,7 +16,12 @@ from thumbwright.distill.sheet.words import clean, five, listing, signed
 FORM_TITLES = {
     "lines": "The lines: bars on the own count",
     "table": "The table: values in place of what others show",
+    "table-by-risk": "The table by risk: boxes and values chosen for least risk",
+    "tree": "The tree: values found by one cut after another",
 }
+
+IN_SENTENCES = ("tree",)
+"""Forms whose rows are read as nested sentences, not as a table."""
 
 
 def modeller(findings: Findings, voice: Voice) -> Modeller:
@@ -23,7 +29,16 @@ def modeller(findings: Findings, voice: Voice) -> Modeller:
     return Modeller(
         intro=_intro(findings),
         chart=chart(findings, voice),
-        rules=tuple(_rule(name, result, findings, voice) for name, result in _forms(findings)),
+        rules=tuple(
+            _rule(name, result, findings, voice)
+            for name, result in _forms(findings)
+            if name not in IN_SENTENCES
+        ),
+        said=tuple(
+            nested(FORM_TITLES[name], result, findings, voice)
+            for name, result in _forms(findings)
+            if name in IN_SENTENCES
+        ),
         rule_notes=tuple(
             Note(f"{name}:", " ".join(_rule_notes(result))) for name, result in _forms(findings)
         ),
@@ -65,8 +80,23 @@ def _shown(row: Row, findings: Findings, voice: Voice) -> str:
         states = [state for state in SHOWN if state in row.shows.get(agent, SHOWN)]
         text = "any" if len(states) == len(SHOWN) else " or ".join(states)
         parts.append(f"{voice.names[agent]} {text}")
+    if row.ranges or row.first_answer is not None:
+        parts = [part for part in parts if not part.endswith(" any")]
+    parts += [_range(name, row) for name in NUMBERS if name in row.ranges]
+    if row.first_answer is not None:
+        said = [answer for answer in FIRST_ANSWERS if answer in row.first_answer]
+        parts.append(f"first answer {' or '.join(said)}")
     habits = voice.habits(row.thresholds)
     return "; ".join([*parts, habits] if habits else parts)
+
+
+def _range(name: str, row: Row) -> str:
+    """Say the least and greatest of a number that a row accepts."""
+    least, most = row.ranges[name]
+    words = name.replace("_", " ")
+    if most is None:
+        return f"{words} any" if least is None else f"{words} {least} or more"
+    return f"{words} {most}" if least == most else f"{words} {least or 0} to {most}"
 
 
 def _rule(name: str, result: FormResult, findings: Findings, voice: Voice) -> Grid:
@@ -246,5 +276,7 @@ def _agent(key: str, findings: Findings, voice: Voice) -> str:
     else:
         habit = "unknown: " + ", ".join(f"{clean(n)} {s:g}" for n, s in agent.thresholds.items())
     sees = ", ".join(voice.names[other] for other in agent.sees) or "nobody"
+    if len(agent.sees) > 1 and len(agent.sees) == len(findings.case.agents) - 1:
+        sees = "everybody else"
     own = "" if agent.evidence is None else f"; own evidence: {_spec(agent.evidence)}"
     return f"id {key}; thresholds {habit}; sees {sees}{own}"

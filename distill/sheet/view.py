@@ -9,6 +9,7 @@ from thumbwright.distill.findings import Findings
 from thumbwright.distill.sheet.card import card
 from thumbwright.distill.sheet.costs import cost_note, costs, example
 from thumbwright.distill.sheet.fit import PAGE_HEIGHT, front_height
+from thumbwright.distill.sheet.lookup import lookup
 from thumbwright.distill.sheet.modeller import modeller
 from thumbwright.distill.sheet.notes import acts, acts_heading, notes, supposes, thing
 from thumbwright.distill.sheet.parts import Sheet
@@ -51,6 +52,7 @@ def sheet(findings: Findings) -> Sheet:
             f" up to {words.check} {case.time.horizon:,} · counts rounded; figures and settings on"
             " the back"
         ),
+        lookup=lookup(findings, words, kept, front),
         modeller=modeller(findings, words),
     )
     return _fitted(made)

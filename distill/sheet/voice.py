@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -18,6 +18,9 @@ from thumbwright.distill.sheet.words import (
 )
 
 FRESH = "Take one fresh look."
+
+MOST_NAMES = 4
+"""Agents watched that are named one by one; more are told by their number."""
 
 
 @dataclass(frozen=True)
@@ -64,7 +67,13 @@ class Voice:
     @property
     def those(self) -> str:
         """The agents watched, as one phrase."""
-        return listing(self.seen_names) or "nobody"
+        return self.whom(self.seen_names) or "nobody"
+
+    def whom(self, names: Sequence[str]) -> str:
+        """Say some of the agents watched; all of many of them by their number."""
+        if len(names) == len(self.seen) > MOST_NAMES:
+            return f"the {len(names)} others"
+        return listing(names)
 
     def checks(self, first: int | None, last: int | None) -> str:
         """Say a range of checks in words; "" for all of them."""

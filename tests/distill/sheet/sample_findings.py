@@ -383,6 +383,7 @@ def readings(stakes: str = "people") -> Findings:
         forms={"table": sample.forms["table"]},
         count_is_whole=False,
         alpha=0.05,
+        bounds=(-1.2, 1.2),
         value_offsets=None,
         alone_rows=(),
         is_exact=False,
