@@ -113,9 +113,23 @@ def check(case: str | None, memory: float | None, schema: bool) -> None:
     metavar="DIR",
     help="Folder to write into, made where it is missing; otherwise outputs/<name of the case>.",
 )
+@click.option(
+    "--templates",
+    type=click.Path(path_type=Path, file_okay=False, exists=True),
+    metavar="DIR",
+    help="Folder of templates of your own; each stands in for ours of the same name.",
+)
+@click.option("--pdf", is_flag=True, help="Write the sheet as PDF too (needs the extra pdf).")
 @DROP
 @MEMORY
-def sheet(case: str, into: Path | None, drop: float, memory: float | None) -> None:
+def sheet(
+    case: str,
+    into: Path | None,
+    templates: Path | None,
+    pdf: bool,
+    drop: float,
+    memory: float | None,
+) -> None:
     """The main job: exact beliefs, rules, their costs; writes the policy sheet and its data."""
     from thumbwright.distill import job
     from thumbwright.distill.progress import progress_on_terminal
@@ -124,7 +138,7 @@ def sheet(case: str, into: Path | None, drop: float, memory: float | None) -> No
     read = read_case(case)
     with progress_on_terminal() as progress:
         folder = into or Path("outputs") / read.name
-        summary = job.sheet(read, folder, progress, _limits(drop, memory))
+        summary = job.sheet(read, folder, progress, _limits(drop, memory), templates, pdf)
     _show(summary)
 
 
