@@ -20,7 +20,8 @@ class Figures:
     (what the agent has shown by the horizon) and ``steps`` (mean number of steps used; an
     agent that is undecided at the horizon has used all of them). ``wrong_given_plus`` and
     ``wrong_given_minus`` count the answers shown, not those forced at the horizon.
-    ``risk`` is ``None`` only where no costs are known or could be inferred.
+    ``risk`` is ``None`` only where no costs are known or could be inferred. ``errors`` holds
+    standard errors of figures by name, where histories were sampled.
     """
 
     given_plus: dict[str, float]
@@ -34,6 +35,7 @@ class Figures:
     delay_added: float
     benefit_kept: float | None
     off_model: float
+    errors: dict[str, float] | None = None
 
 
 @dataclass(frozen=True)

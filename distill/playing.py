@@ -14,7 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thumbwright.distill.rules import SHOWN, Row, Rule
-from thumbwright.distill.views import NO_ROW, Named, rows_in
+from thumbwright.distill.views import NO_ROW, Named, View, rows_in
 from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.group import Group
 from thumbwright.exact.play import NEVER, Act, Policy, Situation
@@ -81,26 +81,35 @@ def rule_policy(
         For a rule of bars, the worth of each row (nats): it decides which answer an agent favours
         that is undecided at the horizon. Zero where left out.
     """
-    rows_at = _looked_up(rule, group, names)
-    minus_at, plus_at = _bars(rule)
-    if rule.has_bars:
-        values = np.zeros(len(rule.rows)) if row_values is None else row_values
-    else:
-        values = np.array([0.0 if row.value is None else row.value for row in rule.rows])
-    # One more entry at the end is what NO_ROW (-1) picks: no news, no answer.
-    values, minus_at, plus_at = (
-        np.append(values, 0.0),
-        np.append(minus_at, -NEVER),
-        np.append(plus_at, NEVER),
-    )
+    rows_at, sheet = _looked_up(rule, group, names), _Sheet(rule, row_values)
+    return lambda situation: sheet.act(rows_at(situation))
 
-    def policy(situation: Situation) -> Act:
-        row = rows_at(situation)
-        if not rule.has_bars:
-            return Act(values[row], row=row)
-        return Act(values[row], minus_at[row], plus_at[row], row)
 
-    return policy
+def acts(rule: Rule, view: View, row_values: FloatArray | None = None) -> Act:
+    """What a rule makes of all situations of a view; ``row_values`` as for ``rule_policy``."""
+    return _Sheet(rule, row_values).act(rows_in(rule, view)[0])
+
+
+class _Sheet:
+    """Values and bars of all rows, to be looked up by the number of the row."""
+
+    def __init__(self, rule: Rule, row_values: FloatArray | None) -> None:
+        low = [-NEVER if row.minus_at is None else row.minus_at for row in rule.rows]
+        high = [NEVER if row.plus_at is None else row.plus_at for row in rule.rows]
+        values = [0.0 if row.value is None else row.value for row in rule.rows]
+        if rule.has_bars and row_values is not None:
+            values = row_values.tolist()
+        # One more entry at the end is what NO_ROW (-1) picks: no news, no answer.
+        self._value: FloatArray = np.array([*values, 0.0])
+        self._low: IntArray = np.array([*low, -NEVER], dtype=np.int64)
+        self._high: IntArray = np.array([*high, NEVER], dtype=np.int64)
+        self._has_bars = rule.has_bars
+
+    def act(self, row: IntArray) -> Act:
+        """What these rows say."""
+        if not self._has_bars:
+            return Act(self._value[row], row=row)
+        return Act(self._value[row], self._low[row], self._high[row], row)
 
 
 def view_of(
@@ -131,12 +140,6 @@ def _looked_up(
         return rows_in(rule, view)[0]
 
     return read
-
-
-def _bars(rule: Rule) -> tuple[IntArray, IntArray]:
-    low = [-NEVER if row.minus_at is None else row.minus_at for row in rule.rows]
-    high = [NEVER if row.plus_at is None else row.plus_at for row in rule.rows]
-    return np.array(low, dtype=np.int64), np.array(high, dtype=np.int64)
 
 
 def alone_policy(_situation: Situation) -> Act:

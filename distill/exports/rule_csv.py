@@ -169,10 +169,15 @@ def threshold_names(rule: Rule, findings: Findings) -> tuple[str, ...]:
 
 
 def figures_record(figures: Figures) -> dict[str, Any]:
-    """Return ``figures`` as JSON holds it, in the order of the class."""
+    """Return ``figures`` as JSON holds it, in the order of the class.
+
+    Standard errors are among them only where histories were sampled.
+    """
     record: dict[str, Any] = {}
     for field in dataclasses.fields(figures):
         found = getattr(figures, field.name)
+        if field.name == "errors" and found is None:
+            continue
         if isinstance(found, dict):
             record[field.name] = {key: json_figure(number) for key, number in found.items()}
         else:

@@ -12,7 +12,9 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from thumbwright.distill.costs import Pricer
+from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.rules import FIRST_ANSWER, FIRST_ANSWERS, NUMBERS, SHOWN, Row
+from thumbwright.distill.situations import Situations
 from thumbwright.exact.arrays import IntArray
 
 _STATE_ORDER = ("minus", "undecided", "plus")
@@ -48,18 +50,27 @@ def grid_axes(pricer: Pricer, inputs: Sequence[str]) -> list[Axis]:
             horizon = pricer.group.horizon
             axes.append(Axis("step", horizon, situations.step - 1, _step_range(horizon)))
         elif name == "shown":
-            code = np.array([_STATE_ORDER.index(state) for state in SHOWN])
-            axes += [
-                Axis(f"{agent} shown", 3, code[situations.states[:, k]], _states(agent))
-                for k, agent in enumerate(situations.seen)
-            ]
+            axes += _shown_axes(_told_apart(pricer).situations)
         elif name == "thresholds":
-            axes += [_thresholds_axis(pricer, agent) for agent in situations.seen]
+            axes += [_thresholds_axis(_told_apart(pricer), agent) for agent in pricer.seen]
         elif name == FIRST_ANSWER:
             axes.append(_answers_axis(pricer))
         elif name in NUMBERS:
             axes.append(_number_axis(name, pricer))
     return axes
+
+
+def _told_apart(pricer: Pricer) -> NetworkPricer:
+    assert isinstance(pricer, NetworkPricer), "a crowd is played only where its rule counts"
+    return pricer
+
+
+def _shown_axes(situations: Situations) -> list[Axis]:
+    code = np.array([_STATE_ORDER.index(state) for state in SHOWN])
+    return [
+        Axis(f"{agent} shown", 3, code[situations.states[:, k]], _states(agent))
+        for k, agent in enumerate(situations.seen)
+    ]
 
 
 def _step_range(horizon: int) -> Callable[[Row, int, int], Row]:
@@ -82,7 +93,7 @@ def _states(agent: str) -> Callable[[Row, int, int], Row]:
     return says
 
 
-def _thresholds_axis(pricer: Pricer, agent: str) -> Axis:
+def _thresholds_axis(pricer: NetworkPricer, agent: str) -> Axis:
     """Named thresholds in the order of the sum of their two beliefs."""
     sums: dict[str, float] = {}
     for setting in pricer.settings:

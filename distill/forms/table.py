@@ -14,8 +14,9 @@ from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms import Distilled, Wanted
 from thumbwright.distill.forms.axes import Axis, grid_axes
 from thumbwright.distill.forms.boxes import Box, Partition, best_partitions
+from thumbwright.distill.forms.choosing import chosen, valued_row
 from thumbwright.distill.forms.grouping import best_groupings
-from thumbwright.distill.rules import Row, Rule
+from thumbwright.distill.rules import Rule
 from thumbwright.distill.situations import values_of
 from thumbwright.exact.arrays import FloatArray, sums
 from thumbwright.exact.engine import Progress
@@ -26,12 +27,6 @@ NAME = "table"
 MOST_BOXES = 3_000_000
 """More boxes than this times the rows wanted take too long to search exactly."""
 
-DIGITS = 10
-"""Significant digits of a value: far more than matter, and the same on every machine."""
-
-ROUNDED = 12
-"""Decimals beyond which a value is rounding only."""
-
 
 def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> Distilled:
     """The most informative table of at most ``wanted.rows`` rows.
@@ -39,56 +34,36 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
     Raises ModelError where the grid of inputs is too large for the exact search.
     """
     axes = grid_axes(pricer, wanted.inputs)
-    boxes = int(np.prod([axis.cells * (axis.cells + 1) // 2 for axis in axes], dtype=float))
-    if boxes * wanted.rows > MOST_BOXES:
-        raise ModelError(
-            f"the table would be searched over {boxes:,} boxes of situations, which takes too "
-            'long; look at fewer neighbours, shorten the horizon, drop "step" from the inputs or '
-            'leave "table" out of the forms'
-        )
+    refuse_too_large(axes, wanted.rows, NAME)
     if progress:
         progress("table", 0, 1)
     plus, minus = cell_masses(pricer, axes)
     partitions = best_partitions(plus, minus, wanted.rows)
     situations = pricer.situations
     ceiling = best_groupings(situations.plus, situations.minus, wanted.rows)
-    chosen, notes = _choose(pricer, wanted, axes, partitions, plus, minus)
-    rule = as_rule(pricer, axes, chosen, plus, minus)
+    picked, notes = chosen(
+        pricer, wanted, partitions, lambda p: as_rule(pricer, axes, p, plus, minus), NAME
+    )
+    rule = as_rule(pricer, axes, picked, plus, minus)
     if progress:
         progress("table", 1, 1)
     return Distilled(
         rule,
-        situations.information_kept(chosen.gain),
-        situations.information_kept(float(ceiling[len(chosen.boxes) - 1])),
+        situations.information_kept(picked.gain),
+        situations.information_kept(float(ceiling[len(picked.boxes) - 1])),
         notes,
     )
 
 
-def _choose(
-    pricer: Pricer,
-    wanted: Wanted,
-    axes: list[Axis],
-    partitions: tuple[Partition, ...],
-    plus: FloatArray,
-    minus: FloatArray,
-) -> tuple[Partition, tuple[str, ...]]:
-    """The most rows allowed, or the fewest within the accuracy that may be lost."""
-    largest = partitions[-1]
-    if wanted.max_accuracy_lost is not None:
-        exact = pricer.accuracy(pricer.exact_tally)
-        for partition in partitions:
-            rule = as_rule(pricer, axes, partition, plus, minus)
-            if exact - pricer.accuracy(pricer.rule_tally(rule)) <= wanted.max_accuracy_lost:
-                return partition, ("The fewest rows within the accuracy that may be lost.",)
-        return largest, (
-            f"No table of up to {wanted.rows} rows stays within the accuracy that may be lost; "
-            "this is the most informative one.",
+def refuse_too_large(axes: list[Axis], rows: int, form: str) -> None:
+    """Raise ModelError where the exact search over this grid would take too long."""
+    boxes = int(np.prod([axis.cells * (axis.cells + 1) // 2 for axis in axes], dtype=float))
+    if boxes * rows > MOST_BOXES:
+        raise ModelError(
+            f"the {form} would be searched over {boxes:,} boxes of situations, which takes too "
+            'long; look at fewer neighbours, shorten the horizon, drop "step" from the inputs or '
+            f'leave "{form}" out of the forms'
         )
-    if len(largest.boxes) < wanted.rows:
-        return largest, (
-            f"{len(largest.boxes)} rows already say all that a table of these inputs can say.",
-        )
-    return largest, ()
 
 
 def cell_masses(pricer: Pricer, axes: list[Axis]) -> tuple[FloatArray, FloatArray]:
@@ -106,18 +81,14 @@ def as_rule(
 ) -> Rule:
     """A partition of the grid as rows with their best values."""
     rows = []
-    for box in sorted(partition.boxes, key=lambda box: _print_order(axes, box)):
+    for box in sorted(partition.boxes, key=lambda box: print_order(axes, box)):
         where = tuple(slice(start, stop) for start, stop in box)
         value = values_of(plus[where].sum(keepdims=True), minus[where].sum(keepdims=True))
-        rounded = round(float(value.flat[0]), ROUNDED)
-        row = Row(value=float(f"{rounded:.{DIGITS}g}"))
-        for axis, (start, stop) in zip(axes, box, strict=True):
-            row = axis.says(row, start, stop)
-        rows.append(row)
+        rows.append(valued_row(axes, box, float(value.flat[0])))
     return Rule(NAME, pricer.agent, pricer.seen, tuple(rows))
 
 
-def _print_order(axes: list[Axis], box: Box) -> tuple[tuple[int, int], ...]:
+def print_order(axes: list[Axis], box: Box) -> tuple[tuple[int, int], ...]:
     """Shown states before steps: rows are looked up by what is seen, then by when."""
     ranges = dict(zip((axis.name for axis in axes), box, strict=True))
     return tuple(ranges[name] for name in sorted(ranges, key=lambda name: name == "step"))

@@ -8,6 +8,7 @@ from typing import Any
 from thumbwright.distill.findings import Figures, Findings, FormResult
 from thumbwright.distill.rules import FIRST_ANSWERS, NUMBERS, SHOWN, Row
 from thumbwright.distill.sheet.chart import chart
+from thumbwright.distill.sheet.nested import nested
 from thumbwright.distill.sheet.parts import Grid, Modeller, Note
 from thumbwright.distill.sheet.voice import Voice, own_evidence
 from thumbwright.distill.sheet.words import clean, five, listing, signed
@@ -15,7 +16,12 @@ from thumbwright.distill.sheet.words import clean, five, listing, signed
 FORM_TITLES = {
     "lines": "The lines: bars on the own count",
     "table": "The table: values in place of what others show",
+    "table-by-risk": "The table by risk: boxes and values chosen for least risk",
+    "tree": "The tree: values found by one cut after another",
 }
+
+IN_SENTENCES = ("tree",)
+"""Forms whose rows are read as nested sentences, not as a table."""
 
 
 def modeller(findings: Findings, voice: Voice) -> Modeller:
@@ -23,7 +29,16 @@ def modeller(findings: Findings, voice: Voice) -> Modeller:
     return Modeller(
         intro=_intro(findings),
         chart=chart(findings, voice),
-        rules=tuple(_rule(name, result, findings, voice) for name, result in _forms(findings)),
+        rules=tuple(
+            _rule(name, result, findings, voice)
+            for name, result in _forms(findings)
+            if name not in IN_SENTENCES
+        ),
+        said=tuple(
+            nested(FORM_TITLES[name], result, findings, voice)
+            for name, result in _forms(findings)
+            if name in IN_SENTENCES
+        ),
         rule_notes=tuple(
             Note(f"{name}:", " ".join(_rule_notes(result))) for name, result in _forms(findings)
         ),

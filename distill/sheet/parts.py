@@ -160,12 +160,29 @@ class Chart:
 
 
 @dataclass(frozen=True)
+class Sentence:
+    """A sentence, and those that hold under it."""
+
+    text: str
+    inner: tuple[Sentence, ...]
+
+
+@dataclass(frozen=True)
+class Nested:
+    """A rule said in nested sentences."""
+
+    caption: str
+    sentences: tuple[Sentence, ...]
+
+
+@dataclass(frozen=True)
 class Modeller:
     """The back of the sheet."""
 
     intro: str
     chart: Chart | None
     rules: tuple[Grid, ...]
+    said: tuple[Nested, ...]
     rule_notes: tuple[Note, ...]
     figures: Grid
     figure_notes: tuple[str, ...]

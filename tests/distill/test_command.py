@@ -285,12 +285,14 @@ def test_limits_reach_the_run(patch: Patch) -> None:
 
 
 def test_a_case_too_large_for_the_memory_is_refused(capsys: pytest.CaptureFixture[str]) -> None:
-    Path("crowd.toml").write_text(CROWD, "utf-8")
-    for verb in ("check", "outcomes", "sheet"):
+    told_apart = CROWD + 'inputs = ["step", "shown"]\n'
+    Path("crowd.toml").write_text(told_apart, "utf-8")
+    for verb in ("check", "jumps", "sheet"):
         assert main([verb, "crowd.toml", "--memory", "0.1"]) == 2
         told = capsys.readouterr()
         assert "more than the" in told.err
         assert "Ways out" in told.err
+        assert 'inputs = ["step", "plus_shown", "minus_shown"]' in told.err
         assert told.out == ""
     assert [path.name for path in Path().iterdir()] == ["crowd.toml"]
 

@@ -20,9 +20,10 @@ from tests.distill.pricers import (
 from tests.exact.comparing import COIN
 from tests.slow import group as slow, pair_walk as walk, simulate as sim
 from tests.slow.enumerate import enumerate_group, play_rule
-from thumbwright.distill.costs import Pricer, Tally, average
 from thumbwright.distill.forms import Wanted, table
+from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.rules import SHOWN, Row, Rule
+from thumbwright.distill.tallies import Tally, average
 from thumbwright.exact.engine import solve
 from thumbwright.exact.evidence.binary import coin
 from thumbwright.exact.group import Agent, Group, Thresholds, same_thresholds
@@ -110,7 +111,7 @@ def test_price_in_a_mutual_pair_agrees_with_simulation(exchange: str) -> None:
     )
 
 
-def exact_table(pricer: Pricer) -> Rule:
+def exact_table(pricer: NetworkPricer) -> Rule:
     """One row per step and shown state, with the exact worth there."""
     s = pricer.situations
     rows = {}
@@ -169,7 +170,7 @@ def test_information_is_not_benefit() -> None:
         rows = tuple(Row(shows=shows(state), value=v * ALPHA) for state, v in values)
         rule = Rule("table", "a1", ("a0",), rows)
         s = pricer.situations
-        row = s.rows_of(rule, pricer.settings)
+        row = s.rows_of(rule)
         plus, minus = s.pooled(row, 3)
         both = plus + minus
         saved = sum(float(m @ np.log(2 * m / both)) for m in (plus, minus))
@@ -268,7 +269,7 @@ def test_settings_are_averaged() -> None:
 # --- benefit -------------------------------------------------------------------------------
 
 
-def useless(losses: Losses | None) -> Pricer:
+def useless(losses: Losses | None) -> NetworkPricer:
     """The neighbour's evidence says nothing, so it never answers."""
     bars = same_thresholds(Thresholds(-3 * ALPHA, 3 * ALPHA))
     agents = (Agent("a0", coin(0.5), bars), Agent("a1", coin(0.6), bars, ("a0",)))
@@ -308,7 +309,7 @@ def test_inferred_costs_come_with_the_benefit_at_the_ends() -> None:
     cone = costs_behind(own.evidence, own.thresholds[0][1], 0.0, 40)
     assert cone is not None
     built = pricer_of_group(group, "a1")
-    pricer = Pricer.build("a1", built.settings, cone.middle, cone)
+    pricer = NetworkPricer.build("a1", built.settings, cone.middle, cone)
     tally = pricer.rule_tally(CARD)
     basis = pricer.basis(tally)
     assert basis is not None
