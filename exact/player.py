@@ -16,6 +16,7 @@ import numpy as np
 
 from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.group import Agent, Group
+from thumbwright.exact.store import Weights
 from thumbwright.exact.walk import NEAR, TIE, Walk, grown
 
 
@@ -61,6 +62,17 @@ class Moment:
     log_shown: FloatArray
     log_before: FloatArray
     log_after: FloatArray
+
+    def turned(self, turn: tuple[int, ...]) -> Moment:
+        """The same with the axes of the seen agents in another order."""
+        with_answer = (0, *(1 + axis for axis in turn))
+        logs = (self.log_shown, self.log_before, self.log_after)
+        return Moment(
+            self.step,
+            self.round,
+            np.transpose(self.value, turn),
+            *(np.transpose(log, with_answer) for log in logs),
+        )
 
 
 @dataclass(frozen=True)
@@ -133,8 +145,7 @@ class Track:
     ``answers`` has shape (2, 2, T + 1): axis 0 to plus, to minus; axis 1 given plus, given minus;
     the probability of committing at each step. ``leaning`` has shape (3, 2): of those undecided at
     the horizon, the probability that the belief favours plus, favours minus, or neither.
-    ``log_weights`` has shape (2, events, events of each seen agent): the log weight of each display
-    event at the horizon, given plus and given minus, when those seen are made to show theirs.
+    ``weights`` holds the weight of each display event at the horizon; it is None before.
     """
 
     agent: Agent
@@ -143,13 +154,32 @@ class Track:
     answers: FloatArray
     leaning: FloatArray
     near_tie: float = 0.0
-    log_weights: FloatArray = field(default_factory=lambda: np.zeros((2, 1)))
+    weights: Weights | None = None
 
     @property
     def undecided(self) -> FloatArray:
         """Probability of being undecided at the horizon, given plus and given minus."""
         total: FloatArray = self.leaning.sum(axis=0)
         return total
+
+    def turned(self, agent: Agent, turn: tuple[int, ...]) -> Track:
+        """The same for an agent that is like this one.
+
+        Parameters
+        ----------
+        agent : Agent
+        turn : tuple of int
+            Per agent that it sees, the axis of the one that stands for it here.
+        """
+        in_order = turn == tuple(range(len(turn)))
+        return replace(
+            self,
+            agent=agent,
+            moments=[*self.moments] if in_order else [one.turned(turn) for one in self.moments],
+            answers=self.answers.copy(),
+            leaning=self.leaning.copy(),
+            weights=self.weights.turned(turn) if self.weights else None,
+        )
 
 
 def worth(log_probability: FloatArray) -> FloatArray:
