@@ -61,6 +61,7 @@ class Stage:
         likeness: Likeness | None = None,
     ) -> None:
         self._group, self._drop, self._most = group, drop, most_entries
+        self._settles = group.exchange == "settle"
         self._likeness = likeness or each_for_itself(group)
         self.leads = self._likeness.leads
         self.contractions = Contractions(group, self._likeness)
@@ -97,7 +98,7 @@ class Stage:
         for i in self.leads:
             self.players[i].observe()
         round_ = 0
-        while self._round(step, round_) and self._group.exchange == "settle":
+        while self._round(step, round_) and self._settles:
             round_ += 1
 
     def _round(self, step: int, round_: int) -> bool:
@@ -108,6 +109,9 @@ class Stage:
         self._changed = {i for i, lead in enumerate(self._likeness.lead) if shown[lead][1]}
         if self._most < math.inf and self._entries() > self._most:
             raise TooLarge
+        if step == self._group.horizon and not (self._changed and self._settles):
+            for i in self.leads:
+                self.players[i].lean()
         for i in self.leads:
             for axis, other in enumerate(self._group.sees[i]):
                 if self._gained[other]:
