@@ -84,6 +84,18 @@ def exact_member(showing: Showing) -> Act:
     return Act(showing.worth)
 
 
+def reached(walk: Walk, prior: float, act: Act, size: int) -> tuple[BoolArray, BoolArray]:
+    """Which rows and columns of a walk of ``size`` histories an act has answer plus, and minus."""
+    if act.minus_at is None or act.plus_at is None:
+        value = np.broadcast_to(np.asarray(act.value, dtype=float), (size,))
+        belief = prior + walk.tally[:, None] + value[None, :]
+        with np.errstate(invalid="ignore"):
+            return belief >= walk.high[:, None] - TIE, belief <= walk.low[:, None] + TIE
+    count = walk.count[:, None]
+    low, high = (np.broadcast_to(bar, (size,)) for bar in (act.minus_at, act.plus_at))
+    return count >= high, count <= low
+
+
 class _Adopter:
     """One walk along all histories of a part."""
 
@@ -162,22 +174,12 @@ class _Adopter:
         if not walk.observed:
             # Nobody answers before the first observation, whatever is shown.
             return np.zeros((2, 2, size)), None
-        plus, minus = self._reached(act, size)
+        plus, minus = reached(walk, self._prior, act, size)
         row = None if act.row is None else np.broadcast_to(act.row, (size,))
         gone = walk.divide(plus, minus)[:2]
         if self._certain is not None:
             gone, self._certain = np.logaddexp(gone, self._certain), None
         return np.stack([self._weigh(showing, one) for one in gone]), row
-
-    def _reached(self, act: Act, size: int) -> tuple[BoolArray, BoolArray]:
-        walk = self._walk
-        if act.minus_at is None or act.plus_at is None:
-            belief = self._prior + walk.tally[:, None] + self._value[None, :]
-            with np.errstate(invalid="ignore"):
-                return belief >= walk.high[:, None] - TIE, belief <= walk.low[:, None] + TIE
-        count = walk.count[:, None]
-        low, high = (np.broadcast_to(bar, (size,)) for bar in (act.minus_at, act.plus_at))
-        return count >= high, count <= low
 
     def _weigh(self, showing: Showing, log_own: FloatArray) -> FloatArray:
         return np.exp(log_own + showing.log_shown)
