@@ -18,6 +18,8 @@ MODULES = (
     "sheet_md",
     "rule_csv",
     "rule_json",
+    "rule_schema",
+    "rule_dmn",
     "code_python",
     "code_r",
     "code_javascript",

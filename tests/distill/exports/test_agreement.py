@@ -10,7 +10,7 @@ from typing import Any
 
 import pytest
 
-from tests.distill.exports import agreement, code_engines, hand_built
+from tests.distill.exports import agreement, code_engines, dmn_engines, hand_built
 from tests.distill.exports.agreement import Answers, Asked, Engine, Spoil
 from thumbwright.distill.code.inputs import Part
 from thumbwright.distill.exports import render_all
@@ -102,6 +102,7 @@ ENGINES = (
             Spoil("a state", r'\[\s*"undecided"\s*\]', '["minus"]'),
         ),
     ),
+    *dmn_engines.SHARED,
     *code_engines.ENGINES,
 )
 
