@@ -145,7 +145,7 @@ def test_sheet(
     assert main(["sheet", "frost-watch", *words]) == 0
     assert asked == [("frost-watch", folder, None, Limits(), None, False)]
     assert main(["sheet", "frost-watch", "--templates", ".", "--pdf"]) == 0
-    assert asked[1][-2:] == (Path("."), True)
+    assert asked[1][-2:] == (Path(), True)
     capsys.readouterr()
     assert main(["sheet", "frost-watch", *words]) == 0
     assert capsys.readouterr() == ("done\n", "")
