@@ -42,7 +42,10 @@ class Expression:
 
 @dataclass(frozen=True)
 class Leaf(Expression):
-    """The weights of one agent; where it sees the agent ``held``, that one is undecided."""
+    """The weights of one agent; where it sees the agent that is held, that one is undecided.
+
+    ``agent`` is whoever was worked out: the agent itself, or one that it is like.
+    """
 
     agent: int
     where: tuple[slice | int, ...]

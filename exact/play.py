@@ -247,6 +247,7 @@ def _against(solution: Solution, position: int, reader: Reader) -> Track:
             player.observe()
             step = moment.step
         player.decide(moment.step, moment.round, seen, moment.log_shown)
+    player.lean()
     return player.track
 
 

@@ -16,6 +16,7 @@ import numpy as np
 
 from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.group import Agent, Group
+from thumbwright.exact.store import Weights
 from thumbwright.exact.walk import NEAR, TIE, Walk, grown
 
 
@@ -61,6 +62,17 @@ class Moment:
     log_shown: FloatArray
     log_before: FloatArray
     log_after: FloatArray
+
+    def turned(self, turn: tuple[int, ...]) -> Moment:
+        """The same with the axes of the seen agents in another order."""
+        with_answer = (0, *(1 + axis for axis in turn))
+        logs = (self.log_shown, self.log_before, self.log_after)
+        return Moment(
+            self.step,
+            self.round,
+            np.transpose(self.value, turn),
+            *(np.transpose(log, with_answer) for log in logs),
+        )
 
 
 @dataclass(frozen=True)
@@ -133,8 +145,7 @@ class Track:
     ``answers`` has shape (2, 2, T + 1): axis 0 to plus, to minus; axis 1 given plus, given minus;
     the probability of committing at each step. ``leaning`` has shape (3, 2): of those undecided at
     the horizon, the probability that the belief favours plus, favours minus, or neither.
-    ``log_weights`` has shape (2, events, events of each seen agent): the log weight of each display
-    event at the horizon, given plus and given minus, when those seen are made to show theirs.
+    ``weights`` holds the weight of each display event at the horizon; it is None before.
     """
 
     agent: Agent
@@ -143,13 +154,32 @@ class Track:
     answers: FloatArray
     leaning: FloatArray
     near_tie: float = 0.0
-    log_weights: FloatArray = field(default_factory=lambda: np.zeros((2, 1)))
+    weights: Weights | None = None
 
     @property
     def undecided(self) -> FloatArray:
         """Probability of being undecided at the horizon, given plus and given minus."""
         total: FloatArray = self.leaning.sum(axis=0)
         return total
+
+    def turned(self, agent: Agent, turn: tuple[int, ...]) -> Track:
+        """The same for an agent that is like this one.
+
+        Parameters
+        ----------
+        agent : Agent
+        turn : tuple of int
+            Per agent that it sees, the axis of the one that stands for it here.
+        """
+        in_order = turn == tuple(range(len(turn)))
+        return replace(
+            self,
+            agent=agent,
+            moments=[*self.moments] if in_order else [one.turned(turn) for one in self.moments],
+            answers=self.answers.copy(),
+            leaning=self.leaning.copy(),
+            weights=self.weights.turned(turn) if self.weights else None,
+        )
 
 
 def worth(log_probability: FloatArray) -> FloatArray:
@@ -165,8 +195,8 @@ def by_value(scene: Scene, value: FloatArray) -> Reading:
     A belief within TIE of a threshold has reached it. Nothing commits where the value is nan.
     """
     walk, own = scene.walk, scene.prior + scene.walk.tally
-    plus = value[None, :] >= (walk.high - own - TIE)[:, None]
-    minus = value[None, :] <= (walk.low - own + TIE)[:, None]
+    plus = value >= (walk.high - own - TIE)[:, None]
+    minus = value <= (walk.low - own + TIE)[:, None]
     return Reading(plus, minus, value, compared=True)
 
 
@@ -260,7 +290,8 @@ class Player:
         if lost is not None:
             self._note_doubts(reading, part, columns, lost)
         before, gone = self._log_undecided, None
-        if self._certain is not None or reading.plus.any() or reading.minus.any():
+        commits = np.count_nonzero(reading.plus) or np.count_nonzero(reading.minus)
+        if commits or self._certain is not None:
             if reading.compared:
                 self._note_near_ties(reading, part, columns)
             divided = self.walk.divide(reading.plus, reading.minus, columns)
@@ -278,11 +309,13 @@ class Player:
         self.track.moments.append(
             Moment(step, round_, self._value, log_probability, before, self._log_undecided)
         )
-        if step == self.horizon:
-            self._lean(self._value.ravel(), flat)
         if gone is None:
             return None
-        return _updated(np.full((2, 2, *self.shape), -np.inf), columns, gone)
+        if columns is None:
+            return gone.reshape(2, 2, *self.shape)
+        everywhere = np.full((2, 2, *self.shape), -np.inf)
+        everywhere.reshape(2, 2, -1)[..., columns] = gone
+        return everywhere
 
     def wait(self, step: int, round_: int) -> None:
         """A round in which nothing has changed for the agent, whose reader is steady."""
@@ -296,11 +329,12 @@ class Player:
     ) -> None:
         own = self.prior + self.walk.tally
         for mask, threshold in ((reading.plus, self.walk.high), (reading.minus, self.walk.low)):
-            gap = np.abs(reading.value[None, :] - (threshold - own)[:, None])
-            near = gap <= TIE
-            if not near.any():
+            gap = reading.value - (threshold - own)[:, None]
+            np.abs(gap, out=gap)
+            near = (gap <= TIE) & (gap > NEAR)
+            if not np.count_nonzero(near):
                 continue
-            near &= mask & (gap > NEAR)
+            near &= mask
             if near.any():
                 mass = np.exp(self.walk.log_where(near, columns) + log_probability).sum(axis=1)
                 self.track.near_tie += float(
@@ -327,9 +361,13 @@ class Player:
             mass = np.exp(self.walk.log_where(unsure, columns) + log_probability)
             self.doubtful += mass.sum(axis=1)
 
-    def _lean(self, value: FloatArray, flat: FloatArray) -> None:
-        """Of those still undecided: which answer does the belief favour at this round?"""
-        belief = (self.prior + self.walk.tally)[:, None] + value[None, :]
+    def lean(self) -> None:
+        """Note of those still undecided which answer the belief favours at the last round.
+
+        To be called after it, and before the agent is told of what was shown in it.
+        """
+        flat = self.track.moments[-1].log_shown.reshape(2, -1)
+        belief = (self.prior + self.walk.tally)[:, None] + self._value.ravel()
         self.track.leaning[:] = [
             np.exp(self.walk.log_where(mask) + flat).sum(axis=1) for mask in leanings(belief)
         ]

@@ -118,7 +118,7 @@ class Walk:
 
     def _move_each(self) -> None:
         """One shifted addition per value: for evidence with few values, on any lattice."""
-        codes = np.unique((self._code[:, None] + self._moves[None, :]).ravel())
+        codes = _distinct((self._code[:, None] + self._moves[None, :]).ravel())
         mass = np.zeros((len(codes), self.mass.shape[1]))
         for move, weight in zip(self._moves, self._root_mass, strict=True):
             target = np.searchsorted(codes, self._code + move)
@@ -170,7 +170,7 @@ class Walk:
 
     def log_where(self, rows: BoolArray, columns: IntArray | None = None) -> FloatArray:
         """Log mass of the chosen rows and columns, shape (2, C); ``rows`` has shape (R, C)."""
-        return self._log(np.where(rows, self._of(columns), 0.0), columns)
+        return self._log(self._of(columns) * rows, columns)
 
     def cut(self, plus: BoolArray, minus: BoolArray, columns: IntArray | None = None) -> FloatArray:
         """Take out what commits to plus and to minus.
@@ -193,9 +193,9 @@ class Walk:
     ) -> FloatArray:
         """As :meth:`cut`, with a third entry on axis 0: the log weight of what is left."""
         mass = self._of(columns)
-        parts = np.zeros((3, *mass.shape))
+        parts = np.empty((3, *mass.shape))
         for part, mask in zip(parts, (plus, minus, ~(plus | minus)), strict=True):
-            np.copyto(part, mass, where=mask)
+            np.multiply(mass, mask, out=part)  # much faster than copying where the mask holds
         divided = self._log(parts, columns)
         if columns is None:
             self.mass = parts[2]
@@ -235,5 +235,18 @@ def grown(array: NDArray[Kind], axis: int, extra: int) -> NDArray[Kind]:
     """``array`` with ``extra`` copies of its slice 0 (undecided) appended along ``axis``."""
     if not extra:
         return array
-    first = np.take(array, [0] * extra, axis=axis)
-    return np.concatenate([array, first], axis=axis)
+    lengths, used = [*array.shape], array.shape[axis]
+    lengths[axis] += extra
+    longer = np.empty(lengths, dtype=array.dtype)
+    before = (slice(None),) * axis
+    longer[(*before, slice(0, used))] = array
+    longer[(*before, slice(used, None))] = array[(*before, slice(0, 1))]
+    return longer
+
+
+def _distinct(codes: IntArray) -> IntArray:
+    """The different ones, ascending; for the few there are much faster than ``np.unique``."""
+    codes.sort()
+    fresh = np.ones(len(codes), dtype=bool)
+    np.not_equal(codes[1:], codes[:-1], out=fresh[1:])
+    return codes[fresh]

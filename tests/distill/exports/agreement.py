@@ -97,11 +97,15 @@ Run = Callable[[Path, Findings, Asked], Answers]
 
 @dataclass(frozen=True)
 class Spoil:
-    """How to change a file so that its rule is another one: what to find, and what to put."""
+    """How to change a file so that its rule is another one: what to find, and what to put.
+
+    ``on`` names the findings of ``hand_built.py`` whose file is spoilt.
+    """
 
     what: str
     pattern: str
     replacement: str
+    on: str = "bars"
 
     def applied(self, text: str) -> str:
         changed, times = re.subn(self.pattern, self.replacement, text, count=1)
@@ -121,7 +125,7 @@ class Engine:
         The export that it reads, which is spoilt in turn.
     run : Run
     spoils : tuple of Spoil
-        For the findings "bars", whose first row is ``step <= 2, upper undecided: -3, 3``.
+        Mostly for "bars", whose first row is step 2 or less, upper undecided: -3, 3.
     ulps : int
         By how many units in the last place a worth may be off: 0 but for R, whose parser of
         decimals is documented to be off by as much.

@@ -10,7 +10,7 @@ from typing import Any
 
 import pytest
 
-from tests.distill.exports import agreement, hand_built
+from tests.distill.exports import agreement, code_engines, dmn_engines, hand_built
 from tests.distill.exports.agreement import Answers, Asked, Engine, Spoil
 from thumbwright.distill.code.inputs import Part
 from thumbwright.distill.exports import render_all
@@ -117,6 +117,8 @@ ENGINES = (
             Spoil("a state", r'\[\s*"undecided"\s*\]', '["minus"]'),
         ),
     ),
+    *dmn_engines.SHARED,
+    *code_engines.ENGINES,
 )
 
 
@@ -162,7 +164,7 @@ SPOILT = [(engine, spoil) for engine in ENGINES for spoil in engine.spoils]
 )
 def test_a_spoilt_file_is_noticed(engine: Engine, spoil: Spoil, tmp_path: Path) -> None:
     ready(engine)
-    findings, files, asked, expected = prepared("bars")
+    findings, files, asked, expected = prepared(spoil.on)
     spoilt = {**files, engine.file: spoil.applied(files[engine.file])}
     got = engine.run(put(spoilt, tmp_path), findings, asked)
     assert agreement.disagreements(expected, got, asked, engine)
