@@ -204,7 +204,8 @@ def worth_curves(pricer: Pricer, case: Case) -> tuple[WorthCurve, ...]:
                 numbers = [_clean(x) for x in (pooled[0], worths.min(), worths.max())]
             for column, number in zip(columns, numbers, strict=True):
                 column.append(number)
-        curves.append(WorthCurve(label, states, steps, *map(tuple, columns), counts))
+        worth, low, high = map(tuple, columns)
+        curves.append(WorthCurve(label, states, steps, worth, low, high, counts))
     return tuple(curves)
 
 

@@ -133,7 +133,7 @@ class Weights:
         return value, np.divide(np.sqrt(variance), bottom, out=np.full(2, np.nan), where=bottom > 0)
 
     def total_error(self, x: FloatArray) -> float:
-        """Error of the sum of both means of x, shape (2, H), the same histories serving for both."""
+        """Error of the sum of both means of x, shape (2, H); the same histories serve for both."""
         if not self._sampled:
             return 0.0
         whole = self._weight.sum(axis=1, keepdims=True)

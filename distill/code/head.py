@@ -9,7 +9,8 @@ import textwrap
 import unicodedata
 
 from thumbwright.distill.cautions import cautions
-from thumbwright.distill.code.inputs import THRESHOLDS, Part, Parts
+from thumbwright.distill.code.inputs import Part, Parts
+from thumbwright.distill.exports.rule_csv import THRESHOLDS
 from thumbwright.distill.findings import Figures, Findings
 from thumbwright.distill.rules import SHOWN
 

@@ -72,8 +72,8 @@ def searchable(
 
 def _coarse(axis: Axis, plus: FloatArray, minus: FloatArray, most: int) -> Axis:
     """The axis with its cells put together into at most ``most`` ranges."""
-    masses = [sums(axis.where, side, axis.cells) for side in (plus, minus)]
-    edges = best_ranges(*masses, most)
+    up, down = (sums(axis.where, side, axis.cells) for side in (plus, minus))
+    edges = best_ranges(up, down, most)
 
     def says(row: Row, start: int, stop: int) -> Row:
         return axis.says(row, int(edges[start]), int(edges[stop]))
