@@ -164,3 +164,9 @@ class Findings:
     caveats: tuple[str, ...]
     near_tie_mass: float
     example: tuple[dict[str, Any], ...]
+
+    def _repr_html_(self) -> str:
+        """Tables and the chart, for notebooks."""
+        from thumbwright.distill.sheet.notebook import findings_html
+
+        return findings_html(self)

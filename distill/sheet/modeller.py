@@ -13,7 +13,7 @@ from thumbwright.distill.sheet.chart import chart
 from thumbwright.distill.sheet.nested import nested
 from thumbwright.distill.sheet.parts import Grid, Modeller, Note
 from thumbwright.distill.sheet.voice import Voice, own_evidence
-from thumbwright.distill.sheet.words import clean, five, listing, signed
+from thumbwright.distill.sheet.words import clean, five, listing, range_words, signed
 
 FORM_TITLES = {
     "lines": "The lines: bars on the own count",
@@ -82,23 +82,15 @@ def _shown(row: Row, findings: Findings, voice: Voice) -> str:
         states = [state for state in SHOWN if state in row.shows.get(agent, SHOWN)]
         text = "any" if len(states) == len(SHOWN) else " or ".join(states)
         parts.append(f"{voice.names[agent]} {text}")
-    if row.ranges or row.first_answer is not None:
-        parts = [part for part in parts if not part.endswith(" any")]
-    parts += [_range(name, row) for name in NUMBERS if name in row.ranges]
+    if not row.shows:
+        parts = []
+    numbers = [name for name in NUMBERS if name in row.ranges]
+    parts += [f"{name.replace('_', ' ')} {range_words(*row.ranges[name])}" for name in numbers]
     if row.first_answer is not None:
         said = [answer for answer in FIRST_ANSWERS if answer in row.first_answer]
         parts.append(f"first answer {' or '.join(said)}")
     habits = voice.habits(row.thresholds)
-    return "; ".join([*parts, habits] if habits else parts)
-
-
-def _range(name: str, row: Row) -> str:
-    """Say the least and greatest of a number that a row accepts."""
-    least, most = row.ranges[name]
-    words = name.replace("_", " ")
-    if most is None:
-        return f"{words} any" if least is None else f"{words} {least} or more"
-    return f"{words} {most}" if least == most else f"{words} {least or 0} to {most}"
+    return "; ".join([*parts, habits] if habits else parts) or "any"
 
 
 def _rule(name: str, result: FormResult, findings: Findings, voice: Voice) -> Grid:

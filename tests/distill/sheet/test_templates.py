@@ -58,7 +58,7 @@ def test_every_field_is_written_down_and_no_other() -> None:
 
 
 def test_every_template_of_the_sheet_is_written_down() -> None:
-    of_the_sheet = {name for name in template_names() if name.startswith("sheet")}
+    of_the_sheet = {name for name in template_names() if name.startswith(("sheet", "notebook"))}
     assert set(written_templates()) == of_the_sheet
 
 
