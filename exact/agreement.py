@@ -17,7 +17,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from thumbwright.exact.arrays import BoolArray, FloatArray
-from thumbwright.exact.crowd_adopt import CrowdPolicy, reached
+from thumbwright.exact.crowd_policy import CrowdPolicy, reached
 from thumbwright.exact.crowd_shown import Showing, Shown
 from thumbwright.exact.engine import Moment, Solution
 from thumbwright.exact.group import Agent
