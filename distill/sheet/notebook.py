@@ -33,7 +33,7 @@ def rule_grid(rule: Rule) -> Grid:
     rows = rule.rows
     head, columns = ["row"], [[str(place + 1) for place in range(len(rows))]]
     head.append("steps")
-    columns.append([range_words(row.step_from or 1, row.step_to) for row in rows])
+    columns.append([range_words(row.step_from or 1, row.step_to, "on") for row in rows])
     for agent in rule.seen:
         if any(agent in row.shows for row in rows):
             head.append(f"{agent} shows")

@@ -24,14 +24,11 @@ def sheet(findings: Findings) -> Sheet:
     front = card(findings, words, kept)
     case = findings.case
     title = capital(words.plus).rstrip("?!. ") + "?"
-    owner = words.owner
-    if case.rule.agent == "any":
-        owner = f"any one of the {len(case.agents)}"
     made = Sheet(
-        page_title=f"{title} For {owner}",
+        page_title=f"{title} For {words.owner}",
         title=title,
         case_title=clean(case.title),
-        owner=owner,
+        owner=words.owner,
         watching=words.those,
         override=(
             f"Plain evidence, an alarm or an order: act on that. This {thing(front)} is for when"

@@ -53,7 +53,7 @@ def test_a_rule_shows_the_columns_that_it_uses() -> None:
     )
     counts = rule_grid(more.counts().forms["lines"].rule)
     assert counts.head[2:6] == ("plus shown", "minus shown", "steps since first", "first answer")
-    assert counts.rows[3][2:] == ("3 on", "any", "at most 6", "plus or both", "never", "-2")
+    assert counts.rows[3][2:] == ("3 or more", "any", "at most 6", "plus or both", "never", "-2")
     habits = rule_grid(more.habits().forms["lines"].rule)
     assert habits.head[2:5] == ("upper shows", "upper thresholds", "minus shown")
     nats = rule_grid(Rule("<b>", "mill", ("upper",), (Row(value=0.5), Row(value=None))))
