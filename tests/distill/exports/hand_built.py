@@ -160,5 +160,6 @@ FINDINGS: dict[str, Callable[[], Findings]] = {
     "odd ids": odd_ids,
     "frost-watch": lambda: starter("frost-watch"),
     "lot-inspection": lambda: starter("lot-inspection"),
+    "flock-alarm": lambda: starter("flock-alarm"),
 }
 """By name. "odd ids" has too many inputs for every combination of them to be asked."""
