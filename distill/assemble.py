@@ -31,10 +31,16 @@ class Limits:
         Display events of less probability than this are dropped; the dropped mass is stated.
     memory : float or None
         Bytes that a run may take; None is half of what is free.
+    histories : int or None
+        Public histories of a crowd to sample; None is to enumerate them where they are few enough.
+    seed : int
+        With which they are sampled.
     """
 
     drop: float = 0.0
     memory: float | None = None
+    histories: int | None = None
+    seed: int = 1
 
 
 NO_LIMITS = Limits()

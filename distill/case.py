@@ -52,8 +52,19 @@ __all__ = [
     "Words",
 ]
 
-Form = Literal["lines", "table"]
-Input = Literal["step", "shown", "thresholds"]
+Form = Literal["lines", "table", "table-by-risk", "tree"]
+Input = Literal[
+    "step",
+    "shown",
+    "thresholds",
+    "plus_shown",
+    "minus_shown",
+    "undecided_shown",
+    "steps_since_first",
+    "steps_since_last",
+    "came_first",
+    "first_answer",
+]
 
 FORMS: tuple[str, ...] = get_args(Form)
 """The forms a rule can be distilled into in this version."""
@@ -187,6 +198,23 @@ class RuleWanted(Part):
         default=None, description="Largest loss of accuracy, against exact play, to accept."
     )
 
+    def for_crowd(self) -> RuleWanted:
+        """What is left out, filled in for a crowd: its rule counts the others."""
+        defaults = {"inputs": ["step", "plus_shown", "minus_shown"], "forms": ["table"]}
+        left_out = {k: v for k, v in defaults.items() if k not in self.model_fields_set}
+        return self.model_copy(update=left_out)
+
+
+CROWD = 4
+"""So many agents who all see each other are counted by a rule unless it says what it looks at."""
+
+
+def is_crowd(agents: Mapping[str, Agent]) -> bool:
+    """Whether these are many, and everybody sees everybody else."""
+    return len(agents) >= CROWD and all(
+        set(agent.sees) == agents.keys() - {key} for key, agent in agents.items()
+    )
+
 
 class Costs(Part):
     """What wrong answers and time cost, in one unit of the user's choice."""
@@ -236,6 +264,8 @@ class CaseFile(_Shared):
         else:
             agents = {key: table.complete(key) for key, table in (self.agents or {}).items()}
         parts = {field: getattr(self, field) for field in _Shared.model_fields}
+        if is_crowd(agents):
+            parts["rule"] = self.rule.for_crowd()
         return Case(**parts, agents=agents, name=name, source=source)
 
 

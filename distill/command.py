@@ -11,10 +11,11 @@ from __future__ import annotations
 import os
 import signal
 import sys
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
+from functools import wraps
 from pathlib import Path
 from types import FrameType
-from typing import TYPE_CHECKING, NoReturn
+from typing import TYPE_CHECKING, Any, NoReturn
 
 import click
 
@@ -22,19 +23,54 @@ if TYPE_CHECKING:
     from thumbwright.distill.assemble import Limits
 
 CASE = click.argument("case", metavar="CASE")
-DROP = click.option(
-    "--drop",
-    type=click.FloatRange(0.0, 0.01),
-    default=0.0,
-    metavar="P",
-    help="Leave out display events less probable than P; what that can change is printed.",
+_LIMITS = (
+    click.option(
+        "--drop",
+        type=click.FloatRange(0.0, 0.01),
+        default=0.0,
+        metavar="P",
+        help="Leave out what is shown with a probability below P; what that can change is printed.",
+    ),
+    click.option(
+        "--memory",
+        type=click.FloatRange(0.001),
+        metavar="GB",
+        help="Memory a run may take; left out: half of what is free.",
+    ),
+    click.option(
+        "--histories",
+        type=click.IntRange(4),
+        metavar="N",
+        help="Sample N public histories of a crowd (an even number); left out: enumerate them, or "
+        "sample 4000 where they are too many.",
+    ),
+    click.option(
+        "--seed",
+        type=click.IntRange(0),
+        default=1,
+        metavar="N",
+        help="With which to sample; the same seed gives the same figures (1 where left out).",
+    ),
 )
-MEMORY = click.option(
-    "--memory",
-    type=click.FloatRange(0.001),
-    metavar="GB",
-    help="Memory a run may take; left out: half of what is free.",
-)
+
+
+def limited(verb: Callable[..., None]) -> Callable[..., None]:
+    """Give a verb the options that limit a run, handed to it together as ``limits``."""
+
+    @wraps(verb)
+    def with_limits(
+        drop: float, memory: float | None, histories: int | None, seed: int, **others: Any
+    ) -> None:
+        from thumbwright.distill.assemble import Limits
+
+        size = None if memory is None else memory * 1e9
+        verb(limits=Limits(drop, size, histories, seed), **others)
+
+    for option in reversed(_LIMITS):
+        with_limits = option(with_limits)
+    return with_limits
+
+
 JSON = click.option("--json", "as_json", is_flag=True, help="Print all figures as JSON.")
 TRACE = "THUMBWRIGHT_TRACE"
 """Environment variable: when set, a fault of the program itself is shown in full."""
@@ -88,9 +124,9 @@ def starter(name: str | None, file: Path | None) -> None:
 
 @verbs.command()
 @click.argument("case", metavar="CASE", required=False)
-@MEMORY
+@limited
 @click.option("--schema", is_flag=True, help="Print the JSON Schema of case files, for editors.")
-def check(case: str | None, memory: float | None, schema: bool) -> None:
+def check(case: str | None, limits: Limits, schema: bool) -> None:
     """Look through a case: every fault at once, or what will be computed and how long it takes."""
     if schema:
         from thumbwright.distill.case import Case
@@ -102,7 +138,7 @@ def check(case: str | None, memory: float | None, schema: bool) -> None:
     from thumbwright.distill import job
     from thumbwright.distill.reading import read_case
 
-    _show(job.check(read_case(case), _limits(0.0, memory)))
+    _show(job.check(read_case(case), limits))
 
 
 @verbs.command()
@@ -113,9 +149,15 @@ def check(case: str | None, memory: float | None, schema: bool) -> None:
     metavar="DIR",
     help="Folder to write into, made where it is missing; otherwise outputs/<name of the case>.",
 )
-@DROP
-@MEMORY
-def sheet(case: str, into: Path | None, drop: float, memory: float | None) -> None:
+@click.option(
+    "--templates",
+    type=click.Path(path_type=Path, file_okay=False, exists=True),
+    metavar="DIR",
+    help="Folder of templates of your own; each stands in for ours of the same name.",
+)
+@click.option("--pdf", is_flag=True, help="Write the sheet as PDF too (needs the extra pdf).")
+@limited
+def sheet(case: str, into: Path | None, templates: Path | None, pdf: bool, limits: Limits) -> None:
     """The main job: exact beliefs, rules, their costs; writes the policy sheet and its data."""
     from thumbwright.distill import job
     from thumbwright.distill.progress import progress_on_terminal
@@ -124,7 +166,7 @@ def sheet(case: str, into: Path | None, drop: float, memory: float | None) -> No
     read = read_case(case)
     with progress_on_terminal() as progress:
         folder = into or Path("outputs") / read.name
-        summary = job.sheet(read, folder, progress, _limits(drop, memory))
+        summary = job.sheet(read, folder, progress, limits, templates, pdf)
     _show(summary)
 
 
@@ -137,9 +179,8 @@ def sheet(case: str, into: Path | None, drop: float, memory: float | None) -> No
     metavar="FILE",
     help="Write the table to FILE instead of printing it.",
 )
-@DROP
-@MEMORY
-def jumps(case: str, file: Path | None, drop: float, memory: float | None) -> None:
+@limited
+def jumps(case: str, file: Path | None, limits: Limits) -> None:
     """The exact worth of every seen history, with its weights, as a CSV table."""
     from thumbwright.distill import job
     from thumbwright.distill.progress import progress_on_terminal
@@ -148,7 +189,7 @@ def jumps(case: str, file: Path | None, drop: float, memory: float | None) -> No
 
     read = read_case(case)
     with progress_on_terminal() as progress:
-        table = job.jumps(read, progress, _limits(drop, memory))
+        table = job.jumps(read, progress, limits)
     text = table.to_csv(index=False, lineterminator="\n")
     if file is None:
         click.echo(text, nl=False)
@@ -158,25 +199,23 @@ def jumps(case: str, file: Path | None, drop: float, memory: float | None) -> No
 
 @verbs.command()
 @CASE
-@DROP
-@MEMORY
+@limited
 @JSON
-def outcomes(case: str, drop: float, memory: float | None, as_json: bool) -> None:
+def outcomes(case: str, limits: Limits, as_json: bool) -> None:
     """What each agent, and the group, ends up doing when all of them reason exactly."""
     from thumbwright.distill import job
     from thumbwright.distill.reading import read_case
 
-    found = job.outcomes(read_case(case), _limits(drop, memory))
+    found = job.outcomes(read_case(case), limits)
     _show(_as_json(found) if as_json else job.outcomes_text(found))
 
 
 @verbs.command()
 @CASE
 @click.argument("rule", metavar="RULE")
-@DROP
-@MEMORY
+@limited
 @JSON
-def price(case: str, rule: str, drop: float, memory: float | None, as_json: bool) -> None:
+def price(case: str, rule: str, limits: Limits, as_json: bool) -> None:
     """What a given rule costs, and how often each of its rows is used.
 
     RULE is a CSV file as written by "sheet" (rule.csv), or one of: exact, plain-count, alone.
@@ -187,14 +226,8 @@ def price(case: str, rule: str, drop: float, memory: float | None, as_json: bool
 
     read = read_case(case)
     with progress_on_terminal() as progress:
-        found = job.price(read, rule, progress, _limits(drop, memory))
+        found = job.price(read, rule, progress, limits)
     _show(_as_json(found) if as_json else job.price_text(found))
-
-
-def _limits(drop: float, memory: float | None) -> Limits:
-    from thumbwright.distill.assemble import Limits
-
-    return Limits(drop, None if memory is None else memory * 1e9)
 
 
 def main(argv: Sequence[str] | None = None) -> int:

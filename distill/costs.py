@@ -7,62 +7,56 @@ not a ceiling, since its thresholds are not chosen anew for company.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from abc import ABC, abstractmethod
 from dataclasses import dataclass, replace
 
-import numpy as np
-
-from thumbwright.distill.assemble import Setting
 from thumbwright.distill.findings import CostBasis, Figures, RowUse
-from thumbwright.distill.playing import alone_policy, plain_count_policy, rule_policy
 from thumbwright.distill.rules import Rule
-from thumbwright.distill.situations import Situations, situations_of, values_of
+from thumbwright.distill.situations import Weighed, values_of
+from thumbwright.distill.tallies import (
+    Figure,
+    Tally,
+    accuracy_of,
+    error_of,
+    error_of_difference,
+    mean_step_of,
+    risk_of,
+    wrong_of,
+)
 from thumbwright.exact.arrays import FloatArray
-from thumbwright.exact.engine import Track
+from thumbwright.exact.crowd_figures import Weights
 from thumbwright.exact.group import Group
-from thumbwright.exact.outcomes import outcome
-from thumbwright.exact.play import Play, Policy, adopt, difference
 from thumbwright.exact.stopping import Cone, Losses
 
 WORTH_WATCHING = 0.01
 """Below this share of the risk alone, what exact watching saves is called nothing."""
 
-PolicyFor = Callable[[Setting], Policy]
-
 
 @dataclass(frozen=True)
-class Tally:
-    """Plain probabilities of how one way of playing turns out, averaged over settings.
+class Inexact:
+    """What in the exact beliefs of a case is not exact.
 
-    ``plus``, ``minus``, ``undecided``, ``steps`` have shape (2,), given plus and given minus.
-    ``lean_plus``, ``lean_minus``, also (2,), are the undecided at the horizon whose belief favours
-    plus or minus; one that favours neither counts half for each.
+    Attributes
+    ----------
+    split : bool
+        Whether somebody's evidence was split onto a ladder.
+    dropped_mass, uncertainty : float
+        Probability that was dropped on request, and what that can change a probability by.
+    near_tie_mass : float
+    sampled : tuple of two ints, or None
+        Number of sampled histories and the seed.
     """
 
-    plus: FloatArray
-    minus: FloatArray
-    undecided: FloatArray
-    steps: FloatArray
-    lean_plus: FloatArray
-    lean_minus: FloatArray
-    off_model: float = 0.0
+    split: bool
+    dropped_mass: float
+    uncertainty: float
+    near_tie_mass: float
+    sampled: tuple[int, int] | None
 
-    def risk(self, losses: Losses, prior_plus: float) -> float:
-        """Expected loss, averaged over the prior."""
-        says_plus, says_minus = self.plus[1], self.minus[0]
-        undecided = self.undecided
-        horizon = 0.0
-        if losses.undecided is None:
-            says_plus, says_minus = says_plus + self.lean_plus[1], says_minus + self.lean_minus[0]
-        else:
-            share = prior_plus * undecided[0] + (1 - prior_plus) * undecided[1]
-            horizon = losses.undecided * float(share)
-        return float(
-            losses.false_plus * (1 - prior_plus) * says_plus
-            + losses.false_minus * prior_plus * says_minus
-            + losses.per_step * (prior_plus * self.steps[0] + (1 - prior_plus) * self.steps[1])
-            + horizon
-        )
+    @property
+    def nothing(self) -> bool:
+        """Whether they are exact."""
+        return not self.split and self.dropped_mass == 0.0 and self.sampled is None
 
 
 def _difference(one: float, other: float) -> float:
@@ -70,72 +64,31 @@ def _difference(one: float, other: float) -> float:
     return 0.0 if abs(one - other) <= 1e-12 * max(1.0, abs(one)) else one - other
 
 
-def tally(track: Track, off_model: float = 0.0) -> Tally:
-    """Count up a track."""
-    given = outcome(track)
-    half = track.leaning[2] / 2.0
-    return Tally(
-        plus=np.array([o.plus for o in given]),
-        minus=np.array([o.minus for o in given]),
-        undecided=np.array([o.undecided for o in given]),
-        steps=np.array([o.mean_steps for o in given]),
-        lean_plus=track.leaning[0] + half,
-        lean_minus=track.leaning[1] + half,
-        off_model=off_model,
-    )
-
-
-def average(parts: Sequence[tuple[float, Tally]]) -> Tally:
-    """The mean of several tallies with these shares."""
-    names = ("plus", "minus", "undecided", "steps", "lean_plus", "lean_minus", "off_model")
-    return Tally(**{name: sum(w * getattr(part, name) for w, part in parts) for name in names})
-
-
-@dataclass(frozen=True)
-class Pricer:
+class Pricer(ABC):
     """Prices ways of playing for one agent of a case, against its exact play.
 
     Attributes
     ----------
     agent : str
-    settings : tuple of Setting
-    situations : Situations
+    situations : Weighed
     losses : Losses or None
         None where costs are neither stated nor could be inferred; then no risk is given.
     cone : Cone or None
         Where the losses come from thresholds, all the costs they could come from.
+    exact_tally, alone_tally : Tally
     """
 
     agent: str
-    settings: tuple[Setting, ...]
-    situations: Situations
+    situations: Weighed
     losses: Losses | None
     cone: Cone | None
     exact_tally: Tally
     alone_tally: Tally
 
-    @classmethod
-    def build(
-        cls,
-        agent: str,
-        settings: tuple[Setting, ...],
-        losses: Losses | None,
-        cone: Cone | None = None,
-    ) -> Pricer:
-        """Play exactly and alone once; everything else is held against these."""
-        exact, alone = [], []
-        for setting in settings:
-            solution = setting.solution
-            exact.append((setting.weight, tally(solution.tracks[solution.group.index[agent]])))
-            played = adopt(solution, agent, alone_policy)
-            alone.append((setting.weight, tally(played.track, played.off_model)))
-        situations = situations_of(settings, agent)
-        return cls(agent, settings, situations, losses, cone, average(exact), average(alone))
-
     @property
+    @abstractmethod
     def group(self) -> Group:
-        """The group of the first setting; settings differ in thresholds only."""
-        return self.settings[0].solution.group
+        """The group; where several settings differ in thresholds, that of the first."""
 
     @property
     def seen(self) -> tuple[str, ...]:
@@ -147,52 +100,31 @@ class Pricer:
         """Prior probability of plus."""
         return self.group.prior_plus
 
-    def play(
-        self, policy_for: PolicyFor, rows: int = 0, whole: bool = True
-    ) -> tuple[Tally, FloatArray | None]:
-        """Play a policy in every setting; its tally and, with ``rows``, the use of each row.
-
-        Without ``whole`` it is not counted how often others are shown what they call impossible.
-        """
-        plays: list[tuple[float, Play]] = [
-            (s.weight, adopt(s.solution, self.agent, policy_for(s), rows, whole))
-            for s in self.settings
-        ]
-        usage = np.zeros((rows, 2)) if rows else None
-        for weight, played in plays:
-            if usage is not None and played.usage is not None:
-                usage += weight * played.usage
-        return average([(w, tally(p.track, p.off_model)) for w, p in plays]), usage
-
-    def rule_policies(self, rule: Rule) -> PolicyFor:
-        """The rule as a policy in each setting; rows of bars get their pooled worth."""
-        values = None
-        if rule.has_bars:
-            rows = self.situations.rows_of(rule, self.settings)
-            values = values_of(*self.situations.pooled(rows, len(rule.rows)))
-        return lambda s: rule_policy(rule, s.solution.group, s.names, values)
-
+    @abstractmethod
     def rule_tally(self, rule: Rule, whole: bool = True) -> Tally:
-        """How a rule turns out; ``whole`` as for :meth:`play`."""
-        return self.play(self.rule_policies(rule), whole=whole)[0]
+        """How a rule turns out.
 
+        Without ``whole`` it need not be counted how often others are shown what they call
+        impossible.
+        """
+
+    @abstractmethod
     def rule_uses(self, rule: Rule) -> tuple[Tally, tuple[RowUse, ...]]:
         """How a rule turns out and how often each of its rows is in force and decides."""
-        found, usage = self.play(self.rule_policies(rule), len(rule.rows))
-        assert usage is not None
-        return found, tuple(RowUse(float(steps), float(calls)) for steps, calls in usage)
 
+    @abstractmethod
     def plain_count_tally(self) -> Tally:
         """How counting commitments at face value, silence as nothing, turns out."""
-        return self.play(lambda s: plain_count_policy(s.solution.group, self.agent))[0]
 
-    def changed(self, one: Rule, other: Rule) -> float:
-        """Probability that two rules ever act differently in one outing."""
-        first, second = self.rule_policies(one), self.rule_policies(other)
-        return sum(
-            s.weight * difference(s.solution, self.agent, first(s), second(s))
-            for s in self.settings
-        )
+    @abstractmethod
+    def inexact(self) -> Inexact:
+        """What in the exact beliefs is not exact."""
+
+    def row_values(self, rule: Rule) -> FloatArray | None:
+        """Pooled worth of each row of bars (nats); None for a rule of values."""
+        if not rule.has_bars:
+            return None
+        return values_of(*self.situations.pooled(self.situations.rows_of(rule), len(rule.rows)))
 
     def objective(self, found: Tally) -> float:
         """What a search minimises: the risk; without costs, wrong answers and undecided ends."""
@@ -202,11 +134,47 @@ class Pricer:
 
     def accuracy(self, found: Tally) -> float:
         """Probability of having given the right answer by the horizon."""
-        return float(self.prior_plus * found.plus[0] + (1 - self.prior_plus) * found.minus[1])
+        return accuracy_of(self.prior_plus).of(found)
 
     def mean_step(self, found: Tally) -> float:
         """Mean number of steps used."""
-        return float(self.prior_plus * found.steps[0] + (1 - self.prior_plus) * found.steps[1])
+        return mean_step_of(self.prior_plus).of(found)
+
+    @property
+    def weights(self) -> Weights | None:
+        """Weights of sampled histories; None where nothing is sampled."""
+        return None
+
+    def _errors(self, found: Tally) -> dict[str, float] | None:
+        """Standard errors of the figures that are printed; None where nothing is sampled."""
+        weights = self.weights
+        if weights is None or found.sampled is None:
+            return None
+        accuracy, step = accuracy_of(self.prior_plus), mean_step_of(self.prior_plus)
+        kept = {
+            "wrong_given_plus": error_of(wrong_of(0), found, weights),
+            "wrong_given_minus": error_of(wrong_of(1), found, weights),
+            "accuracy": error_of(accuracy, found, weights),
+            "mean_step": error_of(step, found, weights),
+            "accuracy_lost": error_of_difference(accuracy, found, self.exact_tally, weights),
+            "delay_added": error_of_difference(step, found, self.exact_tally, weights),
+        }
+        if self.losses is not None:
+            risk = risk_of(self.losses, self.prior_plus)
+            kept["risk"] = error_of(risk, found, weights)
+            kept["benefit_kept"] = self._benefit_error(found, risk, weights)
+        return {name: error for name, error in kept.items() if error is not None}
+
+    def _benefit_error(self, found: Tally, risk: Figure, weights: Weights) -> float | None:
+        """Error of a ratio of two differences over the same histories, linearised."""
+        assert self.losses is not None
+        kept = self.benefit_kept(found, self.losses)
+        played = [one.sampled for one in (self.alone_tally, found, self.exact_tally)]
+        if kept is None or None in played:
+            return None
+        alone, rule, exact = (risk.by_history(one) for one in played if one is not None)
+        saved = risk.of(self.alone_tally) - risk.of(self.exact_tally)
+        return weights.total_error((alone - rule - kept * (alone - exact)) / saved)
 
     def figures(self, found: Tally) -> Figures:
         """The figures that are printed, held against exact play."""
@@ -230,6 +198,7 @@ class Pricer:
             delay_added=_difference(self.mean_step(found), self.mean_step(self.exact_tally)),
             benefit_kept=None if self.losses is None else self.benefit_kept(found, self.losses),
             off_model=found.off_model,
+            errors=self._errors(found),
         )
 
     def benefit_kept(self, found: Tally, losses: Losses) -> float | None:

@@ -13,9 +13,10 @@ from typing import Any
 
 import numpy as np
 
-from thumbwright.distill.costs import Pricer
-from thumbwright.distill.playing import NO_ROW, lay_out
+from thumbwright.distill.network_pricer import NetworkPricer
+from thumbwright.distill.playing import lay_out
 from thumbwright.distill.rules import SHOWN, Rule
+from thumbwright.distill.views import NO_ROW
 from thumbwright.exact.arrays import IntArray
 from thumbwright.exact.evidence.base import Evidence
 
@@ -33,10 +34,10 @@ class _Path:
     call: int
 
 
-def example(pricer: Pricer, rule: Rule) -> tuple[dict[str, Any], ...]:
+def example(pricer: NetworkPricer, rule: Rule) -> tuple[dict[str, Any], ...]:
     """The run, as the findings print it; empty where the rule has no bars."""
     evidence = pricer.group.agents[pricer.group.index[pricer.agent]].evidence
-    if not rule.has_bars or len(evidence.plus) < 2:
+    if not rule.has_bars or not rule.is_grid or len(evidence.plus) < 2:
         return ()
     names = pricer.settings[0].names
     grid = lay_out(rule, pricer.group.horizon, names).row
@@ -57,7 +58,7 @@ def example(pricer: Pricer, rule: Rule) -> tuple[dict[str, Any], ...]:
     return tuple(run if not quiet else _notable(run))
 
 
-def _paths(pricer: Pricer, evidence: Evidence, quiet: bool) -> Iterator[_Path]:
+def _paths(pricer: NetworkPricer, evidence: Evidence, quiet: bool) -> Iterator[_Path]:
     """Candidate runs: the signs, and when the first seen agent calls what."""
     horizon = pricer.group.horizon
     up, down = _telling_values(evidence)
@@ -85,7 +86,7 @@ def _telling_values(evidence: Evidence) -> tuple[int, int]:
     return int(np.argmax(evidence.plus)), int(np.argmax(evidence.minus))
 
 
-def _calls(pricer: Pricer, latest: int) -> list[tuple[int, int]]:
+def _calls(pricer: NetworkPricer, latest: int) -> list[tuple[int, int]]:
     """Possible commitments of the first seen agent as (step from which it is seen, state)."""
     if not pricer.seen:
         return [(latest + 1, 0)]
@@ -100,7 +101,7 @@ def _calls(pricer: Pricer, latest: int) -> list[tuple[int, int]]:
 
 
 def _walk(
-    pricer: Pricer, rule: Rule, grid: IntArray, evidence: Evidence, path: _Path
+    pricer: NetworkPricer, rule: Rule, grid: IntArray, evidence: Evidence, path: _Path
 ) -> list[dict[str, Any]]:
     run: list[dict[str, Any]] = []
     peg = 0

@@ -20,7 +20,8 @@ class Figures:
     (what the agent has shown by the horizon) and ``steps`` (mean number of steps used; an
     agent that is undecided at the horizon has used all of them). ``wrong_given_plus`` and
     ``wrong_given_minus`` count the answers shown, not those forced at the horizon.
-    ``risk`` is ``None`` only where no costs are known or could be inferred.
+    ``risk`` is ``None`` only where no costs are known or could be inferred. ``errors`` holds
+    standard errors of figures by name, where histories were sampled.
     """
 
     given_plus: dict[str, float]
@@ -34,6 +35,7 @@ class Figures:
     delay_added: float
     benefit_kept: float | None
     off_model: float
+    errors: dict[str, float] | None = None
 
 
 @dataclass(frozen=True)
@@ -84,7 +86,9 @@ class WorthCurve:
     """The worth of one joint shown state over the steps, for the modeller's chart (nats).
 
     ``low`` and ``high`` span the histories that show the same states; equal where the time
-    of a commitment does not matter. Steps at which the state cannot occur hold ``None``.
+    of a commitment does not matter. Steps at which the state cannot occur hold ``None``. In a
+    crowd nobody is told apart: ``shows`` is empty, and ``counts`` says how many show plus and how
+    many minus.
     """
 
     label: str
@@ -93,6 +97,12 @@ class WorthCurve:
     worth: tuple[float | None, ...]
     low: tuple[float | None, ...]
     high: tuple[float | None, ...]
+    counts: tuple[int, int] | None = None
+
+    @property
+    def plus_and_minus(self) -> tuple[int, int]:
+        """How many of the seen agents show plus, and how many minus."""
+        return self.counts or (self.shows.count("plus"), self.shows.count("minus"))
 
 
 @dataclass(frozen=True)
@@ -109,6 +119,11 @@ class Findings:
         Whether a person can keep the own count.
     alpha, beta : float or None
         Worth (nats) of one count and of one step; None off a ladder.
+    prior : float
+        Log-odds of plus before anybody has observed anything (nats).
+    bounds : tuple of float
+        The agent's own thresholds: it answers minus at the first belief or below, plus at the
+        second or above (nats).
     value_offsets : tuple of int or None
         By how much each possible observation moves the own count, in the order of ``labels``.
     leans : mapping of agent id to "minus", "plus" or "even"
@@ -138,6 +153,8 @@ class Findings:
     count_is_whole: bool
     alpha: float | None
     beta: float | None
+    prior: float
+    bounds: tuple[float, float]
     value_offsets: tuple[int, ...] | None
     leans: dict[str, str]
     alone_rows: tuple[Row, ...]
@@ -147,3 +164,9 @@ class Findings:
     caveats: tuple[str, ...]
     near_tie_mass: float
     example: tuple[dict[str, Any], ...]
+
+    def _repr_html_(self) -> str:
+        """Tables and the chart, for notebooks."""
+        from thumbwright.distill.sheet.notebook import findings_html
+
+        return findings_html(self)

@@ -10,78 +10,34 @@ from importlib.metadata import version
 
 import numpy as np
 
-from thumbwright.distill.assemble import (
-    NO_LIMITS,
-    Limits,
-    Setting,
-    losses_of,
-    settings_of,
-)
+from thumbwright.distill.assemble import NO_LIMITS, Limits
 from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.example import example
 from thumbwright.distill.findings import Figures, Findings, FormResult, WorthCurve
 from thumbwright.distill.forms import MODULES, Wanted, form
 from thumbwright.distill.forms.runs import alone_rows
+from thumbwright.distill.network_pricer import NetworkPricer
+from thumbwright.distill.pricing import pricer_of
 from thumbwright.distill.rules import SHOWN
-from thumbwright.distill.situations import values_of
+from thumbwright.distill.situations import Situations, Weighed, values_of
+from thumbwright.distill.tallies import Tally
 from thumbwright.exact.engine import Progress
 from thumbwright.exact.errors import ModelError
 from thumbwright.exact.evidence.base import Evidence
 from thumbwright.exact.group import Group
-from thumbwright.exact.stopping import Cone, Losses, costs_behind
 
 MOST_CURVES = 9
 """Joint shown states that get a curve of their own, the most frequent first."""
 
 
-def pricer_of(
-    case: Case, progress: Progress | None = None, limits: Limits = NO_LIMITS
-) -> tuple[Pricer, str | None]:
-    """Exact play and the costs to price by; a sentence where no costs could be found.
-
-    Raises ModelError where the rule's agent has thresholds that are unknown, or a timetable of its
-    own.
-    """
-    settings = settings_of(case, progress, limits)
-    agent = case.rule_agent
-    losses, cone, missing = losses_of(case), None, None
-    own = settings[0].solution.group.agents[settings[0].solution.group.index[agent]]
-    if len(own.thresholds) > 1:
-        raise ModelError(
-            f"agents.{agent}: the rule is for {agent}, so its own thresholds must be known; give "
-            "it one name under thresholds"
-        )
-    if own.looks is not None:
-        raise ModelError(
-            f"agents.{agent}: a rule counts one observation at every step, so its agent cannot "
-            "have first_step, looks_every or looks_per_step; give them to the agents it sees"
-        )
-    if losses is None:
-        losses, cone = _inferred(settings, agent)
-        if losses is None:
-            missing = (
-                "No costs are stated, and none make the thresholds best for an agent alone; "
-                "rules are compared by wrong answers only."
-            )
-    return Pricer.build(agent, settings, losses, cone), missing
-
-
-def _inferred(settings: tuple[Setting, ...], agent: str) -> tuple[Losses | None, Cone | None]:
-    group = settings[0].solution.group
-    own = group.agents[group.index[agent]]
-    cone = costs_behind(own.evidence, own.thresholds[0][1], group.prior, group.horizon)
-    return (None, None) if cone is None else (cone.middle, cone)
-
-
-def gather(
-    case: Case, progress: Progress | None = None, limits: Limits = NO_LIMITS
-) -> Findings:
+def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIMITS) -> Findings:
     """Everything that is printed about the rule's agent of a case."""
     pricer, missing = pricer_of(case, progress, limits)
     wanted = Wanted(case.rule.rows, tuple(case.rule.inputs), case.rule.max_accuracy_lost)
-    forms, left_out = _forms(pricer, case, wanted, progress)
-    main = next(iter(forms.values()))
+    made, left_out = _forms(pricer, case, wanted, progress)
+    forms = {name: one for name, (one, _) in made.items()}
+    main, main_tally = next(iter(made.values()))
     exact = pricer.figures(pricer.exact_tally)
     plain = pricer.figures(pricer.plain_count_tally())
     alone = pricer.figures(pricer.alone_tally)
@@ -98,11 +54,13 @@ def gather(
         exact=exact,
         plain_count=plain,
         alone=alone,
-        costs=pricer.basis(pricer.rule_tally(main.rule)),
+        costs=pricer.basis(main_tally),
         watching_is_worth=pricer.watching_is_worth,
         count_is_whole=evidence.countable,
         alpha=float(evidence.alpha[0]) if evidence.on_ladder else None,
         beta=evidence.beta if evidence.on_ladder else None,
+        prior=_firm(pricer.group.prior),
+        bounds=_bounds(pricer),
         value_offsets=tuple(map(int, evidence.offsets[:, 0])) if evidence.countable else None,
         leans=_leans(pricer.group, pricer.seen),
         alone_rows=alone_rows(pricer) if evidence.countable and evidence.alpha[0] > 0 else (),
@@ -110,19 +68,19 @@ def gather(
         labels=evidence.labels,
         is_exact=_is_exact(pricer, [*(f.figures for f in forms.values()), plain, alone]),
         caveats=caveats,
-        near_tie_mass=sum(s.weight * s.solution.near_tie_mass for s in pricer.settings),
-        example=example(pricer, main.rule),
+        near_tie_mass=pricer.inexact().near_tie_mass,
+        example=example(pricer, main.rule) if isinstance(pricer, NetworkPricer) else (),
     )
 
 
 def _forms(
     pricer: Pricer, case: Case, wanted: Wanted, progress: Progress | None
-) -> tuple[dict[str, FormResult], tuple[str, ...]]:
+) -> tuple[dict[str, tuple[FormResult, Tally]], tuple[str, ...]]:
     """Every form asked for that this case can have; sentences on those it cannot.
 
     Raises ModelError where it can have none.
     """
-    forms: dict[str, FormResult] = {}
+    forms: dict[str, tuple[FormResult, Tally]] = {}
     refusals: list[ModelError] = []
     for name in MODULES:
         if name in case.rule.forms:
@@ -137,10 +95,10 @@ def _forms(
 
 def _form_result(
     pricer: Pricer, name: str, wanted: Wanted, progress: Progress | None
-) -> FormResult:
+) -> tuple[FormResult, Tally]:
     made = form(name).distil(pricer, wanted, progress)
     found, uses = pricer.rule_uses(made.rule)
-    return FormResult(
+    result = FormResult(
         made.rule,
         pricer.figures(found),
         uses,
@@ -148,10 +106,21 @@ def _form_result(
         made.information_ceiling,
         made.notes,
     )
+    return result, found
 
 
 def _evidence(pricer: Pricer) -> Evidence:
     return pricer.group.agents[pricer.group.index[pricer.agent]].evidence
+
+
+def _bounds(pricer: Pricer) -> tuple[float, float]:
+    own = pricer.group.agents[pricer.group.index[pricer.agent]].thresholds[0][1]
+    return _firm(own.minus), _firm(own.plus)
+
+
+def _firm(belief: float) -> float:
+    """A belief to twelve digits: the last ones of a double differ between machines."""
+    return float(f"{belief:.12g}")
 
 
 def _leans(group: Group, seen: tuple[str, ...]) -> dict[str, str]:
@@ -166,9 +135,7 @@ def _leans(group: Group, seen: tuple[str, ...]) -> dict[str, str]:
 
 
 def _is_exact(pricer: Pricer, figures: list[Figures]) -> bool:
-    split = any(agent.evidence.split for agent in pricer.group.agents)
-    dropped = any(s.solution.dropped_mass > 0 for s in pricer.settings)
-    return not split and not dropped and all(f.off_model == 0.0 for f in figures)
+    return pricer.inexact().nothing and all(f.off_model == 0.0 for f in figures)
 
 
 def _caveats(pricer: Pricer, figures: list[Figures], missing: str | None) -> tuple[str, ...]:
@@ -184,12 +151,17 @@ def _caveats(pricer: Pricer, figures: list[Figures], missing: str | None) -> tup
             )
         if evidence.kind == "poisson":
             said.append("Counts in the tail of the Poisson law, below 1e-15, were cut.")
-    dropped = sum(s.weight * s.solution.dropped_mass for s in pricer.settings)
-    if dropped > 0:
-        off = sum(s.weight * s.solution.uncertainty for s in pricer.settings)
+    inexact = pricer.inexact()
+    if inexact.dropped_mass > 0:
         said.append(
-            f"Display events of probability {dropped:.3g} in all were dropped on request; any "
-            f"probability here may be off by up to {off:.3g}."
+            f"Display events of probability {inexact.dropped_mass:.3g} in all were dropped on "
+            f"request; any probability here may be off by up to {inexact.uncertainty:.3g}."
+        )
+    if inexact.sampled:
+        histories, seed = inexact.sampled
+        said.append(
+            f"What the others show was sampled: {histories:,} public histories with seed {seed}, "
+            "the beliefs along each of them exact. Figures carry standard errors and are not exact."
         )
     odd = max((f.off_model for f in figures), default=0.0)
     if odd > 0:
@@ -217,7 +189,7 @@ def worth_curves(pricer: Pricer, case: Case) -> tuple[WorthCurve, ...]:
     curves = []
     for code in sorted(k for k in often if mass[k] > 0):
         here = joint == code
-        states = tuple(SHOWN[s] for s in situations.states[here][0])
+        label, states, counts = _state_label(case, situations, int(np.flatnonzero(here)[0]))
         columns: list[list[float | None]] = [[], [], []]
         for step in steps:
             cell = here & (situations.step == step)
@@ -232,9 +204,8 @@ def worth_curves(pricer: Pricer, case: Case) -> tuple[WorthCurve, ...]:
                 numbers = [_clean(x) for x in (pooled[0], worths.min(), worths.max())]
             for column, number in zip(columns, numbers, strict=True):
                 column.append(number)
-        curves.append(
-            WorthCurve(_state_label(case, pricer.seen, states), states, steps, *map(tuple, columns))
-        )
+        worth, low, high = map(tuple, columns)
+        curves.append(WorthCurve(label, states, steps, worth, low, high, counts))
     return tuple(curves)
 
 
@@ -243,13 +214,22 @@ def _clean(worth: float) -> float:
     return 0.0 if abs(worth) < 1e-12 else float(worth)
 
 
-def _state_label(case: Case, seen: tuple[str, ...], states: tuple[str, ...]) -> str:
+def _state_label(
+    case: Case, situations: Weighed, which: int
+) -> tuple[str, tuple[str, ...], tuple[int, int] | None]:
+    """What is shown in a situation: in the words of the case, by agent, and counted in a crowd."""
     words = {
         "undecided": case.words.shows_nothing,
         "plus": case.words.shows_plus,
         "minus": case.words.shows_minus,
     }
-    if len(seen) == 1:
-        return words[states[0]]
-    pairs = zip(seen, states, strict=True)
-    return "; ".join(f"{case.agents[agent].name}: {words[state]}" for agent, state in pairs)
+    if isinstance(situations, Situations):
+        states = tuple(SHOWN[s] for s in situations.states[which])
+        if len(states) == 1:
+            return words[states[0]], states, None
+        pairs = zip(situations.seen, states, strict=True)
+        told = "; ".join(f"{case.agents[agent].name}: {words[state]}" for agent, state in pairs)
+        return told, states, None
+    plus, minus = (int(situations.number(f"{name}_shown")[which]) for name in ("plus", "minus"))
+    counted = [f"{n} {words[name]}" for name, n in (("plus", plus), ("minus", minus)) if n]
+    return "; ".join(counted) or f"all {words['undecided']}", (), (plus, minus)

@@ -236,7 +236,7 @@ def rule(plain: Plain) -> Found:
                 f"there is no agent {quoted(wanted)}, so the rule is for nobody"
                 f"{hint(wanted, [ANY, *agents])}",
             )
-        elif "shown" in looks_at or "thresholds" in looks_at:
+        elif set(looks_at) - {"step"}:
             watchers = [agent for agent, seen in agents.items() if seen is None or seen]
             chosen = next(iter(watchers), None) if wanted == ANY else wanted
             if wanted == ANY and not watchers:

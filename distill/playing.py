@@ -1,23 +1,23 @@
 """Rules in action: which row holds in which situation, and what the row says there.
 
-Rows are looked up by step and shown states, so a rule is compiled once into a grid
-[step, state of each seen agent] of row numbers. Gaps and overlaps show in the same grid.
+A rule that looks at step and shown states is compiled once into a grid [step, state of each seen
+agent] of row numbers. One that looks at numbers of agents or at times is read situation by
+situation.
 """
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 from thumbwright.distill.rules import SHOWN, Row, Rule
+from thumbwright.distill.views import NO_ROW, Named, View, rows_in
 from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.group import Group
 from thumbwright.exact.play import NEVER, Act, Policy, Situation
-
-NO_ROW = -1
 
 
 @dataclass(frozen=True)
@@ -81,32 +81,65 @@ def rule_policy(
         For a rule of bars, the worth of each row (nats): it decides which answer an agent favours
         that is undecided at the horizon. Zero where left out.
     """
-    grid = lay_out(rule, group.horizon, names).row
-    minus_at, plus_at = _bars(rule)
-    if rule.has_bars:
-        values = np.zeros(len(rule.rows)) if row_values is None else row_values
-    else:
-        values = np.array([0.0 if row.value is None else row.value for row in rule.rows])
-    # One more entry at the end is what NO_ROW (-1) picks: no news, no answer.
-    values, minus_at, plus_at = (
-        np.append(values, 0.0),
-        np.append(minus_at, -NEVER),
-        np.append(plus_at, NEVER),
+    rows_at, sheet = _looked_up(rule, group, names), _Sheet(rule, row_values)
+    return lambda situation: sheet.act(rows_at(situation))
+
+
+def acts(rule: Rule, view: View, row_values: FloatArray | None = None) -> Act:
+    """What a rule makes of all situations of a view; ``row_values`` as for ``rule_policy``."""
+    return _Sheet(rule, row_values).act(rows_in(rule, view)[0])
+
+
+class _Sheet:
+    """Values and bars of all rows, to be looked up by the number of the row."""
+
+    def __init__(self, rule: Rule, row_values: FloatArray | None) -> None:
+        low = [-NEVER if row.minus_at is None else row.minus_at for row in rule.rows]
+        high = [NEVER if row.plus_at is None else row.plus_at for row in rule.rows]
+        values = [0.0 if row.value is None else row.value for row in rule.rows]
+        if rule.has_bars and row_values is not None:
+            values = row_values.tolist()
+        # One more entry at the end is what NO_ROW (-1) picks: no news, no answer.
+        self._value: FloatArray = np.array([*values, 0.0])
+        self._low: IntArray = np.array([*low, -NEVER], dtype=np.int64)
+        self._high: IntArray = np.array([*high, NEVER], dtype=np.int64)
+        self._has_bars = rule.has_bars
+
+    def act(self, row: IntArray) -> Act:
+        """What these rows say."""
+        if not self._has_bars:
+            return Act(self._value[row], row=row)
+        return Act(self._value[row], self._low[row], self._high[row], row)
+
+
+def view_of(
+    rule: Rule, names: Mapping[str, str], step: IntArray, told: Sequence[Sequence[IntArray]]
+) -> Named:
+    """A view of agents that are told apart.
+
+    ``told`` has, per seen agent in the rule's order, the codes of what it shows and the steps and
+    rounds of its answers.
+    """
+    states, steps, rounds = (
+        {agent: one[k] for agent, one in zip(rule.seen, told, strict=True)} for k in range(3)
     )
-
-    def policy(situation: Situation) -> Act:
-        row = grid[situation.step][situation.states]
-        if not rule.has_bars:
-            return Act(values[row], row=row)
-        return Act(values[row], minus_at[row], plus_at[row], row)
-
-    return policy
+    return Named(step, states, steps, rounds, names)
 
 
-def _bars(rule: Rule) -> tuple[IntArray, IntArray]:
-    low = [-NEVER if row.minus_at is None else row.minus_at for row in rule.rows]
-    high = [NEVER if row.plus_at is None else row.plus_at for row in rule.rows]
-    return np.array(low, dtype=np.int64), np.array(high, dtype=np.int64)
+def _looked_up(
+    rule: Rule, group: Group, names: Mapping[str, str]
+) -> Callable[[Situation], IntArray]:
+    """Which row of a rule holds in a situation: from a grid where that is enough."""
+    if rule.is_grid:
+        grid = lay_out(rule, group.horizon, names).row
+        return lambda situation: grid[situation.step][situation.states]
+
+    def read(situation: Situation) -> IntArray:
+        told = zip(situation.states, situation.shown_steps, situation.shown_rounds, strict=True)
+        view = view_of(rule, names, np.array(situation.step), tuple(told))
+        return rows_in(rule, view)[0]
+
+    return read
 
 
 def alone_policy(_situation: Situation) -> Act:

@@ -1,8 +1,9 @@
 """Reading a rule from a CSV file, with every fault in it reported at once.
 
 The columns are those that :mod:`thumbwright.distill.exports.rule_csv` writes, in any order;
-``step_from``, ``step_to``, ``ID_shows`` and ``ID_thresholds`` may be left out, which is the
-same as blank. In place of ``nats`` a table may give its worths as ``observations``, in units
+``step_from``, ``step_to``, ``ID_shows``, ``ID_thresholds``, the ranges of counts such as
+``plus_shown_from`` and ``plus_shown_to``, and ``first_answer`` may be left out, which is the same
+as blank. In place of ``nats`` a table may give its worths as ``observations``, in units
 of one observation. Whether the rows cover every situation exactly once is not a question of
 the file alone, and is answered where the rule is priced.
 """
@@ -15,9 +16,9 @@ import math
 from collections.abc import Iterator, Sequence
 from pathlib import Path
 
-from thumbwright.distill.exports.rule_csv import JOIN, SHOWS, THRESHOLDS
+from thumbwright.distill.exports.rule_csv import FROM, JOIN, SHOWS, THRESHOLDS, TO
 from thumbwright.distill.faults import Faults, clean, fault_line, hint, quoted
-from thumbwright.distill.rules import SHOWN, Row, Rule
+from thumbwright.distill.rules import FIRST_ANSWER, FIRST_ANSWERS, NUMBERS, SHOWN, Row, Rule
 
 _STEPS = ("step_from", "step_to")
 _BARS = ("minus_at_or_below", "plus_at_or_above")
@@ -129,6 +130,8 @@ class _Reader:
 
     def allowed_columns(self) -> list[str]:
         columns = list(_STEPS)
+        if self.seen:
+            columns += [name + end for name in NUMBERS for end in (FROM, TO)] + [FIRST_ANSWER]
         for agent in self.seen:
             columns += [agent + SHOWS, agent + THRESHOLDS] if self.names else [agent + SHOWS]
         return [*columns, *_WORTHS, *_BARS]
@@ -177,6 +180,13 @@ class _Reader:
             accepted = self.names_in(line, agent + THRESHOLDS, cell, self.names)
             if accepted is not None:
                 thresholds[agent] = accepted
+        ranges = {}
+        for name in NUMBERS:
+            ends = (self.whole(line, name + FROM, cell, 0), self.whole(line, name + TO, cell, 0))
+            if ends[0] is not None and ends[1] is not None and ends[0] > ends[1]:
+                self.fault(line, name + FROM, f"{ends[0]} is above {name + TO}, {ends[1]}")
+            if ends != (None, None):
+                ranges[name] = ends
         minus, plus = (self.whole(line, name, cell, None) for name in _BARS)
         if minus is not None and plus is not None and minus >= plus:
             what = f"{minus} is not below plus_at_or_above, {plus}"
@@ -189,6 +199,8 @@ class _Reader:
             value=self.worth(line, cell),
             minus_at=minus,
             plus_at=plus,
+            ranges=ranges,
+            first_answer=self.names_in(line, FIRST_ANSWER, cell, FIRST_ANSWERS),
         )
 
     def whole(self, line: int, name: str, cell: dict[str, str], least: int | None) -> int | None:
@@ -201,7 +213,8 @@ class _Reader:
             self.fault(line, name, f"{quoted(text)} is not a whole number")
             return None
         if least is not None and number < least:
-            self.fault(line, name, f"{number} is below {least}, the first step")
+            what = "the first step" if least else "a number of agents or steps"
+            self.fault(line, name, f"{number} is below {least}, {what}")
             return None
         return number
 

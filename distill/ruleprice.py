@@ -11,11 +11,13 @@ import numpy as np
 from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.faults import Faults
-from thumbwright.distill.playing import lay_out
 from thumbwright.distill.rule_reading import read_rule
 from thumbwright.distill.rules import SHOWN, Rule
-from thumbwright.distill.situations import Situations
+from thumbwright.distill.situations import Weighed
 from thumbwright.exact.arrays import BoolArray
+
+MOST_TOLD = 5000
+"""So many situations that no row, or more than one, holds in are looked at to count them."""
 
 KNOWN = ("exact", "plain-count", "alone")
 """Ways of playing that have a name and need no file."""
@@ -55,7 +57,7 @@ def priced(case: Case, pricer: Pricer, rule: str) -> dict[str, Any]:
         if read.has_bars:
             remarks += _refused_bars(pricer, rule)
         tally, uses = pricer.rule_uses(read)
-        rows_here = pricer.situations.rows_of(read, pricer.settings)
+        rows_here = pricer.situations.rows_of(read)
         for number, (row, use) in enumerate(zip(read.rows, uses, strict=True)):
             rows.append({"row": number + 1, **_plain_row(row), **asdict(use)})
             if not (rows_here == number).any():
@@ -104,61 +106,31 @@ def _refused_bars(pricer: Pricer, path: str) -> list[str]:
 def _gaps_and_overlaps(pricer: Pricer, rule: Rule, path: str) -> list[str]:
     """One message with an example for gaps, and one for overlaps, among what can arise."""
     situations = pricer.situations
-    none, several = _cells(pricer, rule)
+    count = situations.held_by(rule)[1]
+    none, several = count == 0, count > 1
     faults = []
     if none.any():
         faults.append(
-            f"{path}: rows: no row holds {_where(situations, none, pricer)}; add one, or widen "
-            "a row"
+            f"{path}: rows: no row holds {_where(situations, none)}; add one, or widen a row"
         )
     if several.any():
-        example = int(np.flatnonzero(several)[0])
-        numbers = _rows_there(pricer, rule, example)
+        numbers = situations.held_in(rule, int(np.flatnonzero(several)[0]))
         faults.append(
-            f"{path}: rows {' and '.join(map(str, numbers))} all hold "
-            f"{_where(situations, several, pricer)}; narrow all but one"
+            f"{path}: rows {' and '.join(str(n + 1) for n in numbers)} all hold "
+            f"{_where(situations, several)}; narrow all but one"
         )
     return faults
 
 
-def _cells(pricer: Pricer, rule: Rule) -> tuple[BoolArray, BoolArray]:
-    situations = pricer.situations
-    count = np.ones(len(situations.step), dtype=np.int64)
-    for number, setting in enumerate(pricer.settings):
-        here = situations.setting == number
-        grid = lay_out(rule, pricer.group.horizon, setting.names).count
-        count[here] = grid[(situations.step[here], *situations.states[here].T)]
-    return count == 0, count > 1
-
-
-def _rows_there(pricer: Pricer, rule: Rule, situation: int) -> list[int]:
-    """Numbers of the rows that hold in one situation."""
-    situations = pricer.situations
-    names = pricer.settings[int(situations.setting[situation])].names
-    cell = (int(situations.step[situation]), *map(int, situations.states[situation]))
-    numbers = []
-    for number, row in enumerate(rule.rows):
-        single = Rule(rule.form, rule.agent, rule.seen, (row,))
-        if lay_out(single, pricer.group.horizon, names).count[cell]:
-            numbers.append(number + 1)
-    return numbers
-
-
-def _where(situations: Situations, mask: BoolArray, pricer: Pricer) -> str:
+def _where(situations: Weighed, mask: BoolArray) -> str:
     """An example of the masked situations in words, and how many others like it there are."""
-    example = int(np.flatnonzero(mask)[0])
-    parts = [f"at step {int(situations.step[example])}"]
-    parts += [
-        f"with {agent} showing {SHOWN[int(code)]}"
-        for agent, code in zip(situations.seen, situations.states[example], strict=True)
-    ]
-    names = pricer.settings[int(situations.setting[example])].names
-    parts += [f"and {agent} having thresholds {name}" for agent, name in names.items()]
-    cells = np.unique(
-        np.column_stack([situations.setting, situations.step, situations.states])[mask], axis=0
+    which = np.flatnonzero(mask)
+    others = {situations.said(int(one)) for one in which[:MOST_TOLD]}
+    more = len(others) - 1
+    at_least = "at least " if len(which) > MOST_TOLD else ""
+    return f"at {situations.said(int(which[0]))}" + (
+        f" (and in {at_least}{more} more situations)" if more else ""
     )
-    more = len(cells) - 1
-    return " ".join(parts) + (f" (and in {more} more situations)" if more else "")
 
 
 def _plain_row(row: Any) -> dict[str, Any]:
@@ -166,6 +138,8 @@ def _plain_row(row: Any) -> dict[str, Any]:
         "step_from": row.step_from,
         "step_to": row.step_to,
         "shows": {agent: [s for s in SHOWN if s in states] for agent, states in row.shows.items()},
+        "ranges": {name: list(ends) for name, ends in row.ranges.items()},
+        "first_answer": None if row.first_answer is None else sorted(row.first_answer),
         "thresholds": {agent: sorted(names) for agent, names in row.thresholds.items()},
         "nats": row.value,
         "minus_at_or_below": row.minus_at,

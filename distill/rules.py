@@ -1,9 +1,9 @@
 """A rule as plain data: rows over the situations an agent can tell apart.
 
-A row says for which steps, for which shown states of the seen agents and, where the rule may
-look at them, for which thresholds of the seen agents it holds; and then either what the
-situation is worth (``value``, nats, in place of the exact social part of the belief) or at
-which own count the agent answers (``minus_at`` or fewer, ``plus_at`` or more).
+A row says for which steps, for which shown states of the seen agents, for how many that show
+something and, where the rule may look at them, for which thresholds of the seen agents it holds;
+and then either what the situation is worth (``value``, nats, in place of the exact social part of
+the belief) or at which own count the agent answers (``minus_at`` or fewer, ``plus_at`` or more).
 
 Nothing here computes; forms make rules, costs price them, exports write them.
 """
@@ -16,6 +16,25 @@ from types import MappingProxyType
 
 SHOWN = ("undecided", "plus", "minus")
 """The states an agent can show, in the order of their codes 0, 1, 2 everywhere in the program."""
+
+NUMBERS = (
+    "plus_shown",
+    "minus_shown",
+    "undecided_shown",
+    "steps_since_first",
+    "steps_since_last",
+    "came_first",
+)
+"""Whole numbers that a rule may read off the seen agents, whoever of them it is.
+
+How many show plus, minus, undecided; the steps since the first and the last answer was given, that
+step included; how many gave the first answer at the same moment. The last three are 0 while nobody
+has answered.
+"""
+
+FIRST_ANSWER = "first_answer"
+FIRST_ANSWERS = ("nobody", "plus", "minus", "both")
+"""Which answer was given first; "both" if both were given at that moment, "nobody" if none yet."""
 
 
 @dataclass(frozen=True)
@@ -40,6 +59,11 @@ class Row:
     base : bool
         True for the line that holds while nothing can have been shown; it is also the line
         for an agent that is unsure whether anyone is on watch.
+    ranges : mapping of str to pair of (int or None)
+        For members of :data:`NUMBERS` the least and the greatest number, both inclusive, that the
+        row accepts; ``None`` is open. A number left out may be anything.
+    first_answer : frozenset of str or None
+        Which of :data:`FIRST_ANSWERS` the row accepts; ``None``: any.
     """
 
     step_from: int | None = None
@@ -50,10 +74,13 @@ class Row:
     minus_at: int | None = None
     plus_at: int | None = None
     base: bool = False
+    ranges: Mapping[str, tuple[int | None, int | None]] = field(default_factory=dict)
+    first_answer: frozenset[str] | None = None
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "shows", MappingProxyType(dict(self.shows)))
         object.__setattr__(self, "thresholds", MappingProxyType(dict(self.thresholds)))
+        object.__setattr__(self, "ranges", MappingProxyType(dict(self.ranges)))
 
 
 @dataclass(frozen=True)
@@ -76,6 +103,17 @@ class Rule:
     agent: str
     seen: tuple[str, ...]
     rows: tuple[Row, ...]
+
+    @property
+    def is_grid(self) -> bool:
+        """Whether the rows look at steps, shown states and thresholds only."""
+        return not any(row.ranges or row.first_answer is not None for row in self.rows)
+
+    def _repr_html_(self) -> str:
+        """The rows as a table, for notebooks."""
+        from thumbwright.distill.sheet.notebook import rule_html
+
+        return rule_html(self)
 
     @property
     def has_bars(self) -> bool:

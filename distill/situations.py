@@ -9,8 +9,9 @@ log ratio of their masses added up.
 
 from __future__ import annotations
 
+from abc import ABC, abstractmethod
 from collections import Counter
-from collections.abc import Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -19,43 +20,41 @@ from numpy.typing import NDArray
 
 from thumbwright.distill.assemble import Setting
 from thumbwright.distill.forms.boxes import gain
-from thumbwright.distill.playing import NO_ROW, lay_out
 from thumbwright.distill.rules import SHOWN, Rule
+from thumbwright.distill.views import Named, View, rows_in
 from thumbwright.exact.arrays import FloatArray, IntArray, sums
 
 
-@dataclass(frozen=True)
-class Situations:
-    """All situations that are possible under either answer, one entry each.
+class Weighed(ABC):
+    """Situations with their weights, whatever it is that tells them apart.
 
     Attributes
     ----------
-    seen : tuple of str
-        Ids of the seen agents.
-    setting, step, round : ndarray of int, shape (R,)
-    states : ndarray of int, shape (R, number of seen agents)
-        Codes of the shown states.
+    step, round : ndarray of int, shape (R,)
     plus, minus : ndarray of float, shape (R,)
         Masses given plus and given minus.
     worth : ndarray of float, shape (R,)
         Exact worth (nats).
     """
 
-    seen: tuple[str, ...]
-    setting: IntArray
     step: IntArray
     round: IntArray
-    states: IntArray
     plus: FloatArray
     minus: FloatArray
     worth: FloatArray
 
+    @abstractmethod
+    def views(self) -> Iterator[tuple[IntArray, View]]:
+        """Groups of situations, by number, and what a rule may look at in each group."""
+
+    @abstractmethod
+    def said(self, which: int) -> str:
+        """One situation in words, to go on after "at"."""
+
     @property
+    @abstractmethod
     def joint(self) -> IntArray:
         """One number per joint shown state, shape (R,); 0 is everybody undecided."""
-        weights = len(SHOWN) ** np.arange(len(self.seen))[::-1]
-        joint: IntArray = self.states @ weights.astype(np.int64)
-        return joint
 
     @property
     def everything(self) -> float:
@@ -74,19 +73,98 @@ class Situations:
             return None
         return (saved - self.nothing) / span
 
-    def rows_of(self, rule: Rule, settings: Sequence[Setting]) -> IntArray:
+    def rows_of(self, rule: Rule) -> IntArray:
         """Which row of a rule holds in each situation, shape (R,); NO_ROW in a gap."""
-        rows = np.full(len(self.step), NO_ROW, dtype=np.int64)
-        for number, setting in enumerate(settings):
-            here = self.setting == number
-            grid = lay_out(rule, setting.solution.group.horizon, setting.names).row
-            rows[here] = grid[(self.step[here], *self.states[here].T)]
-        return rows
+        return self.held_by(rule)[0]
+
+    def held_by(self, rule: Rule) -> tuple[IntArray, IntArray]:
+        """Which row of a rule holds in each situation, and how many do; both shape (R,)."""
+        rows, count = np.empty((2, len(self.step)), dtype=np.int64)
+        for here, view in self.views():
+            rows[here], count[here] = rows_in(rule, view)
+        return rows, count
+
+    def held_in(self, rule: Rule, which: int) -> list[int]:
+        """Numbers, from 0, of the rows that hold in one situation."""
+        single = (Rule(rule.form, rule.agent, rule.seen, (row,)) for row in rule.rows)
+        return [n for n, one in enumerate(single) if self.held_by(one)[1][which]]
+
+    def number(self, name: str) -> IntArray:
+        """One of ``rules.NUMBERS`` in every situation, shape (R,)."""
+        return self._read(lambda view: view.number(name))
+
+    def first_answer(self) -> IntArray:
+        """Code of the first answer in every situation, shape (R,)."""
+        return self._read(lambda view: view.first_answer())
+
+    def _read(self, read: Callable[[View], IntArray]) -> IntArray:
+        found = np.empty(len(self.step), dtype=np.int64)
+        for here, view in self.views():
+            found[here] = read(view)
+        return found
 
     def pooled(self, rows: IntArray, count: int) -> tuple[FloatArray, FloatArray]:
         """Masses of each of ``count`` rows, given plus and given minus."""
         used = rows >= 0
         return sums(rows[used], self.plus[used], count), sums(rows[used], self.minus[used], count)
+
+
+@dataclass(frozen=True)
+class Situations(Weighed):
+    """All situations of an agent that tells those it sees apart, one entry each.
+
+    They are possible under either answer.
+
+    Attributes
+    ----------
+    names : tuple of mapping of agent id to str
+        Per setting the names of the seen agents' thresholds, where a rule may look at them.
+    seen : tuple of str
+        Ids of the seen agents.
+    setting : ndarray of int, shape (R,)
+    states, shown_steps, shown_rounds : ndarray of int, shape (R, number of seen agents)
+        Codes of the shown states; step and round of each answer, 0 while undecided.
+    """
+
+    names: tuple[Mapping[str, str], ...]
+    seen: tuple[str, ...]
+    setting: IntArray
+    step: IntArray
+    round: IntArray
+    states: IntArray
+    shown_steps: IntArray
+    shown_rounds: IntArray
+    plus: FloatArray
+    minus: FloatArray
+    worth: FloatArray
+
+    @property
+    def joint(self) -> IntArray:
+        """One number per joint shown state, shape (R,); 0 is everybody undecided."""
+        weights = len(SHOWN) ** np.arange(len(self.seen))[::-1]
+        joint: IntArray = self.states @ weights.astype(np.int64)
+        return joint
+
+    def views(self) -> Iterator[tuple[IntArray, View]]:
+        """One group per setting."""
+        for number, names in enumerate(self.names):
+            here = np.flatnonzero(self.setting == number)
+            states, steps, rounds = (
+                dict(zip(self.seen, column[here].T, strict=True))
+                for column in (self.states, self.shown_steps, self.shown_rounds)
+            )
+            yield here, Named(self.step[here], states, steps, rounds, names)
+
+    def said(self, which: int) -> str:
+        """Step, shown states and, where they vary, thresholds."""
+        parts = [f"step {int(self.step[which])}"]
+        parts += [
+            f"with {agent} showing {SHOWN[int(code)]}"
+            for agent, code in zip(self.seen, self.states[which], strict=True)
+        ]
+        names = self.names[int(self.setting[which])]
+        parts += [f"and {agent} having thresholds {name}" for agent, name in names.items()]
+        return " ".join(parts)
 
 
 def values_of(plus: FloatArray, minus: FloatArray) -> FloatArray:
@@ -98,13 +176,18 @@ def values_of(plus: FloatArray, minus: FloatArray) -> FloatArray:
 
 def situations_of(settings: Sequence[Setting], agent: str) -> Situations:
     """Collect the situations of one agent over all settings."""
-    columns: list[list[NDArray[Any]]] = [[] for _ in range(7)]
+    columns: list[list[NDArray[Any]]] = [[] for _ in range(9)]
     seen: tuple[str, ...] = ()
     for number, setting in enumerate(settings):
         group = setting.solution.group
         position = group.index[agent]
         seen = group.agents[position].sees
-        state = [np.array(setting.solution.tracks[k].events.state) for k in group.sees[position]]
+        events = [setting.solution.tracks[k].events for k in group.sees[position]]
+        told = [
+            [np.array(e.state) for e in events],
+            [np.array(e.step) for e in events],
+            [np.array(e.round) for e in events],
+        ]
         moments = setting.solution.tracks[position].moments
         rounds = Counter(moment.step for moment in moments)
         for moment in moments:
@@ -114,12 +197,17 @@ def situations_of(settings: Sequence[Setting], agent: str) -> Situations:
             omega = np.exp(moment.log_before).mean(axis=0)[possible].ravel() / rounds[moment.step]
             shown = np.exp(moment.log_shown)[:, possible].reshape(2, -1)
             size = len(omega)
-            states = [s[w] for s, w in zip(state, where, strict=True)]
+            columns_seen = [
+                np.stack([x[w] for x, w in zip(one, where, strict=True)], axis=1)
+                if seen
+                else np.zeros((size, 0), dtype=np.int64)
+                for one in told
+            ]
             entries = (
                 np.full(size, number),
                 np.full(size, moment.step),
                 np.full(size, moment.round),
-                np.stack(states, axis=1) if states else np.zeros((size, 0), dtype=np.int64),
+                *columns_seen,
                 setting.weight * omega * shown[0],
                 setting.weight * omega * shown[1],
                 moment.value[possible].ravel(),
@@ -127,4 +215,6 @@ def situations_of(settings: Sequence[Setting], agent: str) -> Situations:
             for column, entry in zip(columns, entries, strict=True):
                 column.append(entry)
     joined = [np.concatenate(column) for column in columns]
-    return Situations(seen, *joined)
+    setting_of, *rest = joined
+    names: tuple[Mapping[str, str], ...] = tuple(setting.names for setting in settings)
+    return Situations(names, seen, setting_of, *rest)

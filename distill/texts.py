@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from pathlib import Path
 from typing import Any
 
-from thumbwright.distill.case import Case
+from thumbwright.distill.case import Case, is_crowd
 from thumbwright.distill.cautions import cautions
+from thumbwright.distill.crowds import ENUMERATED, CrowdEngine, crowd_in
 from thumbwright.distill.findings import Figures, Findings
 from thumbwright.exact.forecast import Forecast
 from thumbwright.exact.group import Agent, Group
@@ -26,27 +27,32 @@ def columns(rows: Sequence[Sequence[str]], right: Sequence[int] = ()) -> list[st
     return lines
 
 
-def check_text(case: Case, group: Group, expected: Forecast) -> str:
-    """The case in short, the engine, the forecast, and what is odd about it."""
+def check_text(case: Case, group: Group, engine: Sequence[str]) -> str:
+    """The case in short, the engine and its forecast as told by ``engine``, and what is odd."""
+    return "\n".join(
+        [
+            f"{case.title}: “{case.question.plus}” or “{case.question.minus}”?",
+            f"case {case.name}, digest {case.digest}",
+            "",
+            f"Rule for {_owner_in_full(case)}, up to "
+            f"{case.rule.rows} rows, looking at {', '.join(case.rule.inputs)}; forms: "
+            f"{', '.join(case.rule.forms)}.",
+            f"{case.time.horizon} steps; what is shown is taken in "
+            + ("from the next step on." if case.time.exchange == "once" else "at once, in rounds."),
+            "",
+            *_agents_table(group),
+            "",
+            *engine,
+            *(f"Note: {text}" for text in _oddities(group)),
+        ]
+    )
+
+
+def network_engine(expected: Forecast) -> list[str]:
+    """How a network is played, and what that takes."""
     lines = [
-        f"{case.title}: “{case.question.plus}” or “{case.question.minus}”?",
-        f"case {case.name}, digest {case.digest}",
-        "",
-        f"Rule for {case.rule_agent} ({case.agents[case.rule_agent].name}), up to "
-        f"{case.rule.rows} rows, looking at {', '.join(case.rule.inputs)}; forms: "
-        f"{', '.join(case.rule.forms)}.",
-        f"{case.time.horizon} steps; what is shown is taken in "
-        + ("from the next step on." if case.time.exchange == "once" else "at once, in rounds."),
-        "",
-        *columns(
-            [
-                ("agent", "sees", "answers minus at or below", "plus at or above", "evidence"),
-                *(_agent_cells(agent) for agent in group.agents),
-            ]
-        ),
-        "",
         "Engine: exact display histories, contracted as matrix products; nothing is sampled.",
-        f"Forecast: about {_size(expected.memory)} of memory and {_duration(expected.seconds)} for "
+        f"Forecast: about {size(expected.memory)} of memory and {duration(expected.seconds)} for "
         f"the exact beliefs ({expected.events} display events per agent; widest: agent "
         f"{expected.widest}).",
     ]
@@ -55,8 +61,57 @@ def check_text(case: Case, group: Group, expected: Forecast) -> str:
             "A shorter horizon, fewer agents in sight of each other, or exchange = “once” would "
             "make it smaller."
         )
-    lines += [f"Note: {text}" for text in _oddities(group)]
-    return "\n".join(lines)
+    return lines
+
+
+def crowd_engine(found: CrowdEngine) -> list[str]:
+    """How a crowd is played, and what that takes."""
+    kinds = "all alike" if found.kinds == 1 else f"of {found.kinds} kinds"
+    lines = [
+        f"Engine: the public histories of a crowd of {found.members}, {kinds}, by how many show "
+        "what in which round."
+    ]
+    if found.sampled is None:
+        lines.append(
+            f"All are enumerated ({found.entries:,} moments of them; more than {ENUMERATED:,} "
+            "would be sampled): nothing is sampled."
+        )
+    else:
+        histories, seed = found.sampled
+        lines.append(
+            f"There are too many to enumerate (more than {ENUMERATED:,} moments of them), so "
+            f"{histories:,} are sampled with seed {seed}; beliefs along each of them are exact, "
+            "figures carry standard errors."
+        )
+        ways = ["a shorter horizon", "leaving out the least likely ones with --drop"]
+        if found.largest is not None and found.largest > 1:
+            ways.insert(0, f"a crowd of at most {found.largest} members")
+        lines.append(f"For all to be enumerated: {', '.join(ways[:-1])}, or {ways[-1]}.")
+    lines.append(
+        f"Forecast: about {size(found.memory)} of memory and {duration(found.seconds)} for the "
+        "exact beliefs."
+    )
+    return lines
+
+
+MOST_LISTED = 12
+"""A longer list of agents, and any crowd, is told by kinds of agents."""
+
+
+def _agents_table(group: Group) -> list[str]:
+    """One line per agent; in a large group one per sort of agent that differs."""
+    cells = [_agent_cells(agent) for agent in group.agents]
+    head = ("agent", "sees", "answers minus at or below", "plus at or above", "evidence")
+    if len(cells) <= MOST_LISTED and crowd_in(group) is None:
+        return columns([head, *cells])
+    alike: dict[tuple[str, ...], list[str]] = {}
+    for agent, (name, _, *rest) in zip(group.agents, cells, strict=True):
+        alike.setdefault((f"{len(agent.sees)} others", *rest), []).append(name)
+    rows: list[tuple[str, ...]] = [
+        (names[0] if len(names) == 1 else f"{names[0]} and {len(names) - 1} like it", *shared)
+        for shared, names in alike.items()
+    ]
+    return columns([head, *rows])
 
 
 def _agent_cells(agent: Agent) -> tuple[str, str, str, str, str]:
@@ -73,32 +128,53 @@ def _agent_cells(agent: Agent) -> tuple[str, str, str, str, str]:
 
 
 def _oddities(group: Group) -> list[str]:
-    said = []
+    """What is odd about agents; said once where several are odd in the same way."""
+    said: dict[str, list[str]] = {}
     for agent in group.agents:
-        for _, bound in agent.thresholds:
-            if not bound.minus < group.prior < bound.plus:
-                said.append(
-                    f"the prior ({group.prior:.4g} nats) is not between the thresholds of "
-                    f"{agent.id}; it answers at its first step unless its first observation "
-                    "speaks against it"
-                )
-                break
-        if not agent.evidence.informative:
-            said.append(
-                f"the evidence of {agent.id} carries no information: it can only follow others"
-            )
-        if agent.evidence.certain_plus or agent.evidence.certain_minus:
-            said.append(
-                f"some evidence of {agent.id} is certain: one answer makes it impossible, so "
-                "whoever meets it answers at once"
-            )
-    return said
+        for text in _odd(agent, group.prior):
+            said.setdefault(text, []).append(agent.id)
+    return [
+        text.replace(
+            _WHO, f"{who[0]} and {len(who) - 1} others" if len(who) > 2 else " and ".join(who)
+        )
+        for text, who in said.items()
+    ]
+
+
+_WHO = "{who}"
+
+
+def _odd(agent: Agent, prior: float) -> Iterator[str]:
+    if any(not bound.minus < prior < bound.plus for _, bound in agent.thresholds):
+        yield (
+            f"the prior ({prior:.4g} nats) is not between the thresholds of {_WHO}, so an answer "
+            "comes at the first step unless the first observation speaks against it"
+        )
+    if not agent.evidence.informative:
+        yield f"the evidence of {_WHO} carries no information: only others can be followed"
+    if agent.evidence.certain_plus or agent.evidence.certain_minus:
+        yield (
+            f"some evidence of {_WHO} is certain: one answer makes it impossible, so whoever meets "
+            "it answers at once"
+        )
+
+
+def _owner_in_full(case: Case) -> str:
+    owner = owner_of(case)
+    return owner if is_crowd(case.agents) else f"{case.rule_agent} ({owner})"
+
+
+def owner_of(case: Case) -> str:
+    """Whom the rule is for: one agent by name, or anybody in a crowd of which all are meant."""
+    if case.rule.agent == "any" and is_crowd(case.agents):
+        return f"any of the {len(case.agents)}"
+    return case.agents[case.rule_agent].name
 
 
 def sheet_text(findings: Findings, written: Sequence[Path]) -> str:
     """What the main job found, in a few lines, and where it is."""
     case = findings.case
-    lines = [f"{case.title}: rule for {case.agents[findings.agent].name}", ""]
+    lines = [f"{case.title}: rule for {owner_of(case)}", ""]
     named = [
         *(
             (f"{name}, {len(form.rule.rows)} rows", form.figures)
@@ -132,37 +208,57 @@ def figures_table(
             "benefit kept",
         )
     ]
+    sampled = False
     for name, figures in named:
         get = figures.__getitem__ if isinstance(figures, dict) else figures.__getattribute__
+        errors = get("errors") or {}
+        sampled |= bool(errors)
         none = (get("given_plus")["undecided"] + get("given_minus")["undecided"]) / 2
         kept, risk = get("benefit_kept"), get("risk")
         rows.append(
             (
                 name,
-                f"{get('wrong_given_plus'):.5f}",
-                f"{get('wrong_given_minus'):.5f}",
+                with_error(get("wrong_given_plus"), errors.get("wrong_given_plus"), 5),
+                with_error(get("wrong_given_minus"), errors.get("wrong_given_minus"), 5),
                 f"{none:.5f}",
-                f"{get('mean_step'):.3f}",
-                "" if risk is None else f"{risk:.6f}",
-                "" if kept is None else f"{100 * kept:.2f} %",
+                with_error(get("mean_step"), errors.get("mean_step"), 3),
+                "" if risk is None else with_error(risk, errors.get("risk"), 6),
+                "" if kept is None else with_error(kept, errors.get("benefit_kept"), 2, " %"),
             )
         )
-    return columns(rows, right=range(1, 7))
+    lines = columns(rows, right=range(1, 7))
+    return [*lines, "(± is one standard error: histories were sampled)"] if sampled else lines
+
+
+def with_error(number: float, error: float | None, digits: int, unit: str = "") -> str:
+    """A number with its standard error, where it has one; per cent where that is the unit."""
+    factor = 100.0 if unit else 1.0
+    text = f"{factor * number:.{digits}f}"
+    if error is not None:
+        text += f" ± {factor * error:.{digits}f}"
+    return text + unit
 
 
 def outcomes_text(found: dict[str, Any]) -> str:
-    """Outcomes of exact play, one line per agent and answer."""
-    rows = [("agent", "given", "plus", "minus", "undecided", "mean step if decided")]
-    for agent in found["agents"]:
+    """Outcomes of exact play, one line per agent, or per kind of a crowd, and answer."""
+    rows: list[tuple[str, ...]] = [
+        ("agent", "given", "plus", "minus", "undecided", "mean step if decided")
+    ]
+    for name, agent in _told_apart(found["agents"]):
         for key in ("given_plus", "given_minus"):
-            one = agent[key]
+            one, error = agent[key], agent.get("errors", {}).get(key, {})
             step = one["mean_step_if_decided"]
             rows.append(
                 (
-                    agent["id"],
+                    name,
                     key.removeprefix("given_"),
-                    *(f"{one[name]:.6f}" for name in ("plus", "minus", "undecided")),
-                    "never" if step is None else f"{step:.3f}",
+                    *(
+                        with_error(one[end], error.get(end), 6)
+                        for end in ("plus", "minus", "undecided")
+                    ),
+                    "never"
+                    if step is None
+                    else with_error(step, error.get("mean_step_if_decided"), 3),
                 )
             )
     lines = columns(rows, right=range(2, 6))
@@ -174,8 +270,29 @@ def outcomes_text(found: dict[str, Any]) -> str:
         )
     if found["near_tie_mass"] > 0:
         lines.append(f"near ties: probability {found['near_tie_mass']:.3g}")
-    lines.append("exact" if found["exact"] else "not exact: evidence split, or displays dropped")
+    if found.get("sampled_with_seed") is not None:
+        lines.append(
+            f"{found['histories']:,} public histories sampled with seed "
+            f"{found['sampled_with_seed']}, the beliefs along each exact; ± is one standard error"
+        )
+    lines.append("exact" if found["exact"] else _INEXACT)
     return "\n".join(lines)
+
+
+_INEXACT = "not exact: evidence split, or histories dropped or sampled"
+
+
+def _told_apart(agents: list[dict[str, Any]]) -> list[tuple[str, dict[str, Any]]]:
+    """Agents by name; members of one kind of a crowd together."""
+    if not any("kind" in agent for agent in agents):
+        return [(agent["id"], agent) for agent in agents]
+    kinds: dict[int, list[dict[str, Any]]] = {}
+    for agent in agents:
+        kinds.setdefault(agent["kind"], []).append(agent)
+    return [
+        (f"{like[0]['id']}, one of {len(like)} alike" if len(like) > 1 else like[0]["id"], like[0])
+        for like in kinds.values()
+    ]
 
 
 _GROUP_WORDS = {
@@ -200,9 +317,14 @@ def _group_lines(found: dict[str, Any]) -> list[str]:
         why = found.get("why_no_group")
         return [] if why is None else ["", f"no figures for the group as a whole: {why}", ""]
     rows = [("the group", "given plus", "given minus")]
+    errors = found.get("group_errors", {})
     for name, words in _GROUP_WORDS.items():
-        cells = [group[key][name] for key in ("given_plus", "given_minus")]
-        plus, minus = ("never" if cell is None else f"{cell:.6f}" for cell in cells)
+        plus, minus = (
+            "never"
+            if group[key][name] is None
+            else with_error(group[key][name], errors.get(key, {}).get(name), 6)
+            for key in ("given_plus", "given_minus")
+        )
         rows.append((words, plus, minus))
     return ["", *columns(rows, right=(1, 2)), ""]
 
@@ -231,9 +353,7 @@ def price_text(found: dict[str, Any]) -> str:
     if losses is not None:
         lines += ["", _losses_text(losses)]
     lines += [f"Note: {text}" for text in found["remarks"]]
-    lines.append(
-        "exact" if found["exact"] else "not exact: evidence split, or displays read off-model"
-    )
+    lines.append("exact" if found["exact"] else f"{_INEXACT}, or displays read off-model")
     return "\n".join(lines)
 
 
@@ -261,12 +381,14 @@ def _losses_text(losses: dict[str, Any]) -> str:
     return text + ")"
 
 
-def _size(size: float) -> str:
+def size(amount: float) -> str:
+    """Bytes in words."""
     for unit, one in (("GB", 1e9), ("MB", 1e6)):
-        if size >= one:
-            return f"{size / one:.3g} {unit}"
+        if amount >= one:
+            return f"{amount / one:.3g} {unit}"
     return "less than 1 MB"
 
 
-def _duration(seconds: float) -> str:
+def duration(seconds: float) -> str:
+    """Seconds in words."""
     return "less than a second" if seconds < 1 else f"{seconds:.2g} seconds"

@@ -12,10 +12,17 @@ import math
 
 import numpy as np
 
+from thumbwright.exact.crowd_adopt import (
+    CrowdAdoption,
+    CrowdPolicy,
+    adopt_crowd,
+    exact_member,
+)
 from thumbwright.exact.crowd_course import (
     MOST,
     Enumerated,
     Sampled,
+    TooMany,
     balanced,
     blocks,
     half_of,
@@ -36,18 +43,29 @@ from thumbwright.exact.crowd_held import (
 )
 from thumbwright.exact.crowd_kinds import Crowd, Kind, check_play, kinds_of
 from thumbwright.exact.crowd_play import Histories, Record
+from thumbwright.exact.crowd_shown import Showing, Shown, enumerate_shown, sample_shown
 
 __all__ = [
     "Crowd",
+    "CrowdAdoption",
     "CrowdPlay",
+    "CrowdPolicy",
     "CrowdSituations",
     "Kind",
     "KindPlay",
     "Mean",
+    "Showing",
+    "Shown",
+    "TooMany",
+    "Weights",
+    "adopt_crowd",
     "enumerate_crowd",
+    "enumerate_shown",
     "enumerate_situations",
+    "exact_member",
     "kinds_of",
     "sample_crowd",
+    "sample_shown",
     "sample_situations",
 ]
 

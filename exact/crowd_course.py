@@ -31,6 +31,10 @@ _AT_ONCE = 1_000_000
 """Continuations that are laid out at a time, most of which may be dropped."""
 
 
+class TooMany(ModelError):
+    """There are more histories than may be held; sampling them is a way out."""
+
+
 class Course(ABC):
     """One way of going on."""
 
@@ -64,6 +68,7 @@ def play(
     settle: bool,
     watch: Watch | None = None,
     rounds: Rounds | None = None,
+    chosen: Callable[[Histories, Choice], None] | None = None,
 ) -> Record:
     """Play to the horizon and return what has happened in all histories that are over.
 
@@ -78,6 +83,8 @@ def play(
     rounds : Rounds, optional
         If given, every history has at least these rounds, and all have the rounds that one has:
         then each moment of the model can be told of whole.
+    chosen : callable, optional
+        Told, in every round, what may happen in it.
 
     Raises
     ------
@@ -92,6 +99,8 @@ def play(
             if watch:
                 watch(step, round_, histories)
             choice = histories.decide(columns)
+            if chosen:
+                chosen(histories, choice)
             columns = course.go_on(histories, choice, step, round_)
             if not settle:
                 break
@@ -185,7 +194,7 @@ class Enumerated(Course):
     drop : float
         Probability below which a history is dropped.
     most : int
-        ModelError is raised where more histories than this would be held.
+        TooMany is raised where more histories than this would be held.
 
     Attributes
     ----------
@@ -259,7 +268,7 @@ class Enumerated(Course):
                 found.append(self._weigh(log_share, int(n), at, weight, (parent, a, b)))
                 held += len(found[-1][0])
                 if held > self._most:
-                    raise ModelError(
+                    raise TooMany(
                         f"more than {self._most:,} public histories of this crowd would be held; "
                         "drop the least likely ones, sample histories instead, or shorten the "
                         "horizon"

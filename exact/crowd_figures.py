@@ -132,6 +132,16 @@ class Weights:
             variance += len(stratum) * residue[:, stratum].var(axis=1, ddof=1)
         return value, np.divide(np.sqrt(variance), bottom, out=np.full(2, np.nan), where=bottom > 0)
 
+    def total_error(self, x: FloatArray) -> float:
+        """Error of the sum of both means of x, shape (2, H); the same histories serve for both."""
+        if not self._sampled:
+            return 0.0
+        whole = self._weight.sum(axis=1, keepdims=True)
+        mean = (self._weight * x).sum(axis=1, keepdims=True) / whole
+        residue = (self._weight / whole * (x - mean)).sum(axis=0)
+        variance = sum(len(s) * residue[s].var(ddof=1) for s in self._strata)
+        return float(np.sqrt(variance))
+
     def law(self, bins: IntArray, counts: BoolArray, size: int) -> Two:
         """Probability of each of ``size`` numbers, and its error, shape (2, size).
 

@@ -53,6 +53,10 @@ class Record:
         Step and round of the first commitment and step of the last so far; 0 where there is none.
     followers : ndarray of int, shape (H,)
         Commitments in the step of the first, after its round.
+    first_plus, first_minus : ndarray of int, shape (H,)
+        Commitments to plus and to minus at the very moment of the first.
+    origin : ndarray of int, shape (H,)
+        Where the history, or the one it goes on from, stood when this was last written down.
     near : ndarray of float, shape (2, H)
         Expected number of members decided by the tie rule and no clear margin, given the history.
     lean : ndarray of float, shape (K, 3, 2, H)
@@ -71,6 +75,9 @@ class Record:
     first_round: IntArray
     last: IntArray
     followers: IntArray
+    first_plus: IntArray
+    first_minus: IntArray
+    origin: IntArray
     near: FloatArray
     lean: FloatArray
     ratio: FloatArray
@@ -80,7 +87,8 @@ class Record:
         """Nothing has happened yet."""
         size = len(label)
         sizes = {"plus": (kinds, size), "minus": (kinds, size), "steps": (kinds, size)}
-        times = dict.fromkeys(("first", "first_round", "last", "followers"), (size,))
+        names = ("first", "first_round", "last", "followers", "first_plus", "first_minus", "origin")
+        times = dict.fromkeys(names, (size,))
         whole = {name: np.zeros(shape, dtype=np.int64) for name, shape in (sizes | times).items()}
         return cls(
             label=label,
@@ -102,12 +110,14 @@ class Record:
         self.plus[:, columns] += plus
         self.minus[:, columns] += minus
         self.steps[:, columns] += step * (plus + minus)
-        number = (plus + minus).sum(axis=0)
-        moved, number = columns[number > 0], number[number > 0]
+        total = (plus + minus).sum(axis=0)
+        moved, number = columns[total > 0], total[total > 0]
         new = self.first[moved] == 0
         at_once = ~new & (self.first[moved] == step)
         self.followers[moved[at_once]] += number[at_once]
         self.first[moved[new]], self.first_round[moved[new]] = step, round_
+        for came, said in ((self.first_plus, plus), (self.first_minus, minus)):
+            came[moved[new]] = said.sum(axis=0)[total > 0][new]
         self.last[moved] = step
 
     def arrays(self) -> dict[str, NDArray[Any]]:
@@ -161,19 +171,30 @@ class Histories:
     held : int, optional
         Kind of which one member is made to show undecided: others read it as they would, but it
         never commits and no history contains a factor of its.
+    lasting : bool
+        Whether the member that is held goes on showing undecided where the others' model says it
+        cannot. To them its silence is no news then: what they have been shown is worth what it was.
 
     Attributes
     ----------
     record : Record
+    horizon : int
     free : ndarray of int, shape (K, H)
         Undecided members of each kind, the one that is held left out.
     """
 
     def __init__(
-        self, crowd: Crowd, prior: float, horizon: int, labels: IntArray, held: int | None = None
+        self,
+        crowd: Crowd,
+        prior: float,
+        horizon: int,
+        labels: IntArray,
+        held: int | None = None,
+        lasting: bool = False,
     ) -> None:
         self._agents = [kind.agent for kind in crowd.kinds]
-        self._prior, self._horizon, self.held = prior, horizon, held
+        self._prior, self.horizon, self.held = prior, horizon, held
+        self._lasting = lasting and held is not None
         self._near = max(NEAR, _ROUNDING * crowd.size)
         kinds, size = len(crowd.kinds), len(labels)
         self._walks = [
@@ -238,11 +259,13 @@ class Histories:
         log_share[:, 2] = 0.0
         ratio = np.full((kinds, 2, size), np.nan)
         undecided = (self.free[:, columns] + self._aside) > 0
-        able = np.ones(size, dtype=bool)
+        able = told = np.ones(size, dtype=bool)
         if self.held is not None:
-            able = np.isfinite(self.log_left[self.held][:, columns]).any(axis=0)
+            possible = np.isfinite(self.log_left[self.held][:, columns]).any(axis=0)
+            able, told = (able, possible) if self._lasting else (possible, told)
         for k in range(kinds):
-            self._value[k, columns] = self.worth(k, columns)
+            value = self.worth(k, columns)
+            self._value[k, columns] = np.where(told, value, self._value[k, columns])
         for k in range(kinds):
             divided = self._cut(k, columns, undecided[k])
             if divided is None:
@@ -325,6 +348,8 @@ class Histories:
 
     def going_on(self) -> BoolArray:
         """Where somebody is undecided; with one held, where its own walk could have got there."""
+        if self._lasting:
+            return np.ones(len(self), dtype=bool)
         if self.held is None:
             return np.asarray((self.free > 0).any(axis=0))
         return np.asarray(np.isfinite(self.log_left[self.held]).any(axis=0))

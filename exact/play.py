@@ -224,9 +224,7 @@ def difference(solution: Solution, agent: str, one: Policy, other: Policy) -> fl
     return float(group.prior_plus * ever[0] + (1.0 - group.prior_plus) * ever[1])
 
 
-def _play(
-    solution: Solution, position: int, reader: Reader, whole: bool
-) -> tuple[Track, float]:
+def _play(solution: Solution, position: int, reader: Reader, whole: bool) -> tuple[Track, float]:
     group = solution.group
     alone = not group.influences(position)
     if alone or (not whole and silence_is_possible(solution, position)):

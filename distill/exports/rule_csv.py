@@ -19,12 +19,13 @@ from typing import Any
 from thumbwright.distill.cautions import cautions
 from thumbwright.distill.decimals import json_figure, plain_decimal
 from thumbwright.distill.findings import Figures, Findings
-from thumbwright.distill.rules import SHOWN, Row, Rule
+from thumbwright.distill.rules import FIRST_ANSWER, FIRST_ANSWERS, NUMBERS, SHOWN, Row, Rule
 
 NAME = "rule as CSV"
 
 SHOWS = "_shows"
 THRESHOLDS = "_thresholds"
+FROM, TO = "_from", "_to"
 JOIN = "|"
 """What joins several states or thresholds that one row accepts."""
 
@@ -74,8 +75,13 @@ def rule_csv(rule: Rule, findings: Findings) -> str:
     valued = is_valued(rule)
     for row in rule.rows:
         cells = [_whole(row.step_from), _whole(row.step_to)]
+        for name in numbers_used(rule):
+            cells += [_whole(end) for end in row.ranges.get(name, (None, None))]
+        if answers_used(rule):
+            cells.append(_joined(row.first_answer, FIRST_ANSWERS))
         for agent in rule.seen:
-            cells.append(_joined(row.shows.get(agent), SHOWN))
+            if shows_used(rule):
+                cells.append(_joined(row.shows.get(agent), SHOWN))
             if agent in named:
                 cells.append(_joined(row.thresholds.get(agent), threshold_names(rule, findings)))
         cells += _worth_cells(row) if valued else [_whole(row.minus_at), _whole(row.plus_at)]
@@ -140,6 +146,21 @@ def is_valued(rule: Rule) -> bool:
     return any(row.value is not None for row in rule.rows)
 
 
+def numbers_used(rule: Rule) -> tuple[str, ...]:
+    """Numbers that some row looks at, in their fixed order."""
+    return tuple(name for name in NUMBERS if any(name in row.ranges for row in rule.rows))
+
+
+def answers_used(rule: Rule) -> bool:
+    """Whether some row looks at which answer came first."""
+    return any(row.first_answer is not None for row in rule.rows)
+
+
+def shows_used(rule: Rule) -> bool:
+    """Whether what each agent shows belongs to the rule: not where it only counts them."""
+    return any(row.shows for row in rule.rows) or not (numbers_used(rule) or answers_used(rule))
+
+
 def threshold_names(rule: Rule, findings: Findings) -> tuple[str, ...]:
     """Return all threshold names in the order of the case, then any others by name."""
     declared = tuple(findings.case.thresholds)
@@ -148,10 +169,15 @@ def threshold_names(rule: Rule, findings: Findings) -> tuple[str, ...]:
 
 
 def figures_record(figures: Figures) -> dict[str, Any]:
-    """Return ``figures`` as JSON holds it, in the order of the class."""
+    """Return ``figures`` as JSON holds it, in the order of the class.
+
+    Standard errors are among them only where histories were sampled.
+    """
     record: dict[str, Any] = {}
     for field in dataclasses.fields(figures):
         found = getattr(figures, field.name)
+        if field.name == "errors" and found is None:
+            continue
         if isinstance(found, dict):
             record[field.name] = {key: json_figure(number) for key, number in found.items()}
         else:
@@ -192,12 +218,64 @@ def _fields(rule: Rule, findings: Findings) -> list[dict[str, Any]]:
                 "constraints": {"minimum": 1},
             }
         )
+    for name in numbers_used(rule):
+        fields += _number_fields(name)
+    if answers_used(rule):
+        fields.append(_answers_field())
     named = _agents_with_thresholds(rule)
     for agent in rule.seen:
-        fields.append(_shows_field(agent, findings))
+        if shows_used(rule):
+            fields.append(_shows_field(agent, findings))
         if agent in named:
             fields.append(_thresholds_field(agent, threshold_names(rule, findings)))
     return fields + (_value_fields() if is_valued(rule) else _bar_fields(findings))
+
+
+_NUMBER_MEANS = {
+    "plus_shown": "how many of the seen agents show plus",
+    "minus_shown": "how many of the seen agents show minus",
+    "undecided_shown": "how many of the seen agents show neither answer yet",
+    "steps_since_first": "steps since the first of the seen agents answered, that step included;"
+    " 0 while none has",
+    "steps_since_last": "steps since the latest answer of a seen agent, that step included;"
+    " 0 while there is none",
+    "came_first": "how many of the seen agents answered at the moment of the first answer;"
+    " 0 while none has",
+}
+
+
+def number_means(name: str) -> str:
+    """What one of ``rules.NUMBERS`` is, in words that go on in a sentence."""
+    return _NUMBER_MEANS[name]
+
+
+def _number_fields(name: str) -> list[dict[str, Any]]:
+    unit = "steps" if name.startswith("steps") else "agents"
+    ends = (name + FROM, "Least", "least"), (name + TO, "Most", "greatest")
+    return [
+        {
+            "name": column,
+            "title": f"{title}: {name.replace('_', ' ')}",
+            "type": "integer",
+            "description": f"The {end} number, inclusive, for which the row holds, of"
+            f" {number_means(name)}. Blank: open.",
+            "unit": unit,
+            "constraints": {"minimum": 0},
+        }
+        for column, title, end in ends
+    ]
+
+
+def _answers_field() -> dict[str, Any]:
+    answers = JOIN.join(FIRST_ANSWERS)
+    return {
+        "name": FIRST_ANSWER,
+        "title": "First answer",
+        "type": "string",
+        "description": f"Which answer a seen agent gave first, several joined by {JOIN}: nobody"
+        " (none yet), plus, minus, both (at the same moment). Blank: any.",
+        "constraints": {"pattern": rf"^({answers})(\|({answers}))*$"},
+    }
 
 
 def _shows_field(agent: str, findings: Findings) -> dict[str, Any]:

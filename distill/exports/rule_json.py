@@ -13,13 +13,16 @@ from typing import Any
 from thumbwright.distill.cautions import cautions
 from thumbwright.distill.decimals import json_figure, json_number
 from thumbwright.distill.exports.rule_csv import (
+    answers_used,
     figure_units,
     figures_record,
     is_valued,
+    numbers_used,
+    shows_used,
     threshold_names,
 )
 from thumbwright.distill.findings import CostBasis, Findings, FormResult
-from thumbwright.distill.rules import SHOWN, Row, Rule
+from thumbwright.distill.rules import FIRST_ANSWERS, SHOWN, Row, Rule
 
 NAME = "rule as JSON"
 
@@ -49,7 +52,7 @@ def rule_json(findings: Findings) -> str:
         },
         "agent": findings.agent,
         "seen": list(findings.seen),
-        "units": _units(),
+        "units": _units(findings),
         "forms": {name: _form(result, findings) for name, result in findings.forms.items()},
         "costs": {
             "exact": figures_record(findings.exact),
@@ -73,10 +76,12 @@ def rule_json(findings: Findings) -> str:
     return json.dumps(document, indent=2, ensure_ascii=False, allow_nan=False) + "\n"
 
 
-def _units() -> dict[str, str]:
+def _units(findings: Findings) -> dict[str, str]:
+    counted = any(numbers_used(result.rule) for result in findings.forms.values())
     return {
         "step_from": "step, inclusive; null is open",
         "step_to": "step, inclusive; null is open",
+        **({"ranges": "least and greatest number, inclusive; null is open"} if counted else {}),
         "nats": "worth of the situation: what it adds to the log-odds for plus",
         "minus_at_or_below": "own count; null is never",
         "plus_at_or_above": "own count; null is never",
@@ -113,8 +118,16 @@ def _row(row: Row, rule: Rule, findings: Findings) -> dict[str, Any]:
         "shows": {
             agent: [state for state in SHOWN if state in row.shows.get(agent, SHOWN)]
             for agent in rule.seen
+            if shows_used(rule)
         },
     }
+    if numbers_used(rule):
+        record["ranges"] = {
+            name: list(row.ranges.get(name, (None, None))) for name in numbers_used(rule)
+        }
+    if answers_used(rule):
+        accepted = FIRST_ANSWERS if row.first_answer is None else row.first_answer
+        record["first_answer"] = [answer for answer in FIRST_ANSWERS if answer in accepted]
     if any(other.thresholds for other in rule.rows):
         order = threshold_names(rule, findings)
         record["thresholds"] = {

@@ -1,9 +1,9 @@
-"""The policy sheet as one HTML file: style and pictures inside, no network, no script."""
+"""The policy sheet as one HTML file: style, pictures and script inside, no network."""
 
 from __future__ import annotations
 
 from thumbwright.distill.findings import Findings
-from thumbwright.distill.sheet.templates import rendered
+from thumbwright.distill.sheet.page import page
 from thumbwright.distill.sheet.view import sheet
 
 NAME = "policy sheet"
@@ -11,4 +11,4 @@ NAME = "policy sheet"
 
 def render(findings: Findings) -> dict[str, str | bytes]:
     """Return ``sheet.html``."""
-    return {"sheet.html": rendered("sheet.html.j2", {"sheet": sheet(findings)})}
+    return {"sheet.html": page(sheet(findings))}

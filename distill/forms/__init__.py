@@ -17,8 +17,9 @@ from types import ModuleType
 
 from thumbwright.distill.rules import Rule
 
-MODULES = ("lines", "table")
-"""The form modules of this package, in the order in which they are printed."""
+MODULES = ("lines", "table", "table-by-risk", "tree")
+"""The forms of this package, in the order in which they are printed; a hyphen in a name is an
+underscore in that of its module."""
 
 
 @dataclass(frozen=True)
@@ -56,4 +57,4 @@ class Distilled:
 
 def form(name: str) -> ModuleType:
     """The module of a form, imported when it is needed."""
-    return import_module(f"{__name__}.{name}")
+    return import_module(f"{__name__}.{name.replace('-', '_')}")

@@ -6,7 +6,6 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from thumbwright.distill.costs import Pricer, Tally, average
 from thumbwright.distill.forms.runs import (
     Layout,
     Sides,
@@ -14,7 +13,9 @@ from thumbwright.distill.forms.runs import (
     count_range,
     threshold_order,
 )
+from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.situations import values_of
+from thumbwright.distill.tallies import Tally, average
 from thumbwright.exact.arrays import FloatArray, IntArray, sums
 from thumbwright.exact.many import (
     Bars,
@@ -32,7 +33,7 @@ MOST_AT_ONCE = 400
 class Batch:
     """Prices layouts of one agent's lines; results do not depend on which way is taken."""
 
-    def __init__(self, pricer: Pricer) -> None:
+    def __init__(self, pricer: NetworkPricer) -> None:
         self._pricer = pricer
         self.together = all(
             fits(s.solution, s.solution.group.index[pricer.agent]) for s in pricer.settings
@@ -67,7 +68,7 @@ class Batch:
                 for number, setting in enumerate(self._pricer.settings)
             ]
             found += [
-                average([(weight, _one(many, i)) for weight, many in played])
+                average([(weight, one_of(many, i)) for weight, many in played])
                 for i in range(len(part))
             ]
         return found
@@ -144,7 +145,8 @@ class Batch:
         return float(values_of(np.array([plus]), np.array([minus]))[0])
 
 
-def _one(many: ManyTallies, i: int) -> Tally:
+def one_of(many: ManyTallies, i: int) -> Tally:
+    """The outcome of one of many rules that were priced together."""
     return Tally(
         many.plus[i],
         many.minus[i],

@@ -20,6 +20,7 @@ from thumbwright.distill.forms import Distilled, Wanted
 from thumbwright.distill.forms.batch import Batch
 from thumbwright.distill.forms.boxes import gain
 from thumbwright.distill.forms.runs import Layout, Moves, as_rule, lossless, moved_bars
+from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.exact.engine import Progress
 from thumbwright.exact.errors import ModelError
 
@@ -60,6 +61,17 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
             f"speaks for plus as it grows, which {evidence.kind} evidence with these keys has not; "
             'leave "lines" out of the forms, or swap the two answers if the count speaks for minus'
         )
+    others = [name for name in wanted.inputs if name not in ("step", "shown", "thresholds")]
+    if others:
+        raise ModelError(
+            f'the form "lines" looks at step, shown and thresholds, not at {", ".join(others)}; '
+            'use the form "table" for these'
+        )
+    if not isinstance(pricer, NetworkPricer):
+        raise ModelError(
+            f'the form "lines" tells the seen agents apart, and {len(pricer.seen)} in a crowd are '
+            'too many for that; use the form "table" with plus_shown and minus_shown as inputs'
+        )
     states = 3 ** len(pricer.seen) if "shown" in wanted.inputs else 1
     if states > MOST_STATES:
         raise ModelError(
@@ -96,7 +108,7 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
         search.settle_bars()
     rule = as_rule(pricer, search.layout)
     situations = pricer.situations
-    pooled = situations.pooled(situations.rows_of(rule, pricer.settings), len(rule.rows))
+    pooled = situations.pooled(situations.rows_of(rule), len(rule.rows))
     kept = situations.information_kept(float(gain(*pooled).sum()))
     return Distilled(rule, kept, None, tuple(notes))
 
@@ -105,7 +117,7 @@ class Search:
     """Merging lines of one layout, always under exact pricing."""
 
     def __init__(
-        self, pricer: Pricer, wanted: Wanted, layout: Layout, progress: Progress | None
+        self, pricer: NetworkPricer, wanted: Wanted, layout: Layout, progress: Progress | None
     ) -> None:
         self._pricer, self._wanted, self._progress = pricer, wanted, progress
         self._batch = Batch(pricer)

@@ -7,13 +7,14 @@ lines. Layouts are values: merging makes a new one.
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, replace
 from itertools import product
 
 import numpy as np
 
 from thumbwright.distill.costs import Pricer
+from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.rules import SHOWN, Row, Rule
 from thumbwright.distill.situations import values_of
 from thumbwright.exact.arrays import FloatArray, IntArray
@@ -153,7 +154,7 @@ def joined(one: Sides, other: Sides) -> Sides | None:
     return (*one[:k], one[k] | other[k], *one[k + 1 :])
 
 
-def lossless(pricer: Pricer, inputs: tuple[str, ...]) -> tuple[Layout, int]:
+def lossless(pricer: NetworkPricer, inputs: tuple[str, ...]) -> tuple[Layout, int]:
     """The layout in which every situation has the bars of its exact worth.
 
     Returns
@@ -197,7 +198,7 @@ def lossless(pricer: Pricer, inputs: tuple[str, ...]) -> tuple[Layout, int]:
     return Layout(_same_lines_together(groups)), mixed
 
 
-def moved_bars(pricer: Pricer, inputs: tuple[str, ...], layout: Layout) -> Iterator[Layout]:
+def moved_bars(pricer: NetworkPricer, inputs: tuple[str, ...], layout: Layout) -> Iterator[Layout]:
     """Every layout with one bar of a free line moved by one, within the exact bars it covers."""
     situations = pricer.situations
     contexts = _contexts(pricer, inputs)
@@ -223,7 +224,7 @@ def moved_bars(pricer: Pricer, inputs: tuple[str, ...], layout: Layout) -> Itera
 class Moves:
     """How far bars move from one layout to another, weighted with how often that matters."""
 
-    def __init__(self, pricer: Pricer, inputs: tuple[str, ...]) -> None:
+    def __init__(self, pricer: NetworkPricer, inputs: tuple[str, ...]) -> None:
         situations = pricer.situations
         self._contexts, self._step = _contexts(pricer, inputs), situations.step
         self._mass = situations.plus + situations.minus
@@ -311,7 +312,7 @@ def _named(pricer: Pricer, pair: tuple[int, int]) -> tuple[int | None, int | Non
     )
 
 
-def _contexts(pricer: Pricer, inputs: tuple[str, ...]) -> IntArray:
+def _contexts(pricer: NetworkPricer, inputs: tuple[str, ...]) -> IntArray:
     """One row of codes per situation: shown states, then numbers of the settings' thresholds."""
     situations = pricer.situations
     shown = situations.states if "shown" in inputs else np.zeros_like(situations.states)
@@ -325,7 +326,7 @@ def _contexts(pricer: Pricer, inputs: tuple[str, ...]) -> IntArray:
     return np.concatenate([shown, numbers[situations.setting]], axis=1)
 
 
-def threshold_order(pricer: Pricer) -> list[str]:
+def threshold_order(pricer: NetworkPricer) -> list[str]:
     """Names of the thresholds that the rule tells apart, in the order of the case."""
     return list(dict.fromkeys(name for s in pricer.settings for name in s.names.values()))
 
@@ -348,7 +349,7 @@ def _same_lines_together(
     return tuple(groups)
 
 
-def as_rule(pricer: Pricer, layout: Layout, form: str = "lines") -> Rule:
+def as_rule(pricer: NetworkPricer, layout: Layout, form: str = "lines") -> Rule:
     """The layout as rows of a rule."""
     horizon, seen = pricer.group.horizon, pricer.seen
     order = threshold_order(pricer)
@@ -364,19 +365,25 @@ def as_rule(pricer: Pricer, layout: Layout, form: str = "lines") -> Rule:
             for agent, numbers in zip(seen, sides[len(seen) :], strict=False)
             if len(numbers) < len(order)
         }
-        rows += [
-            Row(
-                step_from=None if line.start == 1 else line.start,
-                step_to=None if line.stop == horizon else line.stop,
-                shows=shows,
-                thresholds=named,
-                minus_at=line.minus_at,
-                plus_at=line.plus_at,
-                base=line.base,
-            )
-            for line in lines
-        ]
+        rows += [_row(line, horizon, shows, named) for line in lines]
     return Rule(form, pricer.agent, seen, tuple(rows))
+
+
+def _row(
+    line: Line,
+    horizon: int,
+    shows: Mapping[str, frozenset[str]],
+    named: Mapping[str, frozenset[str]],
+) -> Row:
+    return Row(
+        step_from=None if line.start == 1 else line.start,
+        step_to=None if line.stop == horizon else line.stop,
+        shows=shows,
+        thresholds=named,
+        minus_at=line.minus_at,
+        plus_at=line.plus_at,
+        base=line.base,
+    )
 
 
 def alone_rows(pricer: Pricer) -> tuple[Row, ...]:
@@ -387,5 +394,4 @@ def alone_rows(pricer: Pricer) -> tuple[Row, ...]:
     lines: list[Line] = []
     for step, pair in zip(steps, zip(low, high, strict=True), strict=True):
         _append(lines, int(step), *_named(pricer, pair), True)
-    layout = Layout((((), tuple(lines)),))
-    return as_rule(pricer, layout).rows
+    return tuple(_row(line, horizon, {}, {}) for line in lines)

@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 from thumbwright.distill.findings import Findings
-from thumbwright.distill.rules import SHOWN, Row
+from thumbwright.distill.rules import FIRST_ANSWERS, SHOWN, Row
+from thumbwright.distill.sheet.counted import situation
 from thumbwright.distill.sheet.parts import Block, Card, Grid, Line, Peg, Zone
 from thumbwright.distill.sheet.voice import Counting, Voice
 from thumbwright.distill.sheet.words import fitting, letters, odds_in_words, plural, told, width
 
 _QUIET = frozenset({"undecided"})
+_SINCE = ("steps_since_first", "steps_since_last", "came_first")
 
 MOST_BOXES = 15
 OUTER_BOXES = 2
@@ -55,7 +57,16 @@ def alone_place(
 
 def is_quiet(row: Row, voice: Voice) -> bool:
     """Whether a row holds only while all watched agents are undecided."""
-    return all(row.shows.get(agent, frozenset(SHOWN)) == _QUIET for agent in voice.seen)
+    if all(row.shows.get(agent, frozenset(SHOWN)) == _QUIET for agent in voice.seen):
+        return True
+    most = {name: ends[1] for name, ends in row.ranges.items()}
+    least = row.ranges.get("undecided_shown", (None, None))[0] or 0
+    return (
+        most.get("plus_shown") == most.get("minus_shown") == 0
+        or any(most.get(name) == 0 for name in _SINCE)
+        or least >= len(voice.seen)
+        or row.first_answer == frozenset(FIRST_ANSWERS[:1])
+    )
 
 
 def scale(rows: tuple[Row, ...]) -> tuple[int, int]:
@@ -116,15 +127,15 @@ def heading(
 
     ``alone`` says that the line also serves where nobody is on watch.
     """
-    situation = voice.situation(row.shows)
+    shown = situation(row, voice)
     checks = voice.checks(row.step_from, row.step_to) if with_checks else ""
-    text = f"{situation}, {checks}" if checks else situation
+    text = f"{shown}, {checks}" if checks else shown
     habits = voice.habits(row.thresholds)
     text = f"{text} ({habits})" if habits else text
     accepted = {row.shows.get(agent, frozenset(SHOWN)) for agent in voice.seen}
     if alone:
         return text, "or nobody on watch"
-    if accepted == {_QUIET}:
+    if is_quiet(row, voice):
         return text, "and known to be on watch"
     if len(voice.seen) == 1 and accepted == {frozenset({"plus"})}:
         return text, _saying(text, voice.plus)
@@ -133,16 +144,22 @@ def heading(
     return text, ""
 
 
+def _counts(row: Row) -> bool:
+    return bool(row.ranges) or row.first_answer is not None
+
+
 def _saying(heading: str, answer: str) -> str:
     """Tell the answer behind a shown state, unless its heading has told it."""
     return "" if answer.lower() in heading.lower() else f"(says: {answer})"
 
 
-def shown_title(voice: Voice) -> str:
+def shown_title(voice: Voice, by_count: bool = False) -> str:
     """Return the head of the column that says what is shown."""
     if len(voice.seen) == 1:
         name = voice.seen_names[0]
         return f"{name}: {voice.thing}" if voice.thing else name
+    if by_count:
+        return f"How many {plural(voice.thing)}" if voice.thing else "How many show what"
     return f"Each {voice.thing}" if voice.thing else "What they show"
 
 
@@ -185,7 +202,7 @@ def _lines(rows: tuple[Row, ...], alone: tuple[Row, ...], voice: Voice, drifts: 
     return Card(
         kind="strips" if fits else "numbers",
         heading=f"Your peg starts on 0. {read}",
-        shown=shown_title(voice),
+        shown=shown_title(voice, any(_counts(row) for row in rows)),
         left=f"more {plural(voice.minus_sign)}",
         right=f"more {plural(voice.plus_sign)}",
         left_boxes=-low if fits else 0,
@@ -284,6 +301,8 @@ def _state(row: Row, voice: Voice) -> tuple[object, ...]:
     return (
         *shown,
         *sorted((agent, tuple(sorted(names))) for agent, names in row.thresholds.items()),
+        *sorted(row.ranges.items()),
+        row.first_answer,
     )
 
 

@@ -7,6 +7,7 @@ from typing import Any
 
 from thumbwright.distill.findings import Figures, Findings
 from thumbwright.distill.sheet.card import peg_words, short_act
+from thumbwright.distill.sheet.counted import tally_of
 from thumbwright.distill.sheet.parts import Card, Grid
 from thumbwright.distill.sheet.voice import Counting, Voice
 from thumbwright.distill.sheet.words import capital, of_hundred, quoted
@@ -51,7 +52,7 @@ def costs(findings: Findings, voice: Voice) -> Grid:
             row.append(of_hundred(undecided))
         row.append(str(max(1, round(figures.mean_step))))
         rows.append(tuple(row))
-    head = ["", *(f"of 100 with {quoted(truth)}" for truth in (voice.plus, voice.minus))]
+    head = ["", *(f"if {quoted(truth)}" for truth in (voice.plus, voice.minus))]
     if shows_late:
         head.append("no call, of 100")
     head.append(f"average {voice.check}")
@@ -81,20 +82,23 @@ def example(findings: Findings, voice: Voice, counting: Counting, card: Card) ->
         seen_heads = ["Shown"]
     kept = "Number" if counting.tally else "Peg"
     head = (capital(voice.check), *seen_heads, "Sign", kept, "Do")
-    rows = tuple(_example_row(step, voice, counting, card) for step in steps)
+    result = findings.forms.get("lines")
+    by_count = result is not None and not result.rule.is_grid
+    rows = tuple(_example_row(step, voice, counting, card, by_count) for step in steps)
     marked = frozenset(place for place, step in enumerate(steps) if step["act"] != "watch")
     return Grid("A made-up example, line by line", head, rows, marked)
 
 
 def _example_row(
-    step: Mapping[str, Any], voice: Voice, counting: Counting, card: Card
+    step: Mapping[str, Any], voice: Voice, counting: Counting, card: Card, by_count: bool
 ) -> tuple[str, ...]:
     signs = {"plus": voice.plus_short, "minus": voice.minus_short}
     sign = signs.get(step["sign"], str(step["sign"]))
     shown = tuple(voice.shows_short[step["shows"][agent]] for agent in voice.seen)
     if len(voice.seen) > MOST_COLUMNS:
-        shows = {agent: frozenset({step["shows"][agent]}) for agent in voice.seen}
-        shown = (voice.situation(shows),)
+        shows = {agent: step["shows"][agent] for agent in voice.seen}
+        each = {agent: frozenset({state}) for agent, state in shows.items()}
+        shown = (tally_of(shows, voice) if by_count else voice.situation(each),)
     act = f"{card.letter_of_row[step['line']]}: {short_act(step['act'], voice)}"
     peg = peg_words(step["peg"], voice, counting).replace(" ", "\u00a0")
     return (str(step["step"]), *shown, sign, peg, act)

@@ -39,11 +39,15 @@ def acts(findings: Findings, voice: Voice, counting: Counting, card: Card) -> tu
         "table": "Add what it counts to what you have seen yourself.",
     }[card.kind]
     fits = "what is shown" if len(voice.seen) > 1 else f"what {voice.those} shows"
-    if card.kind == "table":
+    if card.kind == "table" and not findings.count_is_whole:
         look = ("Take one fresh look.", "Keep account of all you have seen as you always do.")
     states = [voice.shows_short[state] for state in ("undecided", "plus", "minus")]
-    asked = listing(states, "or") + "?"
-    asked = capital(f"{voice.thing}: {asked}" if voice.thing else asked)
+    if any(not result.rule.is_grid for result in findings.forms.values()):
+        asked = f"how many {listing(states)}?"
+        asked = capital(f"{plural(voice.thing)}: {asked}" if voice.thing else asked)
+    else:
+        asked = listing(states, "or") + "?"
+        asked = capital(f"{voice.thing}: {asked}" if voice.thing else asked)
     if findings.case.time.exchange == "settle":
         parts = (
             look,
@@ -85,8 +89,11 @@ def notes(findings: Findings, voice: Voice, counting: Counting, card: Card) -> t
         found = [
             Note(
                 "Why there is no card:",
-                "what you see here does not come in whole signs, so there is no count to keep by"
-                " hand. Let someone who has the other side of this sheet keep it.",
+                "none was asked for. This sheet says only how strongly what is shown speaks; the"
+                " look-up on the screen puts it together with your own signs."
+                if findings.count_is_whole
+                else "what you see here does not come in whole signs, so there is no count to keep"
+                " by hand. Let someone who has the other side of this sheet keep it.",
             )
         ]
     reason = why(findings, voice, card)
@@ -143,7 +150,18 @@ def supposes(findings: Findings, voice: Voice, card: Card) -> tuple[str, ...]:
     habits: dict[str, list[str]] = {}
     for agent in voice.seen:
         habits.setdefault(_habit(findings, voice, agent), []).append(voice.names[agent])
-    sentences.extend(f"{listing(names)}: {habit}" for habit, names in habits.items())
+    named = {
+        name
+        for result in findings.forms.values()
+        for row in result.rule.rows
+        for names in row.thresholds.values()
+        for name in names
+    }
+    for name in sorted(named):
+        bars = _named_bars(case, name, voice)
+        if bars:
+            sentences.append(f"Habit {quoted(clean(name))}: calling at {bars}.")
+    sentences.extend(f"{capital(voice.whom(n))}: {habit}" for habit, n in habits.items())
     sentences.append(f"Only you use this {thing(card)}; the others judge by the full calculation.")
     return tuple(sentences)
 
@@ -153,7 +171,11 @@ def _habit(findings: Findings, voice: Voice, agent: str) -> str:
     case = findings.case
     spec = case.agents[agent]
     others = ["you" if other == findings.agent else voice.names[other] for other in spec.sees]
+    if len(others) > 1 and len(others) == len(case.agents) - 1:
+        others = ["everybody else"]
     watched = f"watching {listing(others) if others else 'nobody'}"
+    if any(agent in row.thresholds for form in findings.forms.values() for row in form.rule.rows):
+        return f"{watched}, with one of these habits, known to you, and keeping to it."
     bars = _own_bars(case, spec, voice)
     if bars:
         alone = "" if not others else " when alone"
@@ -163,9 +185,11 @@ def _habit(findings: Findings, voice: Voice, agent: str) -> str:
 
 def _own_bars(case: Any, spec: Any, voice: Voice) -> str:
     """Return "mild 2 or frost 4" for thresholds counted in signs; "" for others."""
-    if not isinstance(spec.thresholds, str):
-        return ""
-    threshold = case.thresholds[spec.thresholds]
+    return _named_bars(case, spec.thresholds, voice) if isinstance(spec.thresholds, str) else ""
+
+
+def _named_bars(case: Any, name: str, voice: Voice) -> str:
+    threshold = case.thresholds[name]
     if getattr(threshold, "unit", None) != "observations":
         return ""
     low, high = round(threshold.minus), round(threshold.plus)

@@ -6,7 +6,9 @@ parts. The templates decide on markup only.
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
+from typing import Any
 
 
 @dataclass(frozen=True)
@@ -158,18 +160,71 @@ class Chart:
 
 
 @dataclass(frozen=True)
+class Sentence:
+    """A sentence, and those that hold under it."""
+
+    text: str
+    inner: tuple[Sentence, ...]
+
+
+@dataclass(frozen=True)
+class Nested:
+    """A rule said in nested sentences."""
+
+    caption: str
+    sentences: tuple[Sentence, ...]
+
+
+@dataclass(frozen=True)
 class Modeller:
     """The back of the sheet."""
 
     intro: str
     chart: Chart | None
     rules: tuple[Grid, ...]
+    said: tuple[Nested, ...]
     rule_notes: tuple[Note, ...]
     figures: Grid
     figure_notes: tuple[str, ...]
     losses: Grid
     exactness: tuple[str, ...]
     settings: Grid
+
+
+@dataclass(frozen=True)
+class Ask:
+    """One thing that the look-up asks for: a whole number, or one of some options.
+
+    ``options`` is empty for a number, which is then from ``least`` to ``most`` (None: open).
+    """
+
+    label: str
+    options: tuple[str, ...] = ()
+    least: int = 0
+    most: int | None = None
+
+
+@dataclass(frozen=True)
+class Lookup:
+    """The card as something to ask.
+
+    ``asks`` come in the order of ``data["asks"]``; ``data`` is what the script reads, ready for
+    JSON. The peg (``kind`` "peg") or the number (``kind`` "number") goes from ``least`` to
+    ``most``; ``kind`` "worth" has one field for the reader's own evidence instead, and ``kind``
+    "none" nothing. ``fewer`` and ``more`` are what the buttons beside the peg say.
+    """
+
+    heading: str
+    intro: str
+    asks: tuple[Ask, ...]
+    kind: str
+    own: str
+    least: int
+    most: int
+    fewer: str
+    more: str
+    again: str
+    data: Mapping[str, Any]
 
 
 @dataclass(frozen=True)
@@ -196,6 +251,7 @@ class Sheet:
     example_heading: str
     example: Grid | None
     foot: str
+    lookup: Lookup
     modeller: Modeller
     tight: bool = False
     example_on_front: bool = True

@@ -9,6 +9,7 @@ from thumbwright.distill.findings import Findings
 from thumbwright.distill.sheet.card import card
 from thumbwright.distill.sheet.costs import cost_note, costs, example
 from thumbwright.distill.sheet.fit import PAGE_HEIGHT, front_height
+from thumbwright.distill.sheet.lookup import lookup
 from thumbwright.distill.sheet.modeller import modeller
 from thumbwright.distill.sheet.notes import acts, acts_heading, notes, supposes, thing
 from thumbwright.distill.sheet.parts import Sheet
@@ -23,11 +24,14 @@ def sheet(findings: Findings) -> Sheet:
     front = card(findings, words, kept)
     case = findings.case
     title = capital(words.plus).rstrip("?!. ") + "?"
+    owner = words.owner
+    if case.rule.agent == "any":
+        owner = f"any one of the {len(case.agents)}"
     made = Sheet(
-        page_title=f"{title} For {words.owner}",
+        page_title=f"{title} For {owner}",
         title=title,
         case_title=clean(case.title),
-        owner=words.owner,
+        owner=owner,
         watching=words.those,
         override=(
             f"Plain evidence, an alarm or an order: act on that. This {thing(front)} is for when"
@@ -41,7 +45,7 @@ def sheet(findings: Findings) -> Sheet:
         acts=acts(findings, words, kept, front),
         card=front,
         notes=notes(findings, words, kept, front),
-        cost_heading="Wrong calls if only you use it",
+        cost_heading="Wrong calls of 100, if only you use it",
         costs=costs(findings, words),
         cost_note=cost_note(findings),
         example_heading="A made-up example",
@@ -51,6 +55,7 @@ def sheet(findings: Findings) -> Sheet:
             f" up to {words.check} {case.time.horizon:,} · counts rounded; figures and settings on"
             " the back"
         ),
+        lookup=lookup(findings, words, kept, front),
         modeller=modeller(findings, words),
     )
     return _fitted(made)

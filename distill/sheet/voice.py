@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
+from thumbwright.distill.case import is_crowd
 from thumbwright.distill.findings import Findings
 from thumbwright.distill.rules import SHOWN
 from thumbwright.distill.sheet.words import (
@@ -18,6 +19,9 @@ from thumbwright.distill.sheet.words import (
 )
 
 FRESH = "Take one fresh look."
+
+MOST_NAMES = 4
+"""Agents watched that are named one by one; more are told by their number."""
 
 
 @dataclass(frozen=True)
@@ -64,7 +68,13 @@ class Voice:
     @property
     def those(self) -> str:
         """The agents watched, as one phrase."""
-        return listing(self.seen_names) or "nobody"
+        return self.whom(self.seen_names) or "nobody"
+
+    def whom(self, names: Sequence[str]) -> str:
+        """Say some of the agents watched; all of many of them by their number."""
+        if len(names) == len(self.seen) > MOST_NAMES:
+            return f"the {len(names)} others"
+        return listing(names)
 
     def checks(self, first: int | None, last: int | None) -> str:
         """Say a range of checks in words; "" for all of them."""
@@ -121,6 +131,14 @@ class Voice:
         return capital("; ".join(f"{listing(names)}: {text}" for text, names in groups.items()))
 
 
+def _owner(findings: Findings, names: dict[str, str]) -> str:
+    """Whose sheet it is: one agent's, or anybody's in a crowd of which all are meant."""
+    agents = findings.case.agents
+    if findings.case.rule.agent == "any" and is_crowd(agents):
+        return f"any of the {len(agents)}"
+    return names[findings.agent]
+
+
 def voice(findings: Findings) -> Voice:
     """Collect the words of a case for the sheet of ``findings.agent``."""
     case = findings.case
@@ -133,7 +151,7 @@ def voice(findings: Findings) -> Voice:
     do_plus, do_minus = clean(words.do_plus), clean(words.do_minus)
     minus_forms, plus_forms = act_forms(do_minus, do_plus)
     return Voice(
-        owner=names[findings.agent],
+        owner=_owner(findings, names),
         seen=findings.seen,
         names=names,
         plus=clean(question.plus),

@@ -14,7 +14,7 @@ from thumbwright.distill.rules import Row
 from thumbwright.distill.sheet.card import is_quiet
 from thumbwright.distill.sheet.parts import Card, Note
 from thumbwright.distill.sheet.voice import Voice
-from thumbwright.distill.sheet.words import counted, listing, plural, quoted
+from thumbwright.distill.sheet.words import capital, counted, listing, plural, quoted
 
 FAINT = 0.02
 """Worths (nats) this small, or a tenth of the largest, are no news."""
@@ -46,7 +46,7 @@ def quiet_news(findings: Findings) -> frozenset[str]:
     Without a curve for that state the neighbours' nearer thresholds are taken at their word.
     """
     for curve in findings.worth_curves:
-        if set(curve.shows) == {"undecided"}:
+        if curve.plus_and_minus == (0, 0):
             worths = [worth for worth in curve.worth if worth is not None and math.isfinite(worth)]
             faint = max(FAINT, 0.1 * max(map(abs, worths), default=0.0))
             sides = (("plus", max(worths, default=0.0)), ("minus", -min(worths, default=0.0)))
@@ -61,26 +61,26 @@ def _reason(names: dict[str, list[str]], news: frozenset[str], voice: Voice) -> 
     leaning = [lean for lean in ("minus", "plus") if names[lean]]
     expected = {"minus": "plus", "plus": "minus"}
     if len(leaning) < 2 and len(news) == 2:
-        everyone = listing([name for some in names.values() for name in some])
+        everyone = capital(voice.whom([name for some in names.values() for name in some]))
         return (
             f"{everyone}: at some {plural(voice.check)} one call comes sooner, at others the other,"
             f" so {words} speaks now for one answer, now for the other."
         )
     if not leaning:
-        start = f"{listing(names['even'])}: as soon to one call as to the other,"
+        start = f"{capital(voice.whom(names['even']))}: as soon to one call as to the other,"
         if not news:
             return f"{start} so {words} says nothing until somebody calls."
         toward = quoted(answers[next(iter(news))])
         return f"{start} yet here {words} for long speaks a little for {toward}."
     if len(leaning) == 1 and expected[leaning[0]] not in news:
-        everyone = listing(names[leaning[0]])
+        everyone = capital(voice.whom(names[leaning[0]]))
         if not news:
             return f"{everyone}: here {words} says next to nothing until somebody calls."
         toward = quoted(answers[next(iter(news))])
         return f"{everyone}: here {words} for long speaks a little for {toward}."
     acts = {"minus": voice.do_minus, "plus": voice.do_plus}
     said = [
-        f"{listing(names[lean])}: sooner to {quoted(acts[lean])} than to"
+        f"{capital(voice.whom(names[lean]))}: sooner to {quoted(acts[lean])} than to"
         f" {quoted(acts[expected[lean]])}, so {words} for long speaks a little for"
         f" {quoted(answers[expected[lean]])}."
         for lean in leaning

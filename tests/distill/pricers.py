@@ -7,9 +7,10 @@ from collections.abc import Sequence
 
 from tests.slow import pair_walk as walk
 from thumbwright.distill.assemble import Setting
-from thumbwright.distill.costs import Pricer
-from thumbwright.distill.playing import NO_ROW, lay_out
+from thumbwright.distill.network_pricer import NetworkPricer
+from thumbwright.distill.playing import lay_out
 from thumbwright.distill.rules import Rule
+from thumbwright.distill.views import NO_ROW
 from thumbwright.exact.engine import solve
 from thumbwright.exact.evidence.base import Evidence
 from thumbwright.exact.evidence.binary import coin
@@ -45,9 +46,9 @@ def coin_group(
     return Group(tuple(agents), prior, horizon, exchange)
 
 
-def pricer_of_group(group: Group, agent: str, losses: Losses | None = EVEN) -> Pricer:
+def pricer_of_group(group: Group, agent: str, losses: Losses | None = EVEN) -> NetworkPricer:
     """One setting only."""
-    return Pricer.build(agent, (Setting(1.0, {}, solve(group)),), losses)
+    return NetworkPricer.build(agent, (Setting(1.0, {}, solve(group)),), losses)
 
 
 def one_way(
@@ -56,7 +57,7 @@ def one_way(
     horizon: int,
     exchange: str = "once",
     losses: Losses | None = EVEN,
-) -> Pricer:
+) -> NetworkPricer:
     """The observer is a1 and watches a0."""
     group = coin_group([watched, observer], [(), (0,)], horizon, exchange)
     return pricer_of_group(group, "a1", losses)
@@ -64,13 +65,13 @@ def one_way(
 
 def covering(
     named: dict[str, Bars], observer: Bars, horizon: int, losses: Losses | None = EVEN
-) -> Pricer:
+) -> NetworkPricer:
     """The observer a1 watches a0, whose thresholds are any of these, equally likely."""
     settings = []
     for name, bars in named.items():
         group = coin_group([bars, observer], [(), (0,)], horizon)
         settings.append(Setting(1.0 / len(named), {"a0": name}, solve(group)))
-    return Pricer.build("a1", tuple(settings), losses)
+    return NetworkPricer.build("a1", tuple(settings), losses)
 
 
 def pair(watched: Bars, observer: Bars, horizon: int, exchange: str = "once") -> walk.Pair:
@@ -99,7 +100,7 @@ def as_slow(rule: Rule) -> walk.Rule:
     return decide
 
 
-def faults_of_cover(pricer: Pricer, rule: Rule) -> int:
+def faults_of_cover(pricer: NetworkPricer, rule: Rule) -> int:
     """Number of possible situations that do not meet exactly one row."""
     situations = pricer.situations
     wrong = 0

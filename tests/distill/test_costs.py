@@ -20,12 +20,14 @@ from tests.distill.pricers import (
 from tests.exact.comparing import COIN
 from tests.slow import group as slow, pair_walk as walk, simulate as sim
 from tests.slow.enumerate import enumerate_group, play_rule
-from thumbwright.distill.costs import Pricer, Tally, average
 from thumbwright.distill.forms import Wanted, table
+from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.rules import SHOWN, Row, Rule
+from thumbwright.distill.tallies import Tally, average
 from thumbwright.exact.engine import solve
 from thumbwright.exact.evidence.binary import coin
 from thumbwright.exact.group import Agent, Group, Thresholds, same_thresholds
+from thumbwright.exact.play import Act, Situation
 from thumbwright.exact.stopping import Losses, costs_behind
 
 SIDES = ("plus", "minus")
@@ -109,7 +111,7 @@ def test_price_in_a_mutual_pair_agrees_with_simulation(exchange: str) -> None:
     )
 
 
-def exact_table(pricer: Pricer) -> Rule:
+def exact_table(pricer: NetworkPricer) -> Rule:
     """One row per step and shown state, with the exact worth there."""
     s = pricer.situations
     rows = {}
@@ -168,7 +170,7 @@ def test_information_is_not_benefit() -> None:
         rows = tuple(Row(shows=shows(state), value=v * ALPHA) for state, v in values)
         rule = Rule("table", "a1", ("a0",), rows)
         s = pricer.situations
-        row = s.rows_of(rule, pricer.settings)
+        row = s.rows_of(rule)
         plus, minus = s.pooled(row, 3)
         both = plus + minus
         saved = sum(float(m @ np.log(2 * m / both)) for m in (plus, minus))
@@ -267,7 +269,7 @@ def test_settings_are_averaged() -> None:
 # --- benefit -------------------------------------------------------------------------------
 
 
-def useless(losses: Losses | None) -> Pricer:
+def useless(losses: Losses | None) -> NetworkPricer:
     """The neighbour's evidence says nothing, so it never answers."""
     bars = same_thresholds(Thresholds(-3 * ALPHA, 3 * ALPHA))
     agents = (Agent("a0", coin(0.5), bars), Agent("a1", coin(0.6), bars, ("a0",)))
@@ -307,7 +309,7 @@ def test_inferred_costs_come_with_the_benefit_at_the_ends() -> None:
     cone = costs_behind(own.evidence, own.thresholds[0][1], 0.0, 40)
     assert cone is not None
     built = pricer_of_group(group, "a1")
-    pricer = Pricer.build("a1", built.settings, cone.middle, cone)
+    pricer = NetworkPricer.build("a1", built.settings, cone.middle, cone)
     tally = pricer.rule_tally(CARD)
     basis = pricer.basis(tally)
     assert basis is not None
@@ -336,3 +338,55 @@ def test_without_costs_there_is_no_risk_but_everything_else() -> None:
         1.0 - figures.accuracy - figures.accuracy_lost, abs=1e-12
     )
     assert solve(pricer.group).near_tie_mass == 0.0
+
+
+@pytest.mark.parametrize("exchange", ["once", "settle"])
+def test_a_rule_on_counts_costs_what_the_same_rule_on_states_costs(exchange: str) -> None:
+    """Written once by how many show what, and once by who shows what."""
+    bars = [(-2, 3), (-3, 2), (-3, 3)]
+    group = coin_group(bars, [(1,), (0,), (0, 1)], 9, exchange)
+    pricer = pricer_of_group(group, "a2")
+    values = {(0, 0): 0.1, (1, 0): 0.7, (0, 1): -0.8, (2, 0): 1.4, (0, 2): -1.5, (1, 1): -0.05}
+    by_count, by_state = [], []
+    for (plus, minus), value in values.items():
+        ranges = {"plus_shown": (plus, plus), "minus_shown": (minus, minus)}
+        by_count.append(Row(ranges=ranges, value=value))
+        by_state += [
+            Row(shows={"a0": frozenset({one}), "a1": frozenset({two})}, value=value)
+            for one in SHOWN
+            for two in SHOWN
+            if ((one, two).count("plus"), (one, two).count("minus")) == (plus, minus)
+        ]
+    one, two = (
+        pricer.rule_tally(Rule("by hand", "a2", ("a0", "a1"), tuple(rows)))
+        for rows in (by_count, by_state)
+    )
+    for name in ("plus", "minus", "undecided", "steps", "lean_plus", "lean_minus"):
+        assert getattr(one, name) == pytest.approx(getattr(two, name), abs=1e-15)
+    assert one.undecided.max() > 1e-3
+
+
+def test_a_rule_on_times_costs_what_it_says() -> None:
+    """A commitment of step s is met at t as t - s + 1 steps since: forgotten after three of them.
+
+    The same rule as a policy that reads the steps of the answers itself.
+    """
+    pricer = one_way((-2, 3), (-3, 3), 12)
+    fresh = {"steps_since_last": (1, 3)}
+    rows = (
+        Row(ranges=fresh, shows=shows("plus"), value=1.0),
+        Row(ranges=fresh, shows=shows("minus"), value=-1.0),
+        Row(ranges={"steps_since_last": (0, 0)}, value=0.0),
+        Row(ranges={"steps_since_last": (4, None)}, value=0.0),
+    )
+
+    def forgetful(situation: Situation) -> Act:
+        (state,), (step,) = situation.states, situation.shown_steps
+        recent = (state > 0) & (situation.step - step < 3)
+        return Act(np.where(recent, np.array([0.0, 1.0, -1.0])[state], 0.0))
+
+    one = pricer.rule_tally(Rule("by hand", "a1", ("a0",), rows))
+    two = pricer.play(lambda _: forgetful)[0]
+    for name in ("plus", "minus", "undecided", "steps", "lean_plus", "lean_minus"):
+        assert getattr(one, name) == pytest.approx(getattr(two, name), abs=1e-15)
+    assert abs(one.plus - pricer.alone_tally.plus).max() > 1e-2

@@ -10,9 +10,9 @@ import pytest
 
 from thumbwright.distill import job
 from thumbwright.distill.case import Case
-from thumbwright.distill.costs import Pricer
 from thumbwright.distill.faults import Faults
 from thumbwright.distill.gather import gather, pricer_of
+from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.reading import case_from_text, read_case
 from thumbwright.distill.ruleprice import priced
 
@@ -25,7 +25,7 @@ CARD = """step_from,step_to,upper_shows,minus_at_or_below,plus_at_or_above
 
 
 @cache
-def frost() -> tuple[Case, Pricer]:
+def frost() -> tuple[Case, NetworkPricer]:
     case = read_case("frost-watch")
     return case, pricer_of(case)[0]
 

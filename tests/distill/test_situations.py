@@ -94,7 +94,7 @@ def test_the_value_of_a_row_is_the_best_one() -> None:
     pricer = one_way((-2, 4), (-3, 3), 12)
     s = pricer.situations
     rule = Rule("table", "a1", ("a0",), (Row(step_to=6, value=0.0), Row(step_from=7, value=0.0)))
-    row = s.rows_of(rule, pricer.settings)
+    row = s.rows_of(rule)
     values = values_of(*s.pooled(row, 2))
 
     def loss(value: float, number: int) -> float:

@@ -157,7 +157,12 @@ WRONG = {
     "sees nobody": ('agent = "mill"', 'agent = "upper"', 'agent = "upper"', "sees nobody"),
     "nobody sees": ('["upper"] ', "[] #", '"mill"   ', '"mill" sees nobody'),
     "unknown form": ('"table"]', '"tabel"]', '"tabel"]', 'forms[2]: "tabel" is not known here'),
-    "form of later": ('"table"]', '"tree"]', '"tree"]', "(allowed lines, table)"),
+    "form of later": (
+        '"table"]',
+        '"web"]',
+        '"web"]',
+        "(allowed lines, table, table-by-risk, tree)",
+    ),
     "form twice": ('"table"]', '"lines"]', '"lines"]', "listed twice"),
     "no forms": (
         '["lines", "table"]',

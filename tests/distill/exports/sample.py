@@ -112,6 +112,8 @@ def findings(**changes: Any) -> Findings:
         count_is_whole=True,
         alpha=0.4054651081081644,
         beta=0.0,
+        prior=0.0,
+        bounds=(-1.2163953243, 1.2163953243),
         value_offsets=(-1, 1),
         leans={"upper": "minus", "lower": "even"},
         alone_rows=(),

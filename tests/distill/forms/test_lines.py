@@ -16,13 +16,14 @@ from tests.distill.pricers import (
     pair,
 )
 from tests.slow import pair_walk as walk
-from thumbwright.distill.costs import Pricer, Tally
 from thumbwright.distill.forms import Wanted, lines
 from thumbwright.distill.forms.batch import Batch
 from thumbwright.distill.forms.runs import Layout, as_rule, lossless
 from thumbwright.distill.gather import pricer_of
+from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.reading import read_case
 from thumbwright.distill.rules import Row, Rule
+from thumbwright.distill.tallies import Tally
 
 INPUTS = ("step", "shown")
 SIDES = ("plus", "minus")
@@ -36,7 +37,7 @@ CARD = [
 
 
 @cache
-def frost() -> Pricer:
+def frost() -> NetworkPricer:
     return pricer_of(read_case("frost-watch"))[0]
 
 
@@ -163,11 +164,11 @@ def test_every_merge_of_the_card_costs_what_the_walk_says() -> None:
     assert min(change for change in changed if change) > 0.01
 
 
-def risk_of(case: walk.Pair, pricer: Pricer, rule: Rule) -> float:
+def risk_of(case: walk.Pair, pricer: NetworkPricer, rule: Rule) -> float:
     """Risk from the walk by counts; at the horizon the belief that the row's worth gives."""
     assert pricer.losses is not None
     s = pricer.situations
-    row = s.rows_of(rule, pricer.settings)
+    row = s.rows_of(rule)
     total = 0.0
     for side in SIDES:
         slow = walk.play(case, walk.reading(as_slow(rule)), side)

@@ -18,10 +18,10 @@ from tests.distill.pricers import (
     one_way,
     pricer_of_group,
 )
-from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms import Wanted, lines
 from thumbwright.distill.forms.batch import Batch
 from thumbwright.distill.forms.runs import Layout, alone_rows, as_rule, exact_bars, lossless
+from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.rules import SHOWN, Rule
 from thumbwright.exact.engine import solve
 from thumbwright.exact.errors import ModelError
@@ -31,7 +31,7 @@ from thumbwright.exact.group import Agent, Group, Thresholds, same_thresholds
 INPUTS = ("step", "shown")
 
 
-def every_cell_once(pricer: Pricer, layout: Layout) -> None:
+def every_cell_once(pricer: NetworkPricer, layout: Layout) -> None:
     assert faults_of_cover(pricer, as_rule(pricer, layout)) == 0
 
 
@@ -120,9 +120,9 @@ def test_swapping_plus_and_minus_mirrors_the_lines(watched: tuple[int, int], row
     other = one_way((-watched[1], -watched[0]), (-4, 3), 16, losses=EVEN)
     made, mirror = (lines.distil(p, Wanted(rows, INPUTS)).rule for p in (pricer, other))
 
-    def bars(one: Pricer, rule: Rule, sign: int) -> dict[tuple[int, int], Any]:
+    def bars(one: NetworkPricer, rule: Rule, sign: int) -> dict[tuple[int, int], Any]:
         s = one.situations
-        row = s.rows_of(rule, one.settings)
+        row = s.rows_of(rule)
         found = {}
         for step, state, r in zip(s.step.tolist(), s.states[:, 0].tolist(), row, strict=True):
             pair_ = (rule.rows[r].minus_at, rule.rows[r].plus_at)

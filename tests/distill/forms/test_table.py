@@ -14,9 +14,9 @@ from sklearn.tree import DecisionTreeClassifier
 
 from tests.distill.pricers import covering, faults_of_cover, one_way
 from thumbwright.distill.case import Case
-from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms import Distilled, Wanted, table
 from thumbwright.distill.gather import pricer_of
+from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.reading import case_from_text, read_case
 from thumbwright.distill.rules import Row
 from thumbwright.distill.situations import Situations
@@ -28,18 +28,18 @@ COVERS = Path(__file__).with_name("covers.toml")
 
 
 @cache
-def covers() -> tuple[Case, Pricer]:
+def covers() -> tuple[Case, NetworkPricer]:
     case = case_from_text(COVERS.read_text(), name="covers", file="covers.toml")
     return case, pricer_of(case)[0]
 
 
 @cache
-def starter(name: str) -> tuple[Case, Pricer]:
+def starter(name: str) -> tuple[Case, NetworkPricer]:
     case = read_case(name)
     return case, pricer_of(case)[0]
 
 
-def distilled(pricer: Pricer, rows: int, inputs: tuple[str, ...] = SHOWN) -> Distilled:
+def distilled(pricer: NetworkPricer, rows: int, inputs: tuple[str, ...] = SHOWN) -> Distilled:
     made = table.distil(pricer, Wanted(rows, inputs))
     assert faults_of_cover(pricer, made.rule) == 0
     return made
@@ -69,14 +69,14 @@ def test_three_kinds_of_neighbour(rows: int) -> None:
     assert made.information_kept == pytest.approx(kept_by_rows(pricer, made), abs=1e-12)
 
 
-def kept_by_rows(pricer: Pricer, made: Distilled) -> float:
+def kept_by_rows(pricer: NetworkPricer, made: Distilled) -> float:
     """Information kept, from the printed values of the rows instead of from their masses.
 
     Weighted log loss of valuing each situation as its row says, against its exact worth and
     against one value for all.
     """
     s = pricer.situations
-    row = s.rows_of(made.rule, pricer.settings)
+    row = s.rows_of(made.rule)
     values = np.array([r.value for r in made.rule.rows], dtype=float)
 
     def loss(value: np.ndarray[Any, Any]) -> float:
@@ -87,7 +87,7 @@ def kept_by_rows(pricer: Pricer, made: Distilled) -> float:
     return (worst - loss(values[row])) / (worst - least)
 
 
-def greedy(pricer: Pricer, inputs: tuple[str, ...], leaves: int) -> float:
+def greedy(pricer: NetworkPricer, inputs: tuple[str, ...], leaves: int) -> float:
     """Information that scikit-learn's tree keeps with so many leaves, on the same situations."""
     axes = table.grid_axes(pricer, inputs)
     where = np.stack([axis.where for axis in axes], axis=1)
@@ -144,10 +144,10 @@ def plain(row: Row) -> tuple[Any, ...]:
     return row.step_from, row.step_to, states, round(row.value, 10) + 0.0
 
 
-def said(pricer: Pricer, made: Distilled) -> dict[tuple[int, int], float | None]:
+def said(pricer: NetworkPricer, made: Distilled) -> dict[tuple[int, int], float | None]:
     """What a table says in every situation that can arise, by step and shown state."""
     s = pricer.situations
-    row = s.rows_of(made.rule, pricer.settings)
+    row = s.rows_of(made.rule)
     cells = zip(s.step.tolist(), s.states[:, 0].tolist(), row, strict=True)
     return {(step, state): made.rule.rows[r].value for step, state, r in cells}
 
@@ -172,14 +172,14 @@ def test_duplicating_a_situation_or_rescaling_changes_nothing() -> None:
     s = pricer.situations
     twice = {
         name: np.concatenate([getattr(s, name)] * 2)
-        for name in ("setting", "step", "round", "states", "worth")
+        for name in ("setting", "step", "round", "states", "worth", "shown_steps", "shown_rounds")
     }
     halves = {
         name: np.concatenate([0.3 * getattr(s, name), 0.7 * getattr(s, name)])
         for name in ("plus", "minus")
     }
     others = [
-        Situations(s.seen, **twice, **halves),
+        Situations(s.names, s.seen, **twice, **halves),
         replace(s, plus=1e-6 * s.plus, minus=1e-6 * s.minus),
     ]
     for rows in (2, 4, 6):

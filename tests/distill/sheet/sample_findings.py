@@ -178,6 +178,8 @@ def frost(**changes: Any) -> Findings:
         count_is_whole=True,
         alpha=ALPHA,
         beta=0.0,
+        prior=0.0,
+        bounds=(-3 * ALPHA, 3 * ALPHA),
         value_offsets=(-1, 1),
         worth_curves=(
             WorthCurve("undecided", ("undecided",), steps, quiet, quiet, quiet),
@@ -381,6 +383,7 @@ def readings(stakes: str = "people") -> Findings:
         forms={"table": sample.forms["table"]},
         count_is_whole=False,
         alpha=0.05,
+        bounds=(-1.2, 1.2),
         value_offsets=None,
         alone_rows=(),
         is_exact=False,

@@ -3,32 +3,32 @@
 from __future__ import annotations
 
 import re
-from typing import Any
 
 import pytest
 
-from tests.distill.sheet import sample_findings as samples
+from tests.distill.sheet import more_findings as more
 from tests.distill.sheet.markup import Page
 from thumbwright.distill.exports import sheet_html, sheet_md
+from thumbwright.distill.sheet.page import digest, policy
 from thumbwright.distill.sheet.parts import Grid
+from thumbwright.distill.sheet.view import sheet
 
-NASTY = '"><script>alert(1)</script><img src=x onerror=alert(2)>{{ 7*7 }}{% raw %}&amp;|`*_'
 BANNED = r"\b(points?|steps?|silen\w+|commit\w*|log-odds|nats?)\b"
 
 
 def html(name: str) -> str:
-    made = sheet_html.render(samples.SAMPLES[name]())
+    made = sheet_html.render(more.EVERY[name]())
     assert list(made) == ["sheet.html"]
     return str(made["sheet.html"])
 
 
 def markdown(name: str) -> str:
-    made = sheet_md.render(samples.SAMPLES[name]())
+    made = sheet_md.render(more.EVERY[name]())
     assert list(made) == ["sheet.md"]
     return str(made["sheet.md"])
 
 
-names = pytest.mark.parametrize("name", list(samples.SAMPLES))
+names = pytest.mark.parametrize("name", list(more.EVERY))
 
 
 @names
@@ -53,30 +53,50 @@ def test_page_is_well_formed_and_in_order(name: str) -> None:
 
 @names
 def test_rows_of_strips_fill_the_scale(name: str) -> None:
-    found = re.findall(r'<tr role="row">\n<th scope="row".*?</tr>', html(name), re.DOTALL)
+    card = sheet(more.EVERY[name]()).card
+    table = re.search(r'<table class="strips.*?</table>', html(name), re.DOTALL)
+    assert (table is not None) == (card.kind == "strips")
+    if table is None:
+        return
+    found = re.findall(r'<tr>\n<th scope="row".*?</tr>', table.group(), re.DOTALL)
     spans = [sum(map(int, re.findall(r'colspan="(\d+)"', row))) for row in found]
-    pegs = len(
-        re.findall(r'<th scope="col" role="columnheader"(?: class="zero")?>(?:<span|0)', html(name))
-    )
-    spans = [span for span in spans if span]
-    assert spans == [pegs] * len(spans)
+    pegs = len(re.findall(r'<th scope="col"(?: class="zero")?>(?:<span|0)', table.group()))
+    assert pegs == len(card.pegs) > 0
+    assert spans == [pegs] * len(card.lines)
+    assert f'class="strips boxes-{pegs}"' in table.group()
 
 
 @names
-def test_nothing_is_fetched_or_run(name: str) -> None:
+def test_nothing_but_its_own_style_and_script_is_let_in(name: str) -> None:
     text = html(name)
-    policy = next(
+    stated = next(
         attrs["content"]
-        for tag, attrs in Page(text).tags
+        for _, attrs in Page(text).tags
         if attrs.get("http-equiv") == "Content-Security-Policy"
     )
-    assert policy == (
-        "default-src 'none'; style-src 'unsafe-inline'; base-uri 'none'; form-action 'none'"
+    (style,) = re.findall(r"<style>(.*?)</style>", text, re.DOTALL)
+    (script,) = re.findall(r"<script>(.*?)</script>", text, re.DOTALL)
+    assert (
+        stated
+        == policy(style, script)
+        == (
+            f"default-src 'none'; style-src '{digest(style)}'; script-src '{digest(script)}';"
+            " base-uri 'none'; form-action 'none'"
+        )
     )
     lower = text.lower()
-    for word in ("<script", "http:", "https:", "url(", "@import", "<link", "<img", "src="):
+    assert lower.count("<script") == 2  # and the data, which no browser runs
+    for word in ("http:", "https:", "url(", "@import", "<link", "<img", "src=", "style="):
         assert word not in lower
     assert not re.search(r"\son\w+=", lower)
+    for word in ("fetch(", "xmlhttp", "websocket", "eval(", "innerhtml", "storage", "cookie"):
+        assert word not in script.lower()
+
+
+def test_digest_is_that_of_the_standard() -> None:
+    # Content Security Policy Level 3, section on hashes: alert('Hello, world.'); from memory.
+    expected = "sha256-qznLcsROx4GACP2dm0UCKCzCG+HiZ1guq6ZZDob/Tng="
+    assert digest("alert('Hello, world.');") == expected
 
 
 @names
@@ -97,75 +117,12 @@ def test_markdown_card_speaks_plainly(name: str) -> None:
 @names
 def test_same_findings_same_bytes(name: str) -> None:
     for module in (sheet_html, sheet_md):
-        first = module.render(samples.SAMPLES[name]())
-        assert first == module.render(samples.SAMPLES[name]())
+        first = module.render(more.EVERY[name]())
+        assert first == module.render(more.EVERY[name]())
         for content in first.values():
             assert not re.search(r"20\d\d-\d\d-\d\d", str(content))
             assert str(content).endswith("\n")
             assert not re.search(r"[ \t]+\n\n\n", str(content))
-
-
-def contrast(one: str, other: str) -> float:
-    """Return the contrast of two colours by the formula of WCAG 2 (relative luminance)."""
-
-    def luminance(colour: str) -> float:
-        parts = [int(colour[at : at + 2], 16) / 255 for at in (1, 3, 5)]
-        line = [p / 12.92 if p <= 0.04045 else ((p + 0.055) / 1.055) ** 2.4 for p in parts]
-        return 0.2126 * line[0] + 0.7152 * line[1] + 0.0722 * line[2]
-
-    low, high = sorted((luminance(one), luminance(other)))
-    return (high + 0.05) / (low + 0.05)
-
-
-def test_contrast_by_day_and_night() -> None:
-    style = Page(html("frost")).style
-    day, night = (
-        dict(re.findall(r"--(\w+): (#\w{6})", part))
-        for part in re.findall(r":root \{(.*?--paper.*?)\}", style, re.DOTALL)
-    )
-    assert contrast("#ffffff", "#767676") == pytest.approx(4.54, abs=0.01)
-    for colours in (day, night):
-        for text, ground in (
-            ("ink", "paper"),
-            ("ink", "sand"),
-            ("soft", "paper"),
-            ("soft", "sand"),
-        ):
-            assert contrast(colours[text], colours[ground]) >= 4.5
-
-
-def nasty_case() -> dict[str, Any]:
-    words = {key: f"{NASTY} {key}" for key in samples.FROST["words"]}
-    agents = {
-        "upper": {"name": f"{NASTY} upper", "thresholds": "even", "sees": []},
-        "mill": {"name": f"{NASTY} mill", "thresholds": "even", "sees": ["upper"]},
-    }
-    question = samples.FROST["question"] | {"plus": f"{NASTY} yes", "minus": f"{NASTY} no"}
-    time = {"horizon": 40, "step_label": NASTY}
-    return {"title": NASTY, "words": words, "agents": agents, "question": question, "time": time}
-
-
-def test_labels_are_data_in_html() -> None:
-    plain = Page(html("frost"))
-    text = str(sheet_html.render(samples.frost(**nasty_case()))["sheet.html"])
-    page = Page(text)
-    assert "<script" not in text
-    assert "<img" not in text
-    assert "{{ 7*7 }}" in text
-    assert {tag for tag, _ in page.tags} == {tag for tag, _ in plain.tags}
-    known = {name for _, attrs in plain.tags for name in attrs}
-    assert {name for _, attrs in page.tags for name in attrs} <= known
-    assert NASTY in page.text("card")
-
-
-def test_labels_are_data_in_markdown() -> None:
-    text = str(sheet_md.render(samples.frost(**nasty_case()))["sheet.md"])
-    assert "<" not in text
-    assert not re.search(r"(?<!\\)`", text)
-    tables = [line for line in text.splitlines() if line.startswith("|")]
-    rows = [len(re.findall(r"(?<!\\)\|", line)) for line in tables]
-    plain = [line.count("|") for line in markdown("frost").splitlines() if line.startswith("|")]
-    assert rows == plain
 
 
 @pytest.mark.parametrize(

@@ -1,0 +1,1 @@
+"""What the exports to programming languages share: arguments, conditions, head comment, checks."""

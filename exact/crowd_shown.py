@@ -1,0 +1,260 @@
+"""All that one member of a crowd may be shown, itself made to show undecided, as a tree.
+
+This is what a rule on counts is distilled from and played on. Until it answers the member shows
+"undecided", whatever rule it goes by, so what the others do, and how likely it is, is the same for
+every rule: the tree is played once, and each rule is then a walk along it (``crowd_adopt``).
+
+The member goes on showing undecided to the horizon, also where exact play would leave it no chance
+of that. Others then take its silence for no news.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
+from thumbwright.exact.crowd_course import (
+    MOST,
+    Enumerated,
+    Sampled,
+    TooMany,
+    balanced,
+    blocks,
+    half_of,
+    play,
+)
+from thumbwright.exact.crowd_kinds import Crowd, Kind, check_play
+from thumbwright.exact.crowd_play import Choice, Histories
+from thumbwright.exact.errors import ModelError
+
+
+@dataclass(frozen=True)
+class Showing:
+    """One round of one step: all histories that the member may have been shown before it.
+
+    Attributes
+    ----------
+    step, round : int
+    parent : ndarray of int, shape (H,)
+        Which history of the round before each goes on from; zeros at the first.
+    plus, minus : ndarray of int, shape (K, H)
+        How many others of each kind show plus and show minus.
+    first, last : ndarray of int, shape (H,)
+        Step of the first and of the latest answer; 0 where there is none.
+    first_plus, first_minus : ndarray of int, shape (H,)
+        How many gave either answer at the moment of the first.
+    log_shown : ndarray of float, shape (2, H)
+        Log probability of the history given plus and given minus; zeros where sampled.
+    worth : ndarray of float, shape (H,)
+        Exact worth (nats); nan where exact play leaves the member no chance to be undecided.
+    log_still : ndarray of float, shape (2, H)
+        Log probability that the member, playing exactly, is still undecided.
+    may : ndarray of bool, shape (2, H)
+        Whether the others' model allows the member to say plus, to say minus in this round.
+    waiting : ndarray of float, shape (2, H)
+        Expected number of others that are undecided after this round.
+    """
+
+    step: int
+    round: int
+    parent: IntArray
+    plus: IntArray
+    minus: IntArray
+    first: IntArray
+    last: IntArray
+    first_plus: IntArray
+    first_minus: IntArray
+    log_shown: FloatArray
+    worth: FloatArray
+    log_still: FloatArray
+    may: BoolArray
+    waiting: FloatArray
+
+
+@dataclass(frozen=True)
+class Shown:
+    """What a member of one kind may be shown.
+
+    Attributes
+    ----------
+    crowd : Crowd
+    kind : int
+    prior : float
+        Log-odds of plus (nats).
+    horizon : int
+    exchange : {"once", "settle"}
+    parts : tuple of tuple of Showing
+        Enumerated histories are one part; sampled ones come in several, one after another, each
+        with all of its moments.
+    weight : ndarray of float, shape (2, H), or None
+        Weights of sampled histories given plus and given minus, over all parts; None if enumerated.
+    half : ndarray of bool, shape (H,), or None
+        Which sampled histories were drawn given plus.
+    dropped : tuple of two floats
+        Probability given plus and given minus of the histories that were dropped.
+    """
+
+    crowd: Crowd
+    kind: int
+    prior: float
+    horizon: int
+    exchange: str
+    parts: tuple[tuple[Showing, ...], ...]
+    weight: FloatArray | None
+    half: BoolArray | None
+    dropped: tuple[float, float]
+
+    @property
+    def member(self) -> Kind:
+        """The kind that the member is of."""
+        return self.crowd.kinds[self.kind]
+
+    @property
+    def sampled(self) -> bool:
+        """Whether histories were sampled."""
+        return self.weight is not None
+
+    @property
+    def prior_plus(self) -> float:
+        """Prior probability of plus."""
+        return float(1.0 / (1.0 + np.exp(-self.prior)))
+
+
+def enumerate_shown(
+    crowd: Crowd,
+    kind: int,
+    prior: float,
+    horizon: int,
+    exchange: str,
+    drop: float = 0.0,
+    most: int = MOST,
+) -> Shown:
+    """Everything that a member of one kind may be shown.
+
+    Parameters
+    ----------
+    crowd, prior, horizon, exchange, drop
+        As for ``enumerate_crowd``.
+    kind : int
+        Which kind the member is of.
+    most : int
+        Histories, and entries of the tree, that may be held.
+
+    Raises
+    ------
+    ModelError
+        Where an argument is not allowed; the kind ``TooMany`` where more would be held.
+    """
+    _check(crowd, kind, prior, horizon, exchange)
+    course, tree = Enumerated(crowd.size, drop, most), _Tree(kind, most)
+    labels = np.zeros(1, dtype=np.int64)
+    tree.grow(Histories(crowd, prior, horizon, labels, kind, lasting=True), course, exchange)
+    dropped = float(course.dropped[0]), float(course.dropped[1])
+    parts = (tuple(tree.showings),)
+    return Shown(crowd, kind, prior, horizon, exchange, parts, None, None, dropped)
+
+
+def sample_shown(
+    crowd: Crowd,
+    kind: int,
+    prior: float,
+    horizon: int,
+    exchange: str,
+    histories: int,
+    seed: int,
+) -> Shown:
+    """What a member of one kind is shown along sampled public histories, half given each answer.
+
+    Parameters
+    ----------
+    crowd, prior, horizon, exchange, histories, seed
+        As for ``sample_crowd``.
+    kind : int
+        Which kind the member is of.
+
+    Raises
+    ------
+    ModelError
+        Where an argument is not allowed.
+    """
+    _check(crowd, kind, prior, horizon, exchange)
+    half = half_of(histories)
+    course, parts, ratios = Sampled(np.random.default_rng(seed), half), [], []
+    for labels in blocks(histories):
+        tree = _Tree(kind, None)
+        batch = Histories(crowd, prior, horizon, labels, kind, lasting=True)
+        ratios.append(tree.grow(batch, course, exchange))
+        parts.append(tuple(tree.showings))
+    weight = balanced(np.concatenate(ratios)) / histories
+    drawn_plus = np.arange(histories) < half
+    return Shown(
+        crowd, kind, prior, horizon, exchange, tuple(parts), weight, drawn_plus, (0.0, 0.0)
+    )
+
+
+def _check(crowd: Crowd, kind: int, prior: float, horizon: int, exchange: str) -> None:
+    check_play(crowd, prior, horizon, exchange)
+    if not 0 <= kind < len(crowd.kinds):
+        raise ModelError(f"the crowd has {len(crowd.kinds)} kinds, counted from 0; not {kind}")
+
+
+@dataclass
+class _Tree:
+    """Writes down every round of a play."""
+
+    kind: int
+    most: int | None
+    showings: list[Showing] = field(default_factory=list)
+    _held: int = 0
+    _log_still: FloatArray = field(default_factory=lambda: np.zeros((2, 0)))
+    _worth: FloatArray = field(default_factory=lambda: np.zeros(0))
+    _moment: tuple[int, int] = (0, 0)
+
+    def grow(self, histories: Histories, course: Enumerated | Sampled, exchange: str) -> FloatArray:
+        """Play; returns the log ratio of each history given plus and given minus."""
+        settle = exchange == "settle"
+        horizon = histories.horizon
+        record = play(histories, course, horizon, settle, self.before, chosen=self.decided)
+        return record.ratio
+
+    def before(self, step: int, round_: int, histories: Histories) -> None:
+        """What is known before anybody decides."""
+        self._moment = (step, round_)
+        self._log_still = histories.log_left[self.kind].copy()
+        worth = histories.worth(self.kind, np.arange(len(histories)))
+        self._worth = np.where(np.isfinite(self._log_still).any(axis=0), worth, np.nan)
+
+    def decided(self, histories: Histories, choice: Choice) -> None:
+        """What may happen, before it is carried out."""
+        size, record = len(histories), histories.record
+        self._held += size
+        if self.most is not None and self._held > self.most:
+            raise TooMany(
+                f"more than {self.most:,} situations would be held; drop the least likely "
+                "histories, sample histories instead, or shorten the horizon"
+            )
+        may = np.zeros((2, size), dtype=bool)
+        may[:, choice.columns] = np.isfinite(choice.log_share[self.kind, :2]).any(axis=1)
+        stay = np.ones((len(choice.log_share), 2, size))
+        stay[..., choice.columns] = np.exp(choice.log_share[:, 2])
+        waiting = (histories.free[:, None] * stay).sum(axis=0)
+        self.showings.append(
+            Showing(
+                *self._moment,
+                parent=record.origin.copy() if self.showings else np.zeros(size, dtype=np.int64),
+                plus=record.plus.copy(),
+                minus=record.minus.copy(),
+                first=record.first.copy(),
+                last=record.last.copy(),
+                first_plus=record.first_plus.copy(),
+                first_minus=record.first_minus.copy(),
+                log_shown=record.log_weight.copy(),
+                worth=self._worth,
+                log_still=self._log_still,
+                may=may,
+                waiting=waiting,
+            )
+        )
+        record.origin[:] = np.arange(size)
