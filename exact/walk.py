@@ -50,8 +50,8 @@ class Walk:
         Own count S of each row on a ladder; on a lattice of several axes a code of the counts.
     tally : ndarray of float, shape (R,)
         Sum of the worths of the own observations (nats) of each row.
-    low, high : ndarray of float, shape (R,)
-        Thresholds on the belief (nats) that hold for each row.
+    bars : ndarray of float, shape (2, R)
+        Thresholds on the belief (nats) that hold for each row, the lower ones first.
     mass : ndarray of float, shape (R, C)
         The measure m of each row and column, before ``exp(log_scale)``.
     log_scale : ndarray of float, shape (C,)
@@ -68,7 +68,7 @@ class Walk:
         # On several axes all offsets are 0 or 1, so strides of horizon + 1 never run over.
         self._strides = (horizon + 1) ** np.arange(axes, dtype=np.int64)
         self._moves: IntArray = evidence.offsets @ self._strides
-        self._bounds = np.array([[t.minus, t.plus] for _, t in thresholds])
+        self._bounds = np.array([[t.minus for _, t in thresholds], [t.plus for _, t in thresholds]])
         blocks = np.arange(len(thresholds), dtype=np.int64)
         self._code: IntArray = blocks * _BLOCK + _BLOCK // 2
         self.mass: FloatArray = np.array([[share] for share, _ in thresholds], dtype=float)
@@ -76,10 +76,22 @@ class Walk:
         self.observed = 0
         self._describe()
 
+    @property
+    def low(self) -> FloatArray:
+        """Lower threshold on the belief (nats) of each row, shape (R,)."""
+        lower: FloatArray = self.bars[0]
+        return lower
+
+    @property
+    def high(self) -> FloatArray:
+        """Upper threshold on the belief (nats) of each row, shape (R,)."""
+        upper: FloatArray = self.bars[1]
+        return upper
+
     def _describe(self) -> None:
         block, inner = np.divmod(self._code, _BLOCK)
         self.count: IntArray = inner - _BLOCK // 2
-        self.low, self.high = self._bounds[block, 0], self._bounds[block, 1]
+        self.bars: FloatArray = self._bounds[:, block]
         alpha = self._evidence.alpha
         if len(alpha) == 1:
             self.tally: FloatArray = alpha[0] * self.count + self._evidence.beta * self.observed
@@ -238,8 +250,7 @@ class Walk:
     def _keep(self, rows: BoolArray) -> None:
         self._code, self.mass = self._code[rows], self.mass[rows]
         self.count, self.tally = self.count[rows], self.tally[rows]
-        self.low, self.high = self.low[rows], self.high[rows]
-        self._given = self._given[:, rows]
+        self.bars, self._given = self.bars[:, rows], self._given[:, rows]
 
     def _of(self, columns: IntArray | None) -> FloatArray:
         return self.mass if columns is None else self.mass[:, columns]
@@ -267,9 +278,9 @@ def grown(array: NDArray[Kind], axis: int, extra: int) -> NDArray[Kind]:
     lengths, used = [*array.shape], array.shape[axis]
     lengths[axis] += extra
     longer = np.empty(lengths, dtype=array.dtype)
-    before = (slice(None),) * axis
-    longer[(*before, slice(0, used))] = array
-    longer[(*before, slice(used, None))] = array[(*before, slice(0, 1))]
+    # Seen with that axis first; this is much faster than joining the two for small arrays.
+    new, old = longer.swapaxes(0, axis), array.swapaxes(0, axis)
+    new[:used], new[used:] = old, old[:1]
     return longer
 
 
