@@ -135,6 +135,18 @@ class Pricer(ABC):
         """
 
     @abstractmethod
+    def situations_among(self, rule: Rule) -> Weighed:
+        """Situations of the rule's agent where all who can go by the rule and all know.
+
+        Their weights and worths are those of what then happens. Raises ModelError as
+        :meth:`together_tally`.
+        """
+
+    @abstractmethod
+    def with_situations(self, situations: Weighed) -> Pricer:
+        """The same pricer over other situations, to distil from."""
+
+    @abstractmethod
     def agreement(self, rule: Rule) -> Agreed:
         """How a rule compares with exact play on the same observations."""
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -14,6 +14,7 @@ from thumbwright.distill.crowds import ENUMERATED, HISTORIES
 from thumbwright.distill.findings import Agreed, RowUse
 from thumbwright.distill.playing import acts
 from thumbwright.distill.rules import Rule
+from thumbwright.distill.situations import Weighed
 from thumbwright.distill.tallies import PARTS, Sampled, Tally, prior_pair
 from thumbwright.exact.agreement import crowd_agreement
 from thumbwright.exact.arrays import FloatArray
@@ -142,6 +143,15 @@ class CrowdPricer(Pricer):
                 return sample_shown(*given, HISTORIES, self.seed, policies=policies)
         histories = shown.weight.shape[1]
         return sample_shown(*given, histories, self.seed, policies=policies)
+
+    def situations_among(self, rule: Rule) -> CrowdSituations:
+        """Situations of the rule's agent where all go by the rule and all know."""
+        return CrowdSituations.of(self.among(rule))
+
+    def with_situations(self, situations: Weighed) -> CrowdPricer:
+        """The same pricer over other situations, to distil from."""
+        assert isinstance(situations, CrowdSituations)
+        return replace(self, situations=situations)
 
     def agreement(self, rule: Rule) -> Agreed:
         """How a rule compares with exact play on the same observations."""

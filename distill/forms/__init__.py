@@ -17,7 +17,7 @@ from types import ModuleType
 
 from thumbwright.distill.rules import Rule
 
-MODULES = ("lines", "table", "table-by-risk", "tree")
+MODULES = ("lines", "table", "table-by-risk", "table-for-all", "tree")
 """The forms of this package, in the order in which they are printed; a hyphen in a name is an
 underscore in that of its module."""
 

@@ -19,6 +19,7 @@ FORM_TITLES = {
     "lines": "The lines: bars on the own count",
     "table": "The table: values in place of what others show",
     "table-by-risk": "The table by risk: boxes and values chosen for least risk",
+    "table-for-all": "The table for all: values that are right where everybody uses it",
     "tree": "The tree: values found by one cut after another",
 }
 
