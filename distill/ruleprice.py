@@ -50,12 +50,7 @@ def priced(case: Case, pricer: Pricer, rule: str) -> dict[str, Any]:
     if rule in KNOWN:
         tally = others[rule]
     else:
-        read = _read(case, pricer, rule)
-        faults = _gaps_and_overlaps(pricer, read, rule)
-        if faults:
-            raise Faults(faults)
-        if read.has_bars:
-            remarks += _refused_bars(pricer, rule)
+        read, remarks = handed_in(case, pricer, rule)
         tally, uses = pricer.rule_uses(read)
         rows_here = pricer.situations.rows_of(read)
         for number, (row, use) in enumerate(zip(read.rows, uses, strict=True)):
@@ -72,6 +67,19 @@ def priced(case: Case, pricer: Pricer, rule: str) -> dict[str, Any]:
         "remarks": remarks,
         "basis": pricer.basis(tally),
     }
+
+
+def handed_in(case: Case, pricer: Pricer, path: str) -> tuple[Rule, list[str]]:
+    """Read a rule that must be whole, with remarks on what it is.
+
+    Raises Faults where the file cannot be read as a rule of this case, or its rows leave gaps or
+    overlap.
+    """
+    read = _read(case, pricer, path)
+    faults = _gaps_and_overlaps(pricer, read, path)
+    if faults:
+        raise Faults(faults)
+    return read, _refused_bars(pricer, path) if read.has_bars else []
 
 
 def _read(case: Case, pricer: Pricer, path: str) -> Rule:
