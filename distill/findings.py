@@ -86,7 +86,9 @@ class WorthCurve:
     """The worth of one joint shown state over the steps, for the modeller's chart (nats).
 
     ``low`` and ``high`` span the histories that show the same states; equal where the time
-    of a commitment does not matter. Steps at which the state cannot occur hold ``None``.
+    of a commitment does not matter. Steps at which the state cannot occur hold ``None``. In a
+    crowd nobody is told apart: ``shows`` is empty, and ``counts`` says how many show plus and how
+    many minus.
     """
 
     label: str
@@ -95,6 +97,12 @@ class WorthCurve:
     worth: tuple[float | None, ...]
     low: tuple[float | None, ...]
     high: tuple[float | None, ...]
+    counts: tuple[int, int] | None = None
+
+    @property
+    def plus_and_minus(self) -> tuple[int, int]:
+        """How many of the seen agents show plus, and how many minus."""
+        return self.counts or (self.shows.count("plus"), self.shows.count("minus"))
 
 
 @dataclass(frozen=True)
@@ -156,3 +164,9 @@ class Findings:
     caveats: tuple[str, ...]
     near_tie_mass: float
     example: tuple[dict[str, Any], ...]
+
+    def _repr_html_(self) -> str:
+        """Tables and the chart, for notebooks."""
+        from thumbwright.distill.sheet.notebook import findings_html
+
+        return findings_html(self)

@@ -12,14 +12,16 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from thumbwright.distill.costs import Pricer, Tally, average
+from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms.axes import grid_axes
 from thumbwright.distill.forms.batch import MOST_AT_ONCE, one_of
 from thumbwright.distill.forms.boxes import Box
 from thumbwright.distill.forms.choosing import inside, valued_row
 from thumbwright.distill.forms.runs import count_range, exact_bars
+from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.rules import Rule
 from thumbwright.distill.situations import Situations
+from thumbwright.distill.tallies import Tally, average
 from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.many import Bars, fits, play_many
 
@@ -51,17 +53,19 @@ class Bench:
         self.priced = 0
         self._position = pricer.group.index[pricer.agent]
         alpha = pricer.group.agents[self._position].evidence.alpha
+        self._network = pricer if isinstance(pricer, NetworkPricer) else None
         self.together = (
-            all(name in ON_A_GRID for name in inputs)
-            and all(fits(s.solution, self._position) for s in pricer.settings)
-            and alpha[0] > 0
+            self._network is not None
+            and all(name in ON_A_GRID for name in inputs)
+            and all(fits(s.solution, self._position) for s in self._network.settings)
+            and bool(alpha[0] > 0)
         )
-        if self.together:
-            every = _every_cell(pricer)
-            axes = grid_axes(replace(pricer, situations=every), inputs)
+        if self._network is not None and self.together:
+            every = _every_cell(self._network)
+            axes = grid_axes(replace(self._network, situations=every), inputs)
             shape = tuple(axis.cells for axis in axes)
             flat = np.ravel_multi_index(tuple(axis.where for axis in axes), shape)
-            self._cell = flat.reshape(len(pricer.settings), pricer.group.horizon, 3)
+            self._cell = flat.reshape(len(self._network.settings), pricer.group.horizon, 3)
             self._step = every.step.reshape(self._cell.shape)[0]
 
     def rule(self, valued: Valued) -> Rule:
@@ -74,7 +78,7 @@ class Bench:
     def tallies(self, candidates: Sequence[Valued]) -> list[Tally]:
         """How each turns out."""
         self.priced += len(candidates)
-        if not self.together:
+        if self._network is None or not self.together:
             return [self.pricer.rule_tally(self.rule(one), whole=False) for one in candidates]
         found: list[Tally] = []
         for start in range(0, len(candidates), MOST_AT_ONCE):
@@ -82,7 +86,7 @@ class Bench:
             values = np.stack([self._on_cells(one) for one in part])
             played = [
                 (s.weight, play_many(s.solution, self._position, self._bars(values[:, cell])))
-                for s, cell in zip(self.pricer.settings, self._cell, strict=True)
+                for s, cell in zip(self._network.settings, self._cell, strict=True)
             ]
             found += [
                 average([(weight, one_of(many, i)) for weight, many in played])
@@ -146,13 +150,14 @@ def _count(low: float, high: float, start: FloatArray, unit: float) -> int:
     return int(np.ceil((high - low + start.max() - start.min()) / unit)) + 2
 
 
-def _every_cell(pricer: Pricer) -> Situations:
+def _every_cell(pricer: NetworkPricer) -> Situations:
     """Every setting, step and shown state of the one seen agent, as situations without mass."""
     shape = (len(pricer.settings), pricer.group.horizon, 3)
     setting, step, state = (index.ravel() for index in np.indices(shape))
     nothing = np.zeros(len(step))
     never = np.zeros((len(step), 1), dtype=np.int64)
     return Situations(
+        pricer.situations.names,
         pricer.seen,
         setting,
         step + 1,

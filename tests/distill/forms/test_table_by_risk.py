@@ -17,30 +17,30 @@ from tests.distill.pricers import (
     one_way,
     pricer_of_group,
 )
-from thumbwright.distill.costs import Pricer
 from thumbwright.distill.findings import Figures
 from thumbwright.distill.forms import Distilled, Wanted, form, table, table_by_risk
 from thumbwright.distill.forms.boxes import Box
 from thumbwright.distill.forms.exchanges import cuts, joined
 from thumbwright.distill.forms.valued import Bench, Valued
-from thumbwright.distill.gather import pricer_of
+from thumbwright.distill.network_pricer import NetworkPricer
+from thumbwright.distill.pricing import pricer_of
 from thumbwright.distill.reading import case_from_text
 from thumbwright.exact.errors import ModelError
 from thumbwright.exact.stopping import Losses
 
 
-def distilled(pricer: Pricer, rows: int, inputs: tuple[str, ...] = SHOWN) -> Distilled:
+def distilled(pricer: NetworkPricer, rows: int, inputs: tuple[str, ...] = SHOWN) -> Distilled:
     made = table_by_risk.distil(pricer, Wanted(rows, inputs))
     assert faults_of_cover(pricer, made.rule) == 0
     assert len(made.rule.rows) <= rows
     return made
 
 
-def figures(pricer: Pricer, made: Distilled) -> Figures:
+def figures(pricer: NetworkPricer, made: Distilled) -> Figures:
     return pricer.figures(pricer.rule_tally(made.rule))
 
 
-def risk(pricer: Pricer, made: Distilled) -> float:
+def risk(pricer: NetworkPricer, made: Distilled) -> float:
     found = figures(pricer, made).risk
     assert found is not None
     return found

@@ -13,14 +13,14 @@ from hypothesis import given, settings, strategies as st
 
 from tests.distill.forms.test_table import SHOWN, covers, kept_by_rows, starter
 from tests.distill.pricers import covering, faults_of_cover, one_way
-from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms import Distilled, Wanted, table, tree
 from thumbwright.distill.forms.boxes import best_partitions, gain
+from thumbwright.distill.network_pricer import NetworkPricer
 
 Box = tuple[tuple[int, int], ...]
 
 
-def distilled(pricer: Pricer, rows: int, inputs: tuple[str, ...] = SHOWN) -> Distilled:
+def distilled(pricer: NetworkPricer, rows: int, inputs: tuple[str, ...] = SHOWN) -> Distilled:
     made = tree.distil(pricer, Wanted(rows, inputs))
     assert faults_of_cover(pricer, made.rule) == 0
     return made
@@ -99,9 +99,9 @@ def test_the_known_trees() -> None:
         assert made.information_kept == pytest.approx(kept, abs=5e-6)
 
 
-def said(pricer: Pricer, made: Distilled) -> dict[tuple[int, int], float | None]:
+def said(pricer: NetworkPricer, made: Distilled) -> dict[tuple[int, int], float | None]:
     s = pricer.situations
-    row = s.rows_of(made.rule, pricer.settings)
+    row = s.rows_of(made.rule)
     cells = zip(s.step.tolist(), s.states[:, 0].tolist(), row, strict=True)
     return {(step, state): made.rule.rows[r].value for step, state, r in cells}
 
@@ -151,12 +151,10 @@ def test_a_tree_serves_where_the_table_is_too_large() -> None:
     pricer = covering({"x": (-2, 4), "y": (-4, 2)}, (-3, 3), 10)
     inputs = ("step", "shown", "thresholds", "steps_since_first", "steps_since_last", "plus_shown")
     made = tree.distil(pricer, Wanted(12, inputs))
-    assert pricer.situations.rows_of(made.rule, pricer.settings).min() >= 0
+    assert pricer.situations.rows_of(made.rule).min() >= 0
     assert (
         gain(
-            *pricer.situations.pooled(
-                pricer.situations.rows_of(made.rule, pricer.settings), len(made.rule.rows)
-            )
+            *pricer.situations.pooled(pricer.situations.rows_of(made.rule), len(made.rule.rows))
         ).sum()
         > pricer.situations.nothing
     )

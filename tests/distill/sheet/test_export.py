@@ -3,11 +3,10 @@
 from __future__ import annotations
 
 import re
-from typing import Any
 
 import pytest
 
-from tests.distill.sheet import more_findings as more, sample_findings as samples
+from tests.distill.sheet import more_findings as more
 from tests.distill.sheet.markup import Page
 from thumbwright.distill.exports import sheet_html, sheet_md
 from thumbwright.distill.sheet.page import digest, policy
@@ -77,9 +76,13 @@ def test_nothing_but_its_own_style_and_script_is_let_in(name: str) -> None:
     )
     (style,) = re.findall(r"<style>(.*?)</style>", text, re.DOTALL)
     (script,) = re.findall(r"<script>(.*?)</script>", text, re.DOTALL)
-    assert stated == policy(style, script) == (
-        f"default-src 'none'; style-src '{digest(style)}'; script-src '{digest(script)}';"
-        " base-uri 'none'; form-action 'none'"
+    assert (
+        stated
+        == policy(style, script)
+        == (
+            f"default-src 'none'; style-src '{digest(style)}'; script-src '{digest(script)}';"
+            " base-uri 'none'; form-action 'none'"
+        )
     )
     lower = text.lower()
     assert lower.count("<script") == 2  # and the data, which no browser runs
