@@ -26,7 +26,7 @@ from thumbwright.distill.record_reading import read_record
 from thumbwright.distill.replay import follow
 from thumbwright.distill.replay_rule import refuse_crowd, remarks_on, rule_to_follow
 from thumbwright.distill.replay_text import replay_record, replay_text as texts_of_replay
-from thumbwright.distill.ruleprice import priced
+from thumbwright.distill.ruleprice import ALONE_IN_USE, Use, priced
 from thumbwright.distill.signs import signs_of
 from thumbwright.distill.writing import write_files
 from thumbwright.exact.engine import Progress, solve
@@ -127,11 +127,15 @@ def outcomes_text(found: dict[str, Any]) -> str:
 
 
 def price(
-    case: Case, rule: str, progress: Progress | None = None, limits: Limits = NO_LIMITS
+    case: Case,
+    rule: str,
+    progress: Progress | None = None,
+    limits: Limits = NO_LIMITS,
+    use: Use = ALONE_IN_USE,
 ) -> dict[str, Any]:
-    """The cost of a rule: a CSV file, or exact, plain-count or alone."""
+    """The cost of a rule, a CSV file, or exact, plain-count or alone; and who else uses it."""
     pricer, missing = pricer_of(case, progress, limits)
-    found = priced(case, pricer, rule)
+    found = priced(case, pricer, rule, use)
     basis = found.pop("basis")
     inexact = pricer.inexact()
     return {
@@ -145,7 +149,9 @@ def price(
         "dropped_mass": inexact.dropped_mass,
         "near_tie_mass": inexact.near_tie_mass,
         "sampled_histories_and_seed": inexact.sampled,
-        "exact": inexact.nothing and found["figures"]["off_model"] == 0.0,
+        "exact": inexact.nothing
+        and found["figures"]["off_model"] == 0.0
+        and found["figures"]["errors"] is None,
         "remarks": [*found["remarks"], *([missing] if missing else [])],
     }
 
