@@ -15,7 +15,7 @@ from thumbwright.distill.tallies import PARTS, Sampled, Tally
 from thumbwright.exact.arrays import FloatArray
 from thumbwright.exact.crowd import (
     CrowdPolicy,
-    Showing,
+    InPublic,
     Shown,
     Weights,
     adopt_crowd,
@@ -106,20 +106,18 @@ class CrowdPricer(Pricer):
 
     def _policy(self, rule: Rule) -> CrowdPolicy:
         values, others = self.row_values(rule), self.shown.crowd.size - 1
-        return lambda showing: acts(rule, Counted.of(showing, others), values)
+        return lambda seen: acts(rule, Counted.of(seen, others), values)
 
-    def _plain_count(self, showing: Showing) -> Act:
-        worth: FloatArray = np.zeros(len(showing.parent))
-        for kind, plus, minus in zip(
-            self.shown.crowd.kinds, showing.plus, showing.minus, strict=True
-        ):
+    def _plain_count(self, seen: InPublic) -> Act:
+        worth: FloatArray = np.zeros(len(seen))
+        for kind, plus, minus in zip(self.shown.crowd.kinds, seen.plus, seen.minus, strict=True):
             up = sum(share * bound.plus for share, bound in kind.thresholds) - self.shown.prior
             down = sum(share * bound.minus for share, bound in kind.thresholds) - self.shown.prior
             worth = worth + plus * up + minus * down
         return Act(worth)
 
 
-def _alone(_showing: Showing) -> Act:
+def _alone(_seen: InPublic) -> Act:
     """Nobody is looked at."""
     return Act(np.zeros(()))
 

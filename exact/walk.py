@@ -15,6 +15,7 @@ with its own thresholds.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TypeVar
 
 import numpy as np
@@ -205,6 +206,34 @@ class Walk:
         else:
             self.mass[:, columns] = parts[2]
         return divided
+
+    @property
+    def block(self) -> IntArray:
+        """Which possibility each row belongs to, shape (R,)."""
+        return np.asarray(self._code // _BLOCK)
+
+    def carry(self, out: BoolArray, moved: Sequence[tuple[int, BoolArray]]) -> None:
+        """Take out some mass, and carry other mass to the same own count of another possibility.
+
+        Parameters
+        ----------
+        out : ndarray of bool, shape (R, C)
+            What is taken out.
+        moved : sequence of (int, ndarray of bool, shape (R, C))
+            The possibility that mass goes to, and which; no mass is named twice.
+        """
+        codes, parts = [self._code], [np.where(out, 0.0, self.mass)]
+        for block, mask in moved:
+            rows = np.flatnonzero(mask.any(axis=1))
+            parts[0][mask] = 0.0
+            codes.append(self._code[rows] % _BLOCK + block * _BLOCK)
+            parts.append(np.where(mask, self.mass, 0.0)[rows])
+        self._code, row = np.unique(np.concatenate(codes), return_inverse=True)
+        self.mass = np.zeros((len(self._code), self.mass.shape[1]))
+        np.add.at(self.mass, row, np.concatenate(parts))
+        alive = self.mass.any(axis=1)
+        self._code, self.mass = self._code[alive], self.mass[alive]
+        self._describe()
 
     def _keep(self, rows: BoolArray) -> None:
         self._code, self.mass = self._code[rows], self.mass[rows]
