@@ -5,10 +5,11 @@ Built once by ``distill.job``; frozen; no export computes a figure of its own.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Any
 
 from thumbwright.distill.case import Case
+from thumbwright.distill.reckoned import Reckoned
 from thumbwright.distill.rules import Row, Rule
 
 
@@ -59,6 +60,16 @@ class FormResult:
     uses: tuple[RowUse, ...]
     information_kept: float | None
     information_ceiling: float | None
+    notes: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class ReckonedResult:
+    """A rule that is reckoned and not looked up in rows, with its price."""
+
+    rule: Reckoned
+    figures: Figures
+    information_kept: float | None
     notes: tuple[str, ...]
 
 
@@ -156,3 +167,4 @@ class Findings:
     caveats: tuple[str, ...]
     near_tie_mass: float
     example: tuple[dict[str, Any], ...]
+    reckoned: dict[str, ReckonedResult] = field(default_factory=dict)

@@ -15,12 +15,18 @@ from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.crowd_situations import CrowdSituations
 from thumbwright.distill.example import example
-from thumbwright.distill.findings import Figures, Findings, FormResult, WorthCurve
-from thumbwright.distill.forms import MODULES, Wanted, form
+from thumbwright.distill.findings import (
+    Figures,
+    Findings,
+    FormResult,
+    ReckonedResult,
+    WorthCurve,
+)
+from thumbwright.distill.forms import MODULES, Distilled, Wanted, form
 from thumbwright.distill.forms.runs import alone_rows
 from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.pricing import pricer_of
-from thumbwright.distill.rules import SHOWN
+from thumbwright.distill.rules import SHOWN, Rule
 from thumbwright.distill.situations import Situations, Weighed, values_of
 from thumbwright.distill.tallies import Tally
 from thumbwright.exact.engine import Progress
@@ -36,15 +42,16 @@ def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIM
     """Everything that is printed about the rule's agent of a case."""
     pricer, missing = pricer_of(case, progress, limits)
     wanted = Wanted(case.rule.rows, tuple(case.rule.inputs), case.rule.max_accuracy_lost)
-    made, left_out = _forms(pricer, case, wanted, progress)
+    made, reckoned, left_out = _forms(pricer, case, wanted, progress)
     forms = {name: one for name, (one, _) in made.items()}
     main, main_tally = next(iter(made.values()))
     exact = pricer.figures(pricer.exact_tally)
     plain = pricer.figures(pricer.plain_count_tally())
     alone = pricer.figures(pricer.alone_tally)
     evidence = _evidence(pricer)
-    caveats = _caveats(pricer, [*(f.figures for f in forms.values()), plain, alone], missing)
-    caveats = (*caveats, *left_out)
+    priced = [f.figures for f in forms.values()] + [f.figures for f in reckoned.values()]
+    priced += [plain, alone]
+    caveats = (*_caveats(pricer, priced, missing), *left_out)
     return Findings(
         case=case,
         digest=case.digest,
@@ -67,40 +74,46 @@ def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIM
         alone_rows=alone_rows(pricer) if evidence.countable and evidence.alpha[0] > 0 else (),
         worth_curves=worth_curves(pricer, case),
         labels=evidence.labels,
-        is_exact=_is_exact(pricer, [*(f.figures for f in forms.values()), plain, alone]),
+        is_exact=_is_exact(pricer, priced),
         caveats=caveats,
         near_tie_mass=pricer.inexact().near_tie_mass,
         example=example(pricer, main.rule) if isinstance(pricer, NetworkPricer) else (),
+        reckoned=reckoned,
     )
 
 
 def _forms(
     pricer: Pricer, case: Case, wanted: Wanted, progress: Progress | None
-) -> tuple[dict[str, tuple[FormResult, Tally]], tuple[str, ...]]:
+) -> tuple[dict[str, tuple[FormResult, Tally]], dict[str, ReckonedResult], tuple[str, ...]]:
     """Every form asked for that this case can have; sentences on those it cannot.
 
-    Raises ModelError where it can have none.
+    Raises ModelError where it can have none of rows.
     """
     forms: dict[str, tuple[FormResult, Tally]] = {}
+    reckoned: dict[str, ReckonedResult] = {}
     refusals: list[ModelError] = []
     for name in MODULES:
         if name in case.rule.forms:
             try:
-                forms[name] = _form_result(pricer, name, wanted, progress)
+                made = form(name).distil(pricer, wanted, progress)
             except ModelError as refusal:
                 refusals.append(refusal)
+                continue
+            if isinstance(made.rule, Rule):
+                forms[name] = _form_result(pricer, made.rule, made)
+            else:
+                figures = pricer.price(made.rule)
+                kept = made.information_kept
+                reckoned[name] = ReckonedResult(made.rule, figures, kept, made.notes)
     if not forms:
         raise refusals[0]
-    return forms, tuple(f"A form is left out: {refusal}." for refusal in refusals)
+    return forms, reckoned, tuple(f"A form is left out: {refusal}." for refusal in refusals)
 
 
-def _form_result(
-    pricer: Pricer, name: str, wanted: Wanted, progress: Progress | None
-) -> tuple[FormResult, Tally]:
-    made = form(name).distil(pricer, wanted, progress)
-    found, uses = pricer.rule_uses(made.rule)
+def _form_result(pricer: Pricer, rule: Rule, made: Distilled) -> tuple[FormResult, Tally]:
+    found, uses = pricer.rule_uses(rule)
     result = FormResult(
-        made.rule,
+        rule,
         pricer.figures(found),
         uses,
         made.information_kept,
