@@ -149,8 +149,15 @@ def check(case: str | None, limits: Limits, schema: bool) -> None:
     metavar="DIR",
     help="Folder to write into, made where it is missing; otherwise outputs/<name of the case>.",
 )
+@click.option(
+    "--templates",
+    type=click.Path(path_type=Path, file_okay=False, exists=True),
+    metavar="DIR",
+    help="Folder of templates of your own; each stands in for ours of the same name.",
+)
+@click.option("--pdf", is_flag=True, help="Write the sheet as PDF too (needs the extra pdf).")
 @limited
-def sheet(case: str, into: Path | None, limits: Limits) -> None:
+def sheet(case: str, into: Path | None, templates: Path | None, pdf: bool, limits: Limits) -> None:
     """The main job: exact beliefs, rules, their costs; writes the policy sheet and its data."""
     from thumbwright.distill import job
     from thumbwright.distill.progress import progress_on_terminal
@@ -159,7 +166,7 @@ def sheet(case: str, into: Path | None, limits: Limits) -> None:
     read = read_case(case)
     with progress_on_terminal() as progress:
         folder = into or Path("outputs") / read.name
-        summary = job.sheet(read, folder, progress, limits)
+        summary = job.sheet(read, folder, progress, limits, templates, pdf)
     _show(summary)
 
 

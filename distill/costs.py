@@ -8,6 +8,7 @@ not a ceiling, since its thresholds are not chosen anew for company.
 from __future__ import annotations
 
 from abc import ABC, abstractmethod
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 from thumbwright.distill.findings import CostBasis, Figures, RowUse
@@ -24,6 +25,7 @@ from thumbwright.distill.tallies import (
     risk_of,
     wrong_of,
 )
+from thumbwright.distill.users import users_of
 from thumbwright.exact.arrays import FloatArray
 from thumbwright.exact.crowd_figures import Weights
 from thumbwright.exact.group import Group
@@ -31,6 +33,26 @@ from thumbwright.exact.stopping import Cone, Losses
 
 WORTH_WATCHING = 0.01
 """Below this share of the risk alone, what exact watching saves is called nothing."""
+
+
+@dataclass(frozen=True)
+class Agreed:
+    """How a rule and exact play compare on the same observations, averaged over the prior.
+
+    Attributes
+    ----------
+    same, opposite : float
+        Probability that both end alike, and that one says plus and the other minus.
+    steps_apart : float
+        Mean absolute difference of the steps used.
+    errors : mapping of str to float, or None
+        Standard errors, where histories were sampled.
+    """
+
+    same: float
+    opposite: float
+    steps_apart: float
+    errors: dict[str, float] | None = None
 
 
 @dataclass(frozen=True)
@@ -125,6 +147,27 @@ class Pricer(ABC):
     @abstractmethod
     def plain_count_tally(self) -> Tally:
         """How counting commitments at face value, silence as nothing, turns out."""
+
+    def users(self, rule: Rule) -> tuple[str, ...]:
+        """Ids of the agents that can use a rule, its own among them."""
+        return users_of(rule, self.group)
+
+    @abstractmethod
+    def together_tally(self, rule: Rule, users: Sequence[str], others: Rule | None = None) -> Tally:
+        """How a rule turns out for its agent where all ``users`` go by it.
+
+        The others play exactly and take everyone for exact; or, where a rule is given for
+        ``others``, those of them that can go by that.
+
+        Raises
+        ------
+        ModelError
+            Where this cannot be worked out for this group.
+        """
+
+    @abstractmethod
+    def agreement(self, rule: Rule) -> Agreed:
+        """How a rule compares with exact play on the same observations."""
 
     @abstractmethod
     def inexact(self) -> Inexact:

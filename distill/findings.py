@@ -97,7 +97,9 @@ class WorthCurve:
     """The worth of one joint shown state over the steps, for the modeller's chart (nats).
 
     ``low`` and ``high`` span the histories that show the same states; equal where the time
-    of a commitment does not matter. Steps at which the state cannot occur hold ``None``.
+    of a commitment does not matter. Steps at which the state cannot occur hold ``None``. In a
+    crowd nobody is told apart: ``shows`` is empty, and ``counts`` says how many show plus and how
+    many minus.
     """
 
     label: str
@@ -106,6 +108,12 @@ class WorthCurve:
     worth: tuple[float | None, ...]
     low: tuple[float | None, ...]
     high: tuple[float | None, ...]
+    counts: tuple[int, int] | None = None
+
+    @property
+    def plus_and_minus(self) -> tuple[int, int]:
+        """How many of the seen agents show plus, and how many minus."""
+        return self.counts or (self.shows.count("plus"), self.shows.count("minus"))
 
 
 @dataclass(frozen=True)
@@ -168,3 +176,9 @@ class Findings:
     near_tie_mass: float
     example: tuple[dict[str, Any], ...]
     reckoned: dict[str, ReckonedResult] = field(default_factory=dict)
+
+    def _repr_html_(self) -> str:
+        """Tables and the chart, for notebooks."""
+        from thumbwright.distill.sheet.notebook import findings_html
+
+        return findings_html(self)

@@ -13,7 +13,6 @@ import numpy as np
 from thumbwright.distill.assemble import NO_LIMITS, Limits
 from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
-from thumbwright.distill.crowd_situations import CrowdSituations
 from thumbwright.distill.example import example
 from thumbwright.distill.findings import (
     Figures,
@@ -203,7 +202,7 @@ def worth_curves(pricer: Pricer, case: Case) -> tuple[WorthCurve, ...]:
     curves = []
     for code in sorted(k for k in often if mass[k] > 0):
         here = joint == code
-        label, states = _state_label(case, situations, int(np.flatnonzero(here)[0]))
+        label, states, counts = _state_label(case, situations, int(np.flatnonzero(here)[0]))
         columns: list[list[float | None]] = [[], [], []]
         for step in steps:
             cell = here & (situations.step == step)
@@ -218,7 +217,8 @@ def worth_curves(pricer: Pricer, case: Case) -> tuple[WorthCurve, ...]:
                 numbers = [_clean(x) for x in (pooled[0], worths.min(), worths.max())]
             for column, number in zip(columns, numbers, strict=True):
                 column.append(number)
-        curves.append(WorthCurve(label, states, steps, *map(tuple, columns)))
+        worth, low, high = map(tuple, columns)
+        curves.append(WorthCurve(label, states, steps, worth, low, high, counts))
     return tuple(curves)
 
 
@@ -227,8 +227,10 @@ def _clean(worth: float) -> float:
     return 0.0 if abs(worth) < 1e-12 else float(worth)
 
 
-def _state_label(case: Case, situations: Weighed, which: int) -> tuple[str, tuple[str, ...]]:
-    """What is shown in a situation, in the words of the case; and the states of agents by name."""
+def _state_label(
+    case: Case, situations: Weighed, which: int
+) -> tuple[str, tuple[str, ...], tuple[int, int] | None]:
+    """What is shown in a situation: in the words of the case, by agent, and counted in a crowd."""
     words = {
         "undecided": case.words.shows_nothing,
         "plus": case.words.shows_plus,
@@ -237,11 +239,10 @@ def _state_label(case: Case, situations: Weighed, which: int) -> tuple[str, tupl
     if isinstance(situations, Situations):
         states = tuple(SHOWN[s] for s in situations.states[which])
         if len(states) == 1:
-            return words[states[0]], states
+            return words[states[0]], states, None
         pairs = zip(situations.seen, states, strict=True)
         told = "; ".join(f"{case.agents[agent].name}: {words[state]}" for agent, state in pairs)
-        return told, states
-    assert isinstance(situations, CrowdSituations)
-    counts = {name: int(situations.number(f"{name}_shown")[which]) for name in ("plus", "minus")}
-    told = "; ".join(f"{number} × {words[name]}" for name, number in counts.items() if number)
-    return told or f"all: {words['undecided']}", ()
+        return told, states, None
+    plus, minus = (int(situations.number(f"{name}_shown")[which]) for name in ("plus", "minus"))
+    counted = [f"{n} {words[name]}" for name, n in (("plus", plus), ("minus", minus)) if n]
+    return "; ".join(counted) or f"all {words['undecided']}", (), (plus, minus)

@@ -46,11 +46,37 @@ def check(case: Case, limits: Limits = NO_LIMITS) -> str:
 
 
 def sheet(
-    case: Case, into: Path, progress: Progress | None = None, limits: Limits = NO_LIMITS
+    case: Case,
+    into: Path,
+    progress: Progress | None = None,
+    limits: Limits = NO_LIMITS,
+    templates: Path | None = None,
+    pdf: bool = False,
 ) -> str:
-    """The main job: write sheet and exports into a folder; returns a summary to print."""
+    """The main job: write sheet and exports into a folder; returns a summary to print.
+
+    Parameters
+    ----------
+    templates : Path, optional
+        Folder of templates that stand in for ours by name.
+    pdf : bool
+        Whether to write the sheet as PDF too, with the extra ``pdf``.
+
+    Raises
+    ------
+    Faults
+        If a template is none of ours or cannot be filled, or the extra is not installed.
+    """
+    from thumbwright.distill.exports import sheet_pdf
+    from thumbwright.distill.sheet.templates import OURS, in_place_of_ours, read_templates
+
+    own = OURS if templates is None else read_templates(templates)
+    if pdf:
+        sheet_pdf.layout()  # told before the long work, not after it
     findings = gather(case, progress, limits)
-    written = write_files(into, render_all(findings))
+    with in_place_of_ours(own):
+        files = render_all(findings) | (sheet_pdf.render(findings) if pdf else {})
+    written = write_files(into, files)
     return texts.sheet_text(findings, written)
 
 

@@ -40,7 +40,9 @@ def pricer_of(
         return NetworkPricer.build(case.rule_agent, settings, losses, cone), missing
     shown = shown_of(crowd, case.rule_agent, group, limits, progress)
     near = play_of(crowd, group, limits).near_tie_mass
-    pricer = CrowdPricer.build(group, case.rule_agent, shown, losses, cone, near, limits.seed)
+    pricer = CrowdPricer.build(
+        group, case.rule_agent, shown, losses, cone, near, limits.seed, limits.drop
+    )
     return pricer, missing
 
 

@@ -6,7 +6,7 @@ from collections.abc import Iterator, Sequence
 from pathlib import Path
 from typing import Any
 
-from thumbwright.distill.case import Case
+from thumbwright.distill.case import Case, is_crowd
 from thumbwright.distill.cautions import cautions
 from thumbwright.distill.crowds import ENUMERATED, CrowdEngine, crowd_in
 from thumbwright.distill.findings import Figures, Findings
@@ -34,7 +34,7 @@ def check_text(case: Case, group: Group, engine: Sequence[str]) -> str:
             f"{case.title}: “{case.question.plus}” or “{case.question.minus}”?",
             f"case {case.name}, digest {case.digest}",
             "",
-            f"Rule for {case.rule_agent} ({case.agents[case.rule_agent].name}), up to "
+            f"Rule for {_owner_in_full(case)}, up to "
             f"{case.rule.rows} rows, looking at {', '.join(case.rule.inputs)}; forms: "
             f"{', '.join(case.rule.forms)}.",
             f"{case.time.horizon} steps; what is shown is taken in "
@@ -159,10 +159,22 @@ def _odd(agent: Agent, prior: float) -> Iterator[str]:
         )
 
 
+def _owner_in_full(case: Case) -> str:
+    owner = owner_of(case)
+    return owner if is_crowd(case.agents) else f"{case.rule_agent} ({owner})"
+
+
+def owner_of(case: Case) -> str:
+    """Whom the rule is for: one agent by name, or anybody in a crowd of which all are meant."""
+    if case.rule.agent == "any" and is_crowd(case.agents):
+        return f"any of the {len(case.agents)}"
+    return case.agents[case.rule_agent].name
+
+
 def sheet_text(findings: Findings, written: Sequence[Path]) -> str:
     """What the main job found, in a few lines, and where it is."""
     case = findings.case
-    lines = [f"{case.title}: rule for {case.agents[findings.agent].name}", ""]
+    lines = [f"{case.title}: rule for {owner_of(case)}", ""]
     named = [
         *(
             (f"{name}, {len(form.rule.rows)} rows", form.figures)

@@ -28,11 +28,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from thumbwright.exact.alike import Likeness, each_for_itself
 from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.expressions import Expression, Leaf, Pair, Workspace
 from thumbwright.exact.group import Group
 from thumbwright.exact.ordering import Ordering
-from thumbwright.exact.store import Store, along
+from thumbwright.exact.store import Store, Weights, along
 
 _THIN = 4.0
 """About how many entries of the thin axis a round renews."""
@@ -72,14 +73,11 @@ class Display:
         for store in self.stores():
             store.grow(axis + 1, extra)
 
-    def log_weights(self) -> FloatArray:
-        """A copy of the log weights, shape (2, own events, events of each seen agent)."""
-        if self.log:
-            return self.log.array.copy()
-        assert self.linear is not None
-        with np.errstate(divide="ignore"):
-            logs: FloatArray = np.log(self.linear.array)
-        return logs
+    def weights(self) -> Weights:
+        """The weights as they are now, for reading."""
+        store = self.linear or self.log
+        assert store is not None, "a display has one of the two, if not both"
+        return Weights(store.array, logarithms=store is self.log)
 
     def stores(self) -> list[Store]:
         """Those of the two that there are."""
@@ -121,25 +119,36 @@ class Result:
 class Contractions:
     """All contractions of a group, planned once, shared where they can be, kept up to date.
 
+    Parameters
+    ----------
+    group : Group
+    likeness : Likeness, optional
+        Who is worked out for whom; if None, everybody for itself.
+
     Attributes
     ----------
     displays : list of Display
-        Per agent the weights of its display histories.
+        Per agent the weights of its display histories; agents that are worked out together have
+        one in common, whose axes are in the order that the likeness gives.
     """
 
-    def __init__(self, group: Group) -> None:
-        ordering = Ordering(group)
-        self._results = [_result(group, ordering, i) for i in range(len(group.agents))]
+    def __init__(self, group: Group, likeness: Likeness | None = None) -> None:
+        alike = likeness or each_for_itself(group)
+        ordering = Ordering(group, alike)
+        self._results = {i: _result(group, ordering, i) for i in alike.leads}
         self._kept = [Kept(pair, Store(len(pair.axes), 1.0)) for pair in ordering.kept()]
-        added = {leaf.agent for result in self._results for leaf in result.leaves}
-        self.displays = [
-            Display(1 + len(seen), j in added, j in ordering.summed_over)
-            for j, seen in enumerate(group.sees)
-        ]
+        added = {leaf.agent for result in self._results.values() for leaf in result.leaves}
+        own = {
+            j: Display(1 + len(group.sees[j]), j in added, j in ordering.summed_over)
+            for j in alike.leads
+        }
+        self.displays = [own[lead] for lead in alike.lead]
         self._workspace = Workspace(self.displays, {k.sum.number: k.store for k in self._kept})
 
     def log_shown(self, position: int) -> FloatArray:
         """Log probability of every history that an agent may have been shown.
+
+        Only for agents that are worked out themselves.
 
         Returns
         -------
@@ -149,10 +158,6 @@ class Contractions:
             displays change.
         """
         return self._results[position].store.array
-
-    def sources(self, position: int) -> frozenset[int]:
-        """The agents whose displays bear on what this one may have been shown."""
-        return self._results[position].factors
 
     def entries(self, events: Sequence[float]) -> tuple[float, float]:
         """How much the contractions hold, given both answers, if agents have so many events.
@@ -164,7 +169,7 @@ class Contractions:
         """
         held = sum(2.0 * math.prod(events[a] for a in kept.sum.axes) for kept in self._kept)
         passing = 0.0
-        for result in self._results:
+        for result in self._results.values():
             held += 2.0 * math.prod(events[a] for a in result.axes)
             for axis, thin in enumerate(result.axes):
                 lengths = [*events]
@@ -194,7 +199,7 @@ class Contractions:
                 for axis, thin in enumerate(kept.sum.axes):
                     block = self._workspace.renewed(kept.sum, thin, fresh[thin])
                     kept.store.array[along(axis, fresh[thin])] = block
-        for result in self._results:
+        for result in self._results.values():
             _grow(result.store, result.axes, gained)
             if not result.factors.isdisjoint(changed):
                 for axis, thin in enumerate(result.axes):

@@ -18,7 +18,7 @@ import numpy as np
 
 from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.crowd_kinds import Crowd
-from thumbwright.exact.crowd_play import Record
+from thumbwright.exact.crowd_record import Record
 from thumbwright.exact.outcomes import Outcome
 from thumbwright.exact.together import Together
 
@@ -133,7 +133,7 @@ class Weights:
         return value, np.divide(np.sqrt(variance), bottom, out=np.full(2, np.nan), where=bottom > 0)
 
     def total_error(self, x: FloatArray) -> float:
-        """Error of the sum of both means of x, shape (2, H), the same histories serving for both."""
+        """Error of the sum of both means of x, shape (2, H); the same histories serve for both."""
         if not self._sampled:
             return 0.0
         whole = self._weight.sum(axis=1, keepdims=True)

@@ -17,6 +17,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from thumbwright.exact.alike import likeness
 from thumbwright.exact.arrays import FloatArray
 from thumbwright.exact.errors import ModelError
 from thumbwright.exact.forecast import refuse_too_large
@@ -136,7 +137,7 @@ def solve(
     if not 0.0 <= drop < 1.0:
         raise ModelError(f"what may be dropped is a probability from 0 to below 1, not {drop:g}")
     refuse_too_large(group, memory)
-    stage = Stage(group, [ExactReader() for _ in group.agents], drop)
+    stage = Stage(group, [ExactReader() for _ in group.agents], drop, likeness=likeness(group))
     tracks = stage.play(progress)
     doubtful = sum((player.doubtful for player in stage.players), np.zeros(2))
     return Solution(group, tracks, _two(stage.dropped), _two(doubtful))

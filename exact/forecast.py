@@ -13,6 +13,7 @@ import os
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 
+from thumbwright.exact.alike import likeness
 from thumbwright.exact.errors import ModelError
 from thumbwright.exact.group import Group
 from thumbwright.exact.player import ExactReader
@@ -25,7 +26,7 @@ _FEW_STEPS = 4
 _WAYS_OUT = 3
 
 # Measured on one core of a small machine.
-_SECONDS_PER_DECISION = 2.5e-4
+_SECONDS_PER_DECISION = 1.5e-4
 _SECONDS_PER_BYTE = 4e-9
 _SECONDS_PER_ROW = 2.0e-8
 _BYTES_PER_DECISION = 1200.0
@@ -72,7 +73,8 @@ def forecast(group: Group) -> Forecast:
 
 def _first_steps(group: Group) -> _Course:
     size = len(group.agents)
-    stage = Stage(group, [ExactReader() for _ in group.agents], most_entries=_PILOT_ENTRIES)
+    readers = [ExactReader() for _ in group.agents]
+    stage = Stage(group, readers, most_entries=_PILOT_ENTRIES, likeness=likeness(group))
     course = _Course(stage, [[1.0] * size], [[0.0] * size], [0.0], [1.0] * size)
     for step in range(1, group.horizon + 1):
         try:
@@ -89,8 +91,9 @@ def _first_steps(group: Group) -> _Course:
             course.rounds.append(float(max(len(track.moments) for track in tracks)))
             for i, player in enumerate(stage.players):
                 course.rows[i] = max(course.rows[i], float(len(player.walk.count)))
-        kept = sum(player.decisions * math.prod(player.shape) for player in stage.players)
-        much = kept > _PILOT_ENTRIES or sum(course.decisions[-1]) > _PILOT_DECISIONS
+        leads = [stage.players[i] for i in stage.leads]
+        kept = sum(player.decisions * math.prod(player.shape) for player in leads)
+        much = kept > _PILOT_ENTRIES or sum(p.decisions for p in leads) > _PILOT_DECISIONS
         enough = eventful >= _FEW_STEPS and much
         if enough or not whole:
             break
@@ -112,14 +115,16 @@ def _carried_on(group: Group, course: _Course, horizon: int) -> Forecast:
     size = len(group.agents)
     events = [_at([row[i] for row in course.events], horizon) for i in range(size)]
     rounds = _at(course.rounds, horizon)
-    slack, own, seconds = (1.0 + SPARE) / 2.0, [0.0] * size, 0.0
-    for i, seen in enumerate(group.sees):
+    # Those that are worked out for another agent hold next to nothing of their own.
+    slack, own, seconds = (1.0 + SPARE) / 2.0, [_BYTES_PER_WAIT * rounds] * size, 0.0
+    for i in course.stage.leads:
+        seen = group.sees[i]
         histories = math.prod(events[k] for k in seen)
         decisions = _at([row[i] for row in course.decisions], horizon)
         shows = 16.0 * events[i] * histories
         stores = sum(1 for store in course.stage.contractions.displays[i].stores())
         own[i] = (
-            shows * (1.0 + slack * stores)
+            shows * slack * stores
             + 8.0 * histories * (4.0 * course.rows[i] + 7.0 * decisions / (len(seen) + 1))
             + _BYTES_PER_DECISION * decisions
             + _BYTES_PER_WAIT * (rounds - decisions)

@@ -52,15 +52,16 @@ def displays(solution: Solution, step: int, picks: Sequence[IntArray]) -> list[P
     found: list[Piece] = []
     for j, (track, end) in enumerate(zip(solution.tracks, ends_of(solution, step), strict=True)):
         seen = [picks[k] for k in group.sees[j]]
-        log_weight = track.log_weights[np.ix_(_BOTH, picks[j], *seen)]
+        assert track.weights is not None, "the track of a whole run has them"
+        weight = track.weights.at(picks[j], *seen)
         if len(picks[j]) and picks[j][0] == 0:
             # An event shown in the last round of the step was not known in it: still undecided.
             known = zip(seen, end.log_after.shape[1:], strict=True)
             before = [np.where(pick < length, pick, 0) for pick, length in known]
-            log_weight[:, 0] = end.log_after[np.ix_(_BOTH, *before)]
+            weight[:, 0] = np.exp(end.log_after[np.ix_(_BOTH, *before)])
         axes = (j, *group.sees[j])
-        turned = np.transpose(log_weight, (0, *(1 + np.argsort(axes))))
-        found.append((np.exp(turned)[None], tuple(sorted(axes))))
+        turned = np.transpose(weight, (0, *(1 + np.argsort(axes))))
+        found.append((turned[None], tuple(sorted(axes))))
     return found
 
 

@@ -11,6 +11,7 @@ from __future__ import annotations
 
 import heapq
 
+from thumbwright.exact.alike import Likeness
 from thumbwright.exact.expressions import Expression, Leaf, Pair, pair_axes
 from thumbwright.exact.group import Group
 
@@ -23,11 +24,11 @@ class Ordering:
     Attributes
     ----------
     summed_over : set of int
-        Agents whose weights enter some sum.
+        Agents whose weights enter some sum, or those of agents that they are worked out for.
     """
 
-    def __init__(self, group: Group) -> None:
-        self._sees = group.sees
+    def __init__(self, group: Group, likeness: Likeness) -> None:
+        self._sees, self._likeness = group.sees, likeness
         self._sources = [group.sources(i) for i in range(len(group.agents))]
         self._widest = max(1 + len(seen) for seen in group.sees)
         self._known: dict[tuple[object, ...], Expression] = {}
@@ -93,14 +94,15 @@ class Ordering:
             waiting += [(one.left, axis), (one.right, axis)]
 
     def _leaf(self, agent: int, held: int) -> Expression:
-        axes = (agent, *self._sees[agent])
+        axes = (agent, *self._likeness.seen[agent])
         where: tuple[slice | int, ...] = ()
         if held in axes:
             where = (*(slice(None),) * (1 + axes.index(held)), 0)
         key = ("leaf", agent, held if where else None)
         if key not in self._known:
             left_open = tuple(a for a in axes if a != held)
-            self._known[key] = Leaf(len(self._known), left_open, frozenset((agent,)), agent, where)
+            lead = self._likeness.lead[agent]
+            self._known[key] = Leaf(len(self._known), left_open, frozenset((agent,)), lead, where)
         return self._known[key]
 
     def _pair(self, one: Expression, other: Expression, out: int | None) -> Expression:

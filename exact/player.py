@@ -16,6 +16,7 @@ import numpy as np
 
 from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.group import Agent, Group
+from thumbwright.exact.store import Weights
 from thumbwright.exact.walk import NEAR, TIE, Walk, grown
 
 
@@ -62,6 +63,17 @@ class Moment:
     log_before: FloatArray
     log_after: FloatArray
 
+    def turned(self, turn: tuple[int, ...]) -> Moment:
+        """The same with the axes of the seen agents in another order."""
+        with_answer = (0, *(1 + axis for axis in turn))
+        logs = (self.log_shown, self.log_before, self.log_after)
+        return Moment(
+            self.step,
+            self.round,
+            np.transpose(self.value, turn),
+            *(np.transpose(log, with_answer) for log in logs),
+        )
+
 
 @dataclass(frozen=True)
 class Scene:
@@ -87,16 +99,35 @@ class Reading:
         What each history is worth to the belief (nats); nan where it says nothing.
     row : ndarray of int, shape (C,), or None
         Which line of a rule decided, for counting.
-    compared : bool
-        Whether the masks came from comparing that value with the thresholds, so that near ties
-        are to be reported.
+    near : ndarray of bool, shape (2, R, C), or None
+        Where the belief is within TIE of the lower threshold and of the upper one, but not on it;
+        None if nowhere, or if the masks did not come from comparing them.
     """
 
     plus: BoolArray
     minus: BoolArray
     value: FloatArray
-    compared: bool
+    near: BoolArray | None = None
     row: IntArray | None = None
+
+
+@dataclass(frozen=True)
+class Calls:
+    """What commits in a round; axis 0 is to plus, to minus, axis 1 given plus, given minus.
+
+    Attributes
+    ----------
+    log_weights : ndarray of float, shape (2, 2, histories...)
+        Log weight of committing after each history.
+    chance : ndarray of float, shape (2, 2)
+        Probability of committing.
+    possible : tuple of two bools
+        To plus, to minus: whether any history that can be met leads to it.
+    """
+
+    log_weights: FloatArray
+    chance: FloatArray
+    possible: tuple[bool, bool]
 
 
 class Reader(ABC):
@@ -133,8 +164,7 @@ class Track:
     ``answers`` has shape (2, 2, T + 1): axis 0 to plus, to minus; axis 1 given plus, given minus;
     the probability of committing at each step. ``leaning`` has shape (3, 2): of those undecided at
     the horizon, the probability that the belief favours plus, favours minus, or neither.
-    ``log_weights`` has shape (2, events, events of each seen agent): the log weight of each display
-    event at the horizon, given plus and given minus, when those seen are made to show theirs.
+    ``weights`` holds the weight of each display event at the horizon; it is None before.
     """
 
     agent: Agent
@@ -143,13 +173,32 @@ class Track:
     answers: FloatArray
     leaning: FloatArray
     near_tie: float = 0.0
-    log_weights: FloatArray = field(default_factory=lambda: np.zeros((2, 1)))
+    weights: Weights | None = None
 
     @property
     def undecided(self) -> FloatArray:
         """Probability of being undecided at the horizon, given plus and given minus."""
         total: FloatArray = self.leaning.sum(axis=0)
         return total
+
+    def turned(self, agent: Agent, turn: tuple[int, ...]) -> Track:
+        """The same for an agent that is like this one.
+
+        Parameters
+        ----------
+        agent : Agent
+        turn : tuple of int
+            Per agent that it sees, the axis of the one that stands for it here.
+        """
+        in_order = turn == tuple(range(len(turn)))
+        return replace(
+            self,
+            agent=agent,
+            moments=[*self.moments] if in_order else [one.turned(turn) for one in self.moments],
+            answers=self.answers.copy(),
+            leaning=self.leaning.copy(),
+            weights=self.weights.turned(turn) if self.weights else None,
+        )
 
 
 def worth(log_probability: FloatArray) -> FloatArray:
@@ -164,10 +213,12 @@ def by_value(scene: Scene, value: FloatArray) -> Reading:
 
     A belief within TIE of a threshold has reached it. Nothing commits where the value is nan.
     """
-    walk, own = scene.walk, scene.prior + scene.walk.tally
-    plus = value[None, :] >= (walk.high - own - TIE)[:, None]
-    minus = value[None, :] <= (walk.low - own + TIE)[:, None]
-    return Reading(plus, minus, value, compared=True)
+    # What is wanted of the value is the same at all histories, so it is worked out per row first.
+    gap = value - (scene.walk.bars - (scene.prior + scene.walk.tally))[:, :, None]
+    plus, minus = gap[1] >= -TIE, gap[0] <= TIE
+    distance = np.abs(gap, out=gap)
+    near = (distance <= TIE) & (distance > NEAR)
+    return Reading(plus, minus, value, near if np.count_nonzero(near) else None)
 
 
 class ExactReader(Reader):
@@ -227,11 +278,8 @@ class Player:
         log_probability: FloatArray,
         columns: IntArray | None = None,
         lost: FloatArray | None = None,
-    ) -> FloatArray | None:
-        """Cut what commits in this round.
-
-        Returns its log weights, shape (2, 2, histories...): to plus and to minus, given plus and
-        given minus; None where nothing commits.
+    ) -> Calls | None:
+        """Cut what commits in this round and return it; None where nothing does.
 
         Parameters
         ----------
@@ -259,18 +307,21 @@ class Player:
             reading, lost = replace(reading, plus=nothing, minus=nothing), None
         if lost is not None:
             self._note_doubts(reading, part, columns, lost)
-        before, gone = self._log_undecided, None
-        if self._certain is not None or reading.plus.any() or reading.minus.any():
-            if reading.compared:
-                self._note_near_ties(reading, part, columns)
+        before, gone, result = self._log_undecided, None, None
+        commits = np.count_nonzero(reading.plus) or np.count_nonzero(reading.minus)
+        if commits or self._certain is not None:
+            if reading.near is not None:
+                self._note_near_ties(reading, reading.near, part, columns)
             divided = self.walk.divide(reading.plus, reading.minus, columns)
             gone = divided[:2]
             if self._certain is not None:
                 gone = np.logaddexp(gone, self._certain)
                 self._certain = None
             self._log_undecided = _updated(before, columns, divided[2])
-            happened = np.exp(gone + part)
-            self.track.answers[:, :, step] += happened.sum(axis=2)
+            log_joint = gone + part
+            happened = np.exp(log_joint)
+            result = self._calls(gone, log_joint, happened.sum(axis=2), columns)
+            self.track.answers[:, :, step] += result.chance
         if not self.reader.steady:
             calls = np.zeros_like(part) if gone is None else happened.sum(axis=0)
             self.reader.tell(scene, reading, calls, np.exp(before.reshape(2, -1) + flat))
@@ -278,11 +329,24 @@ class Player:
         self.track.moments.append(
             Moment(step, round_, self._value, log_probability, before, self._log_undecided)
         )
-        if step == self.horizon:
-            self._lean(self._value.ravel(), flat)
-        if gone is None:
-            return None
-        return _updated(np.full((2, 2, *self.shape), -np.inf), columns, gone)
+        return result
+
+    def _calls(
+        self,
+        gone: FloatArray,
+        log_joint: FloatArray,
+        chance: FloatArray,
+        columns: IntArray | None,
+    ) -> Calls:
+        """Log weights and log probabilities, shape (2, 2, k), as calls after all histories."""
+        if columns is None:
+            everywhere = gone.reshape(2, 2, *self.shape)
+        else:
+            everywhere = np.full((2, 2, *self.shape), -np.inf)
+            everywhere.reshape(2, 2, -1)[..., columns] = gone
+        # The logarithm tells what is impossible from what is too rare for a float.
+        plus, minus = log_joint.max(axis=(1, 2), initial=-np.inf)
+        return Calls(everywhere, chance, (plus > -np.inf, minus > -np.inf))
 
     def wait(self, step: int, round_: int) -> None:
         """A round in which nothing has changed for the agent, whose reader is steady."""
@@ -292,17 +356,15 @@ class Player:
         )
 
     def _note_near_ties(
-        self, reading: Reading, log_probability: FloatArray, columns: IntArray | None
+        self,
+        reading: Reading,
+        near: BoolArray,
+        log_probability: FloatArray,
+        columns: IntArray | None,
     ) -> None:
-        own = self.prior + self.walk.tally
-        for mask, threshold in ((reading.plus, self.walk.high), (reading.minus, self.walk.low)):
-            gap = np.abs(reading.value[None, :] - (threshold - own)[:, None])
-            near = gap <= TIE
-            if not near.any():
-                continue
-            near &= mask & (gap > NEAR)
-            if near.any():
-                mass = np.exp(self.walk.log_where(near, columns) + log_probability).sum(axis=1)
+        for mask in (near[0] & reading.minus, near[1] & reading.plus):
+            if mask.any():
+                mass = np.exp(self.walk.log_where(mask, columns) + log_probability).sum(axis=1)
                 self.track.near_tie += float(
                     self.prior_plus * mass[0] + (1.0 - self.prior_plus) * mass[1]
                 )
@@ -320,16 +382,20 @@ class Player:
             least = log_probability[0] - more[1]
             most = more[0] - log_probability[1]
         own = self.prior + self.walk.tally
-        high, low = (self.walk.high - own - TIE)[:, None], (self.walk.low - own + TIE)[:, None]
+        low, high = (self.walk.bars - own)[:, :, None] + np.array([TIE, -TIE])[:, None, None]
         unsure = (reading.plus != (most >= high)) | (reading.plus != (least >= high))
         unsure |= (reading.minus != (most <= low)) | (reading.minus != (least <= low))
         if unsure.any():
             mass = np.exp(self.walk.log_where(unsure, columns) + log_probability)
             self.doubtful += mass.sum(axis=1)
 
-    def _lean(self, value: FloatArray, flat: FloatArray) -> None:
-        """Of those still undecided: which answer does the belief favour at this round?"""
-        belief = (self.prior + self.walk.tally)[:, None] + value[None, :]
+    def lean(self) -> None:
+        """Note of those still undecided which answer the belief favours at the last round.
+
+        To be called after it, and before the agent is told of what was shown in it.
+        """
+        flat = self.track.moments[-1].log_shown.reshape(2, -1)
+        belief = (self.prior + self.walk.tally)[:, None] + self._value.ravel()
         self.track.leaning[:] = [
             np.exp(self.walk.log_where(mask) + flat).sum(axis=1) for mask in leanings(belief)
         ]

@@ -9,6 +9,7 @@ is new and not the whole array.
 from __future__ import annotations
 
 import math
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -43,8 +44,9 @@ class Store:
         lengths[axis + 1] += extra
         if lengths[axis + 1] > self._room.shape[axis + 1]:
             self._make_room(lengths)
-        self.array = self._room[tuple(slice(0, length) for length in lengths)]
-        self.array[along(axis, slice(used, None))] = self.array[along(axis, slice(0, 1))]
+        self.array = self._room[tuple([slice(length) for length in lengths])]
+        turned = self.array.swapaxes(0, axis + 1)
+        turned[used:] = turned[:1]
 
     def _make_room(self, lengths: list[int]) -> None:
         # All axes at once: they grow alike, and copying is what costs.
@@ -55,6 +57,33 @@ class Store:
         room = np.empty([2, *spare])
         room[tuple(slice(0, length) for length in self.array.shape)] = self.array
         self._room = room
+
+
+@dataclass(frozen=True)
+class Weights:
+    """The weights of what one agent may have shown, for reading only.
+
+    Attributes
+    ----------
+    array : ndarray of float, shape (2, own events, events of each seen agent)
+        Given plus and given minus, the probability of each display event when those seen are made
+        to show theirs.
+    logarithms : bool
+        Whether the array holds the logarithms of the probabilities.
+    """
+
+    array: FloatArray
+    logarithms: bool
+
+    def at(self, *entries: IntArray) -> FloatArray:
+        """Probabilities, as a new array, of the chosen entries of each event axis."""
+        chosen: FloatArray = self.array[np.ix_(np.arange(2), *entries)]
+        return np.exp(chosen) if self.logarithms else chosen
+
+    def turned(self, turn: tuple[int, ...]) -> Weights:
+        """The same with the axes of the seen agents in another order."""
+        axes = (0, 1, *(2 + axis for axis in turn))
+        return Weights(np.transpose(self.array, axes), self.logarithms)
 
 
 def along(axis: int, entries: IntArray | slice) -> tuple[IntArray | slice, ...]:

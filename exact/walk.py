@@ -15,6 +15,7 @@ with its own thresholds.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TypeVar
 
 import numpy as np
@@ -49,8 +50,8 @@ class Walk:
         Own count S of each row on a ladder; on a lattice of several axes a code of the counts.
     tally : ndarray of float, shape (R,)
         Sum of the worths of the own observations (nats) of each row.
-    low, high : ndarray of float, shape (R,)
-        Thresholds on the belief (nats) that hold for each row.
+    bars : ndarray of float, shape (2, R)
+        Thresholds on the belief (nats) that hold for each row, the lower ones first.
     mass : ndarray of float, shape (R, C)
         The measure m of each row and column, before ``exp(log_scale)``.
     log_scale : ndarray of float, shape (C,)
@@ -67,7 +68,7 @@ class Walk:
         # On several axes all offsets are 0 or 1, so strides of horizon + 1 never run over.
         self._strides = (horizon + 1) ** np.arange(axes, dtype=np.int64)
         self._moves: IntArray = evidence.offsets @ self._strides
-        self._bounds = np.array([[t.minus, t.plus] for _, t in thresholds])
+        self._bounds = np.array([[t.minus for _, t in thresholds], [t.plus for _, t in thresholds]])
         blocks = np.arange(len(thresholds), dtype=np.int64)
         self._code: IntArray = blocks * _BLOCK + _BLOCK // 2
         self.mass: FloatArray = np.array([[share] for share, _ in thresholds], dtype=float)
@@ -75,10 +76,22 @@ class Walk:
         self.observed = 0
         self._describe()
 
+    @property
+    def low(self) -> FloatArray:
+        """Lower threshold on the belief (nats) of each row, shape (R,)."""
+        lower: FloatArray = self.bars[0]
+        return lower
+
+    @property
+    def high(self) -> FloatArray:
+        """Upper threshold on the belief (nats) of each row, shape (R,)."""
+        upper: FloatArray = self.bars[1]
+        return upper
+
     def _describe(self) -> None:
         block, inner = np.divmod(self._code, _BLOCK)
         self.count: IntArray = inner - _BLOCK // 2
-        self.low, self.high = self._bounds[block, 0], self._bounds[block, 1]
+        self.bars: FloatArray = self._bounds[:, block]
         alpha = self._evidence.alpha
         if len(alpha) == 1:
             self.tally: FloatArray = alpha[0] * self.count + self._evidence.beta * self.observed
@@ -118,7 +131,7 @@ class Walk:
 
     def _move_each(self) -> None:
         """One shifted addition per value: for evidence with few values, on any lattice."""
-        codes = np.unique((self._code[:, None] + self._moves[None, :]).ravel())
+        codes = _distinct((self._code[:, None] + self._moves[None, :]).ravel())
         mass = np.zeros((len(codes), self.mass.shape[1]))
         for move, weight in zip(self._moves, self._root_mass, strict=True):
             target = np.searchsorted(codes, self._code + move)
@@ -170,7 +183,7 @@ class Walk:
 
     def log_where(self, rows: BoolArray, columns: IntArray | None = None) -> FloatArray:
         """Log mass of the chosen rows and columns, shape (2, C); ``rows`` has shape (R, C)."""
-        return self._log(np.where(rows, self._of(columns), 0.0), columns)
+        return self._log(self._of(columns) * rows, columns)
 
     def cut(self, plus: BoolArray, minus: BoolArray, columns: IntArray | None = None) -> FloatArray:
         """Take out what commits to plus and to minus.
@@ -193,9 +206,9 @@ class Walk:
     ) -> FloatArray:
         """As :meth:`cut`, with a third entry on axis 0: the log weight of what is left."""
         mass = self._of(columns)
-        parts = np.zeros((3, *mass.shape))
+        parts = np.empty((3, *mass.shape))
         for part, mask in zip(parts, (plus, minus, ~(plus | minus)), strict=True):
-            np.copyto(part, mass, where=mask)
+            np.multiply(mass, mask, out=part)  # much faster than copying where the mask holds
         divided = self._log(parts, columns)
         if columns is None:
             self.mass = parts[2]
@@ -206,11 +219,38 @@ class Walk:
             self.mass[:, columns] = parts[2]
         return divided
 
+    @property
+    def block(self) -> IntArray:
+        """Which possibility each row belongs to, shape (R,)."""
+        return np.asarray(self._code // _BLOCK)
+
+    def carry(self, out: BoolArray, moved: Sequence[tuple[int, BoolArray]]) -> None:
+        """Take out some mass, and carry other mass to the same own count of another possibility.
+
+        Parameters
+        ----------
+        out : ndarray of bool, shape (R, C)
+            What is taken out.
+        moved : sequence of (int, ndarray of bool, shape (R, C))
+            The possibility that mass goes to, and which; no mass is named twice.
+        """
+        codes, parts = [self._code], [np.where(out, 0.0, self.mass)]
+        for block, mask in moved:
+            rows = np.flatnonzero(mask.any(axis=1))
+            parts[0][mask] = 0.0
+            codes.append(self._code[rows] % _BLOCK + block * _BLOCK)
+            parts.append(np.where(mask, self.mass, 0.0)[rows])
+        self._code, row = np.unique(np.concatenate(codes), return_inverse=True)
+        self.mass = np.zeros((len(self._code), self.mass.shape[1]))
+        np.add.at(self.mass, row, np.concatenate(parts))
+        alive = self.mass.any(axis=1)
+        self._code, self.mass = self._code[alive], self.mass[alive]
+        self._describe()
+
     def _keep(self, rows: BoolArray) -> None:
         self._code, self.mass = self._code[rows], self.mass[rows]
         self.count, self.tally = self.count[rows], self.tally[rows]
-        self.low, self.high = self.low[rows], self.high[rows]
-        self._given = self._given[:, rows]
+        self.bars, self._given = self.bars[:, rows], self._given[:, rows]
 
     def _of(self, columns: IntArray | None) -> FloatArray:
         return self.mass if columns is None else self.mass[:, columns]
@@ -235,5 +275,18 @@ def grown(array: NDArray[Kind], axis: int, extra: int) -> NDArray[Kind]:
     """``array`` with ``extra`` copies of its slice 0 (undecided) appended along ``axis``."""
     if not extra:
         return array
-    first = np.take(array, [0] * extra, axis=axis)
-    return np.concatenate([array, first], axis=axis)
+    lengths, used = [*array.shape], array.shape[axis]
+    lengths[axis] += extra
+    longer = np.empty(lengths, dtype=array.dtype)
+    # Seen with that axis first; this is much faster than joining the two for small arrays.
+    new, old = longer.swapaxes(0, axis), array.swapaxes(0, axis)
+    new[:used], new[used:] = old, old[:1]
+    return longer
+
+
+def _distinct(codes: IntArray) -> IntArray:
+    """The different ones, ascending; for the few there are much faster than ``np.unique``."""
+    codes.sort()
+    fresh = np.ones(len(codes), dtype=bool)
+    np.not_equal(codes[1:], codes[:-1], out=fresh[1:])
+    return codes[fresh]

@@ -8,7 +8,7 @@ of its text in :attr:`Input.names`. So 0, 1, 2 stand for undecided, plus, minus 
 from __future__ import annotations
 
 import re
-from collections.abc import Iterable
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 from thumbwright.distill.code.reserved import RESERVED
@@ -91,16 +91,22 @@ class Part:
         """All that must hold for a row, in the order of the inputs; none: it always holds."""
         made: list[Condition] = []
         for one in self.inputs:
-            accepted = _accepted(row, one.key)
             if one.names:
-                codes = tuple(c for c, name in enumerate(one.names) if name in accepted)
-                if accepted and len(codes) < len(one.names):
+                codes = tuple(one.names.index(name) for name in self.accepted(row, one))
+                if not codes:
+                    raise ValueError(f"a row accepts nothing that {one.key} can be")
+                if len(codes) < len(one.names):
                     made.append(Among(one.argument, codes))
             elif one.key == STEP and (row.step_from, row.step_to) != (None, None):
                 made.append(Within(one.argument, row.step_from, row.step_to))
             elif row.ranges.get(one.key, (None, None)) != (None, None):
                 made.append(Within(one.argument, *row.ranges[one.key]))
         return tuple(made)
+
+    def accepted(self, row: Row, one: Input) -> tuple[str, ...]:
+        """Names that a row accepts of an input, in the order of their codes."""
+        said = _said_of(row, one.key)
+        return one.names if said is None else tuple(name for name in one.names if name in said)
 
 
 @dataclass(frozen=True)
@@ -120,8 +126,8 @@ class Parts:
 def parts_of(findings: Findings) -> Parts:
     """Return what an exported file does.
 
-    ``decide`` follows the rule that ``rule.csv`` holds, ``value`` the table, or else the first
-    form that holds worths.
+    ``decide`` follows the rule that ``rule.csv`` holds; ``value`` the same, if it holds worths,
+    else the table or the first form that does.
 
     Raises
     ------
@@ -132,12 +138,12 @@ def parts_of(findings: Findings) -> Parts:
     forms = [
         findings.forms[name].rule for name in ("table", *findings.forms) if name in findings.forms
     ]
-    valued = next((rule for rule in forms if is_valued(rule)), None)
+    valued = decided if is_valued(decided) else next(filter(is_valued, forms), None)
     rules = [rule for rule in (valued, decided) if rule is not None]
-    called = _arguments(rules)
+    called, known = _arguments(rules), _names_told_apart(rules, findings)
     return Parts(
-        None if valued is None else Part(valued, _inputs(valued, findings, called)),
-        Part(decided, _inputs(decided, findings, called)),
+        None if valued is None else Part(valued, _inputs(valued, findings, called, known)),
+        Part(decided, _inputs(decided, findings, called, known)),
     )
 
 
@@ -154,21 +160,23 @@ def agents_named(rule: Rule) -> tuple[str, ...]:
     return tuple(agent for agent in rule.seen if agent in used)
 
 
-def _accepted(row: Row, key: str) -> frozenset[str]:
-    """Names that the row accepts; empty where it does not look."""
+def _said_of(row: Row, key: str) -> frozenset[str] | None:
+    """Names that the row accepts; ``None`` where it does not look."""
     if key == FIRST_ANSWER:
-        return row.first_answer or frozenset()
+        return row.first_answer
     for end, looked_at in ((SHOWS, row.shows), (THRESHOLDS, row.thresholds)):
         agent = key.removesuffix(end)
         if agent != key and agent in looked_at:
             return looked_at[agent]
-    return frozenset()
+    return None
 
 
-def _inputs(rule: Rule, findings: Findings, called: dict[str, str]) -> tuple[Input, ...]:
+def _inputs(
+    rule: Rule, findings: Findings, called: dict[str, str], known: tuple[str, ...]
+) -> tuple[Input, ...]:
     """Return what the rule looks at, the step always first."""
     case = findings.case
-    label = f", of {case.time.step_label} each" if case.time.step_label else ""
+    label = f" of {case.time.step_label}" if case.time.step_label else ""
     made = [
         Input(
             STEP,
@@ -181,35 +189,37 @@ def _inputs(rule: Rule, findings: Findings, called: dict[str, str]) -> tuple[Inp
         words = (case.words.shows_nothing, case.words.shows_plus, case.words.shows_minus)
         states = "; ".join(f"{s}: {word}" for s, word in zip(SHOWN, words, strict=True))
         meaning = f"what {case.agents[agent].name} shows now ({states})"
-        made.append(Input(agent + SHOWS, called[agent], SHOWN, meaning=meaning))
+        made.append(Input(agent + SHOWS, called[agent + SHOWS], SHOWN, meaning=meaning))
     made += [
         Input(name, name, meaning=f"{number_means(name)}; from 0") for name in numbers_used(rule)
     ]
     if answers_used(rule):
         meaning = "which answer a seen agent gave first; both: both at that moment"
         made.append(Input(FIRST_ANSWER, FIRST_ANSWER, FIRST_ANSWERS, meaning=meaning))
-    known = _names_told_apart(rule, findings)
     for agent in agents_named(rule):
         meaning = f"which thresholds {case.agents[agent].name} has"
         made.append(Input(agent + THRESHOLDS, called[agent + THRESHOLDS], known, meaning=meaning))
     return tuple(made)
 
 
-def _names_told_apart(rule: Rule, findings: Findings) -> tuple[str, ...]:
-    """Return the names of thresholds that the rule was made for, in the order of the case."""
-    used = {name for row in rule.rows for names in row.thresholds.values() for name in names}
-    used.update(findings.case.rule.covers)
-    return tuple(name for name in threshold_names(rule, findings) if name in used)
+def _names_told_apart(rules: Sequence[Rule], findings: Findings) -> tuple[str, ...]:
+    """Return the names of thresholds that the rules were made for, in the order of the case."""
+    wanted = dict.fromkeys(name for rule in rules for name in threshold_names(rule, findings))
+    used = set(findings.case.rule.covers)
+    for rule in rules:
+        used.update(
+            name for row in rule.rows for names in row.thresholds.values() for name in names
+        )
+    return tuple(safe_id(name) for name in wanted if name in used)
 
 
-def _arguments(rules: Iterable[Rule]) -> dict[str, str]:
+def _arguments(rules: Sequence[Rule]) -> dict[str, str]:
     """Return a name for each agent's state and thresholds that is legal in every language."""
-    rules = list(rules)
     taken = {STEP, FIRST_ANSWER, *NUMBERS}
     called: dict[str, str] = {}
-    for end in ("", THRESHOLDS):
+    for end, tail in ((SHOWS, ""), (THRESHOLDS, THRESHOLDS)):
         for agent in dict.fromkeys(agent for rule in rules for agent in rule.seen):
-            name = safe_id(agent).replace("-", "_") + end
+            name = safe_id(agent).replace("-", "_") + tail
             while name in taken or name.lower() in RESERVED:
                 name += "_"
             taken.add(name)

@@ -11,7 +11,7 @@ break byte case catch char class complex const constexpr continue debugger def d
 do double elif else enum errno eval except exec export extends extern f false final finally float
 for from function generic global goto i if imaginary implements import in inf infinity inherits
 inline instanceof int interface is isfinite isinf isnan lambda let linux long match na nan native
-new none nonlocal noreturn not null nullptr of or package pass print private protected public
+new next none nonlocal noreturn not null nullptr of or package pass print private protected public
 raise register repeat restrict return short signed signbit sizeof static stderr stdin stdout
 struct super switch synchronized t tally this thread_local throw throws transient true try type
 typedef typeof typeof_unqual undefined union unix unsigned using value values var void volatile
@@ -19,7 +19,8 @@ wchar_t while with yield
 """
 
 _OURS = """
-answer argv belief decide main math numpy process row rows self_check steps worth
+answer belief decide main minus_at never plus_at prior process row rows tie worth wrong
+check_decide check_value
 """
 
 RESERVED = frozenset((_WORDS + _OURS).split())

@@ -13,8 +13,22 @@ from typing import TYPE_CHECKING
 if TYPE_CHECKING:
     from thumbwright.distill.findings import Findings
 
-MODULES = ("sheet_html", "sheet_md", "rule_csv", "rule_json")
+MODULES = (
+    "sheet_html",
+    "sheet_md",
+    "rule_csv",
+    "rule_json",
+    "rule_schema",
+    "rule_dmn",
+    "code_python",
+    "code_r",
+    "code_javascript",
+    "code_c",
+)
 """The export modules of this package, in the order in which they are rendered."""
+
+ON_REQUEST = ("sheet_pdf",)
+"""Export modules that need an extra, rendered only where they are asked for."""
 
 
 def render_all(findings: Findings) -> dict[str, str | bytes]:

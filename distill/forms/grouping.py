@@ -13,9 +13,18 @@ import numpy as np
 from thumbwright.distill.forms.boxes import gain
 from thumbwright.exact.arrays import FloatArray, IntArray, sums
 
+MOST_SINGLE = 20_000
+"""More situations than this are put together where their posteriors nearly agree."""
+
+_EVEN_STEPS = 10_000
+
 
 def best_groupings(plus: FloatArray, minus: FloatArray, most: int) -> FloatArray:
     """Largest summed g of any grouping into at most k groups, for k = 1 .. ``most``.
+
+    Of very many situations those of nearly equal posterior are put together first, and all that
+    this could cost is added to every entry: then it is a bound, too high by less than 1e-7 of the
+    mass.
 
     Parameters
     ----------
@@ -28,6 +37,11 @@ def best_groupings(plus: FloatArray, minus: FloatArray, most: int) -> FloatArray
     ndarray of float, shape (most,)
     """
     plus, minus = _sorted_and_merged(plus, minus)
+    apart = 0.0
+    if len(plus) > MOST_SINGLE:
+        kept_apart = float(gain(plus, minus).sum())
+        plus, minus = _nearly_merged(plus, minus)
+        apart = max(kept_apart - float(gain(plus, minus).sum()), 0.0)
     running = [np.concatenate([[0.0], np.cumsum(side)]) for side in (plus, minus)]
     count = len(plus)
     best = np.concatenate([[0.0], gain(running[0][1:], running[1][1:])])
@@ -38,7 +52,7 @@ def best_groupings(plus: FloatArray, minus: FloatArray, most: int) -> FloatArray
             continue
         best = _one_more(best, running[0], running[1], groups)
         ceilings.append(max(ceilings[-1], float(best[count])))
-    return np.array(ceilings)
+    return np.array(ceilings) + apart
 
 
 def _sorted_and_merged(plus: FloatArray, minus: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -50,6 +64,17 @@ def _sorted_and_merged(plus: FloatArray, minus: FloatArray) -> tuple[FloatArray,
     starts = np.concatenate([[True], np.diff(share[order]) > 1e-13])
     group: IntArray = np.cumsum(starts) - 1
     return sums(group, plus[order]), sums(group, minus[order])
+
+
+def _nearly_merged(plus: FloatArray, minus: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Situations put together whose posteriors lie within one of so many even steps.
+
+    The steps are even on the scale on which what is lost within one depends on its width only.
+    """
+    angle = np.arcsin(np.sqrt(plus / (plus + minus)))
+    step = np.minimum((angle * (_EVEN_STEPS / (np.pi / 2))).astype(np.int64), _EVEN_STEPS - 1)
+    _, group = np.unique(step, return_inverse=True)
+    return sums(group, plus), sums(group, minus)
 
 
 def _one_more(best: FloatArray, plus: FloatArray, minus: FloatArray, groups: int) -> FloatArray:

@@ -15,6 +15,7 @@ from thumbwright.distill.forms import Distilled, Wanted
 from thumbwright.distill.forms.axes import Axis, grid_axes
 from thumbwright.distill.forms.boxes import Box, Partition, best_partitions
 from thumbwright.distill.forms.choosing import chosen, valued_row
+from thumbwright.distill.forms.coarse import boxes_of, searchable
 from thumbwright.distill.forms.grouping import best_groupings
 from thumbwright.distill.rules import Rule
 from thumbwright.distill.situations import values_of
@@ -33,13 +34,18 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
 
     Raises ModelError where the grid of inputs is too large for the exact search.
     """
-    axes = grid_axes(pricer, wanted.inputs)
+    situations = pricer.situations
+    axes, coarser = searchable(
+        grid_axes(pricer, wanted.inputs),
+        situations.plus,
+        situations.minus,
+        MOST_BOXES // wanted.rows,
+    )
     refuse_too_large(axes, wanted.rows, NAME)
     if progress:
         progress("table", 0, 1)
     plus, minus = cell_masses(pricer, axes)
     partitions = best_partitions(plus, minus, wanted.rows)
-    situations = pricer.situations
     ceiling = best_groupings(situations.plus, situations.minus, wanted.rows)
     picked, notes = chosen(
         pricer, wanted, partitions, lambda p: as_rule(pricer, axes, p, plus, minus), NAME
@@ -51,13 +57,13 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
         rule,
         situations.information_kept(picked.gain),
         situations.information_kept(float(ceiling[len(picked.boxes) - 1])),
-        notes,
+        (*notes, *coarser),
     )
 
 
 def refuse_too_large(axes: list[Axis], rows: int, form: str) -> None:
     """Raise ModelError where the exact search over this grid would take too long."""
-    boxes = int(np.prod([axis.cells * (axis.cells + 1) // 2 for axis in axes], dtype=float))
+    boxes = boxes_of(axes)
     if boxes * rows > MOST_BOXES:
         raise ModelError(
             f"the {form} would be searched over {boxes:,} boxes of situations, which takes too "

@@ -42,7 +42,7 @@ def chart(findings: Findings, voice: Voice) -> Chart | None:
     def up(value: float) -> float:
         return BOTTOM - (value - low) / (high - low) * (BOTTOM - TOP)
 
-    names = [joint_state(curve.shows, voice) for curve in curves]
+    names = [_name(curve, voice) for curve in curves]
     ends = [_end(curve) for curve in curves]
     places = spread([up(end) for end in ends], TOP + 4.0, BOTTOM, LABEL_GAP)
     drawn = tuple(
@@ -118,23 +118,47 @@ def spread(places: Sequence[float], low: float, high: float, gap: float) -> list
     return moved
 
 
+def _name(curve: WorthCurve, voice: Voice) -> str:
+    """Name what a curve is about: by agent, or by how many where nobody is told apart."""
+    if curve.counts is None:
+        return joint_state(curve.shows, voice)
+    said = zip(("plus", "minus"), curve.counts, strict=True)
+    return ", ".join(f"{n} {voice.shows_short[state]}" for state, n in said if n) or "nobody yet"
+
+
 def joint_state(shows: Sequence[str], voice: Voice) -> str:
     """Name a joint shown state, agents in the order of the case."""
     states = [frozenset({state}) for state in shows]
     return voice.situation(dict(zip(voice.seen, states, strict=True)))
 
 
-def value_at(rule: Rule, shows: Sequence[str], step: int) -> float | None:
+def value_at(
+    rule: Rule, shows: Sequence[str], step: int, counts: tuple[int, int] | None = None
+) -> float | None:
     """Return what a rule of values says for one joint state and step; None where rows differ.
 
-    Rows that also look at thresholds do not speak for a state alone.
+    ``counts``, how many show plus and minus, stands for ``shows`` where nobody is told apart. Rows
+    that look at thresholds, or at when something was shown, do not speak for a state alone.
     """
+    plus, minus = counts or (shows.count("plus"), shows.count("minus"))
+    numbers = {"plus_shown": plus, "minus_shown": minus}
+    numbers["undecided_shown"] = len(rule.seen) - plus - minus
     for row in rule.rows:
-        if row.thresholds or not (row.step_from or 1) <= step <= (row.step_to or step):
+        if row.thresholds or row.first_answer is not None or set(row.ranges) - set(numbers):
             continue
+        ranges = {"step": (row.step_from, row.step_to), **row.ranges}
+        if not all(_within({"step": step, **numbers}[n], ends) for n, ends in ranges.items()):
+            continue
+        if counts is not None:
+            return row.value
         if all(s in row.shows.get(agent, SHOWN) for agent, s in zip(rule.seen, shows, strict=True)):
             return row.value
     return None
+
+
+def _within(number: int, ends: tuple[int | None, int | None]) -> bool:
+    least, most = ends
+    return (least is None or number >= least) and (most is None or number <= most)
 
 
 def _reading(curves: Sequence[Curve]) -> str:
@@ -162,7 +186,7 @@ def _all_values(curve: WorthCurve, rule: Rule | None) -> list[float]:
     found = [*curve.worth, *curve.low, *curve.high]
     if rule is not None:
         known = [step for step, value in _points(curve) if value is not None]
-        found += [value_at(rule, curve.shows, step) for step in known]
+        found += [value_at(rule, curve.shows, step, curve.counts) for step in known]
     return [value for value in found if value is not None]
 
 
@@ -194,7 +218,7 @@ def _steps_path(curve: WorthCurve, rule: Rule | None, across: Place, up: Place) 
     runs: list[list[tuple[float, float | None]]] = []
     before: float | None = None
     for step, value in _points(curve):
-        said = None if value is None else value_at(rule, curve.shows, step)
+        said = None if value is None else value_at(rule, curve.shows, step, curve.counts)
         if said != before or not runs:
             runs.append([])
         runs[-1].append((across(step), up(said) if _is_real(said) else None))

@@ -52,7 +52,7 @@ def costs(findings: Findings, voice: Voice) -> Grid:
             row.append(of_hundred(undecided))
         row.append(str(max(1, round(figures.mean_step))))
         rows.append(tuple(row))
-    head = ["", *(f"wrong of 100, if {quoted(truth)}" for truth in (voice.plus, voice.minus))]
+    head = ["", *(f"if {quoted(truth)}" for truth in (voice.plus, voice.minus))]
     if shows_late:
         head.append("no call, of 100")
     head.append(f"average {voice.check}")

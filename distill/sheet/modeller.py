@@ -3,16 +3,18 @@
 from __future__ import annotations
 
 import re
+from collections import Counter
 from collections.abc import Callable
 from typing import Any
 
+from thumbwright.distill.case import Agent, is_crowd
 from thumbwright.distill.findings import Figures, Findings, FormResult, ReckonedResult
 from thumbwright.distill.rules import FIRST_ANSWERS, NUMBERS, SHOWN, Row
 from thumbwright.distill.sheet.chart import chart
 from thumbwright.distill.sheet.nested import nested
 from thumbwright.distill.sheet.parts import Grid, Modeller, Nested, Note, Sentence
 from thumbwright.distill.sheet.voice import Voice, own_evidence
-from thumbwright.distill.sheet.words import clean, five, listing, signed
+from thumbwright.distill.sheet.words import clean, five, listing, range_words, signed
 
 FORM_TITLES = {
     "lines": "The lines: bars on the own count",
@@ -82,23 +84,15 @@ def _shown(row: Row, findings: Findings, voice: Voice) -> str:
         states = [state for state in SHOWN if state in row.shows.get(agent, SHOWN)]
         text = "any" if len(states) == len(SHOWN) else " or ".join(states)
         parts.append(f"{voice.names[agent]} {text}")
-    if row.ranges or row.first_answer is not None:
-        parts = [part for part in parts if not part.endswith(" any")]
-    parts += [_range(name, row) for name in NUMBERS if name in row.ranges]
+    if not row.shows:
+        parts = []
+    numbers = [name for name in NUMBERS if name in row.ranges]
+    parts += [f"{name.replace('_', ' ')} {range_words(*row.ranges[name])}" for name in numbers]
     if row.first_answer is not None:
         said = [answer for answer in FIRST_ANSWERS if answer in row.first_answer]
         parts.append(f"first answer {' or '.join(said)}")
     habits = voice.habits(row.thresholds)
-    return "; ".join([*parts, habits] if habits else parts)
-
-
-def _range(name: str, row: Row) -> str:
-    """Say the least and greatest of a number that a row accepts."""
-    least, most = row.ranges[name]
-    words = name.replace("_", " ")
-    if most is None:
-        return f"{words} any" if least is None else f"{words} {least} or more"
-    return f"{words} {most}" if least == most else f"{words} {least or 0} to {most}"
+    return "; ".join([*parts, habits] if habits else parts) or "any"
 
 
 def _rule(name: str, result: FormResult, findings: Findings, voice: Voice) -> Grid:
@@ -265,10 +259,30 @@ def _settings(findings: Findings, voice: Voice) -> Grid:
         ("horizon", f"{case.time.horizon} steps"),
         ("exchange", case.time.exchange),
         *((f"thresholds {clean(name)}", _spec(spec)) for name, spec in case.thresholds.items()),
-        *((f"agent {voice.names[key]}", _agent(key, findings, voice)) for key in case.agents),
+        *_agents(findings, voice),
         ("rule for", f"{voice.owner}, looking at {listing(list(case.rule.inputs))}"),
     ]
     return Grid("Settings", ("setting", "value"), tuple(rows))
+
+
+MOST_AGENTS = 30
+"""More agents than this are not listed one by one where everybody sees everybody."""
+
+
+def _agents(findings: Findings, voice: Voice) -> list[tuple[str, str]]:
+    """Return one row per agent; a large crowd in short."""
+    agents = findings.case.agents
+    if len(agents) <= MOST_AGENTS or not is_crowd(agents):
+        return [(f"agent {voice.names[key]}", _agent(key, findings, voice)) for key in agents]
+    habits = Counter(_habit(agent) for agent in agents.values())
+    said = "; ".join(f"{number} with thresholds {habit}" for habit, number in habits.items())
+    return [(f"{len(agents)} agents", f"everybody sees everybody; {said}")]
+
+
+def _habit(agent: Agent) -> str:
+    if isinstance(agent.thresholds, str):
+        return clean(agent.thresholds)
+    return "unknown: " + ", ".join(f"{clean(n)} {s:g}" for n, s in agent.thresholds.items())
 
 
 def _spec(spec: Any) -> str:
@@ -287,10 +301,7 @@ def _value(value: Any) -> str:
 
 def _agent(key: str, findings: Findings, voice: Voice) -> str:
     agent = findings.case.agents[key]
-    if isinstance(agent.thresholds, str):
-        habit = clean(agent.thresholds)
-    else:
-        habit = "unknown: " + ", ".join(f"{clean(n)} {s:g}" for n, s in agent.thresholds.items())
+    habit = _habit(agent)
     sees = ", ".join(voice.names[other] for other in agent.sees) or "nobody"
     if len(agent.sees) > 1 and len(agent.sees) == len(findings.case.agents) - 1:
         sees = "everybody else"

@@ -13,6 +13,7 @@ from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from contextvars import ContextVar
 from dataclasses import dataclass, field
+from functools import lru_cache, partial
 from importlib.resources import files
 from pathlib import Path
 from types import MappingProxyType
@@ -27,7 +28,7 @@ SUFFIXES = (".j2", ".css", ".js")
 """How the names of templates end; other package data cannot be replaced."""
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Templates:
     """Templates by name that stand in for ours, and the folder they come from, for messages."""
 
@@ -100,10 +101,14 @@ def in_place_of_ours(own: Templates) -> Iterator[None]:
         _IN_FORCE.reset(before)
 
 
-def environment(autoescape: bool) -> SandboxedEnvironment:
-    """Return an environment; without ``autoescape`` the caller hands over escaped text."""
+@lru_cache(maxsize=4)
+def environment(autoescape: bool, own: Templates = OURS) -> SandboxedEnvironment:
+    """Return an environment; without ``autoescape`` the caller hands over escaped text.
+
+    The same one is returned again, since it keeps its compiled templates.
+    """
     return SandboxedEnvironment(
-        loader=FunctionLoader(_source),
+        loader=FunctionLoader(partial(_source, own)),
         autoescape=autoescape,
         undefined=StrictUndefined,
         trim_blocks=True,
@@ -120,12 +125,11 @@ def rendered(template: str, values: dict[str, Any], autoescape: bool = True) -> 
     jinja2.TemplateError
         If the template, or a value that it uses, is missing, or the sandbox refuses it.
     """
-    return environment(autoescape).get_template(template).render(values)
+    return environment(autoescape, _IN_FORCE.get()).get_template(template).render(values)
 
 
-def _source(name: str) -> tuple[str, str, None] | None:
+def _source(own: Templates, name: str) -> tuple[str, str, None] | None:
     """Return the text of a template and where it is from; ``None`` where there is none."""
-    own = _IN_FORCE.get()
     if name in own.texts:
         return own.texts[name], str(Path(own.folder) / name), None
     if "/" in name or "\\" in name or not name.endswith(SUFFIXES):

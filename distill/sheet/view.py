@@ -42,7 +42,7 @@ def sheet(findings: Findings) -> Sheet:
         acts=acts(findings, words, kept, front),
         card=front,
         notes=notes(findings, words, kept, front),
-        cost_heading="Wrong calls if only you use it",
+        cost_heading="Wrong calls of 100, if only you use it",
         costs=costs(findings, words),
         cost_note=cost_note(findings),
         example_heading="A made-up example",

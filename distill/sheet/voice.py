@@ -6,6 +6,7 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
+from thumbwright.distill.case import is_crowd
 from thumbwright.distill.findings import Findings
 from thumbwright.distill.rules import SHOWN
 from thumbwright.distill.sheet.words import (
@@ -130,6 +131,14 @@ class Voice:
         return capital("; ".join(f"{listing(names)}: {text}" for text, names in groups.items()))
 
 
+def _owner(findings: Findings, names: dict[str, str]) -> str:
+    """Whose sheet it is: one agent's, or anybody's in a crowd of which all are meant."""
+    agents = findings.case.agents
+    if findings.case.rule.agent == "any" and is_crowd(agents):
+        return f"any of the {len(agents)}"
+    return names[findings.agent]
+
+
 def voice(findings: Findings) -> Voice:
     """Collect the words of a case for the sheet of ``findings.agent``."""
     case = findings.case
@@ -142,7 +151,7 @@ def voice(findings: Findings) -> Voice:
     do_plus, do_minus = clean(words.do_plus), clean(words.do_minus)
     minus_forms, plus_forms = act_forms(do_minus, do_plus)
     return Voice(
-        owner=names[findings.agent],
+        owner=_owner(findings, names),
         seen=findings.seen,
         names=names,
         plus=clean(question.plus),

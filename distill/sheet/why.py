@@ -46,7 +46,7 @@ def quiet_news(findings: Findings) -> frozenset[str]:
     Without a curve for that state the neighbours' nearer thresholds are taken at their word.
     """
     for curve in findings.worth_curves:
-        if set(curve.shows) == {"undecided"}:
+        if curve.plus_and_minus == (0, 0):
             worths = [worth for worth in curve.worth if worth is not None and math.isfinite(worth)]
             faint = max(FAINT, 0.1 * max(map(abs, worths), default=0.0))
             sides = (("plus", max(worths, default=0.0)), ("minus", -min(worths, default=0.0)))

@@ -137,13 +137,17 @@ def test_sheet(
 ) -> None:
     asked = []
 
-    def sheet(case: Case, into: Path, progress: object, limits: object) -> str:
-        asked.append((case.name, into, progress, limits))
+    def sheet(case: Case, into: Path, progress: object, limits: object, *own: object) -> str:
+        asked.append((case.name, into, progress, limits, *own))
         return "done\n"
 
     patch("sheet", sheet)
     assert main(["sheet", "frost-watch", *words]) == 0
-    assert asked == [("frost-watch", folder, None, Limits())]
+    assert asked == [("frost-watch", folder, None, Limits(), None, False)]
+    assert main(["sheet", "frost-watch", "--templates", ".", "--pdf"]) == 0
+    assert asked[1][-2:] == (Path(), True)
+    capsys.readouterr()
+    assert main(["sheet", "frost-watch", *words]) == 0
     assert capsys.readouterr() == ("done\n", "")
 
 
@@ -259,7 +263,7 @@ def write(path, content):
     os.kill(os.getpid(), {int(number)})
 writing._write = write
 files = {{"a": "1", "b": "2"}}
-job.sheet = lambda case, into, progress, limits: str(writing.write_files(into, files))
+job.sheet = lambda case, into, *_: str(writing.write_files(into, files))
 """
     done = program("sheet", "frost-watch", "--into", "deep/here", before=before)
     assert done.returncode == status

@@ -52,7 +52,9 @@ def sum_over_everything(group: Group, stage: Stage, held: int) -> FloatArray:
             axes = (j, *group.sees[j])
             where = tuple(0 if a == held else slice(None) for a in axes)
             operands += [
-                np.exp(display.log_weights())[(slice(None), *where)],
+                display.weights().at(*map(np.arange, display.weights().array.shape[1:]))[
+                    (slice(None), *where)
+                ],
                 [given, *(a for a in axes if a != held)],
             ]
     total: FloatArray = np.einsum(*operands, [given, *group.sees[held]], optimize="greedy")

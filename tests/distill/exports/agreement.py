@@ -32,11 +32,12 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from pathlib import Path
+from typing import Any
 
 from thumbwright.distill.code.inputs import STEP, Input, Part, Parts, parts_of
 from thumbwright.distill.code.told import row_in
 from thumbwright.distill.findings import Findings
-from thumbwright.distill.rules import Row
+from thumbwright.distill.rules import Row, Rule
 from thumbwright.exact.walk import TIE
 
 Given = dict[str, int | str]
@@ -97,11 +98,15 @@ Run = Callable[[Path, Findings, Asked], Answers]
 
 @dataclass(frozen=True)
 class Spoil:
-    """How to change a file so that its rule is another one: what to find, and what to put."""
+    """How to change a file so that its rule is another one: what to find, and what to put.
+
+    ``on`` names the findings of ``hand_built.py`` whose file is spoilt.
+    """
 
     what: str
     pattern: str
     replacement: str
+    on: str = "bars"
 
     def applied(self, text: str) -> str:
         changed, times = re.subn(self.pattern, self.replacement, text, count=1)
@@ -121,7 +126,7 @@ class Engine:
         The export that it reads, which is spoilt in turn.
     run : Run
     spoils : tuple of Spoil
-        For the findings "bars", whose first row is ``step <= 2, upper undecided: -3, 3``.
+        Mostly for "bars", whose first row is step 2 or less, upper undecided: -3, 3.
     ulps : int
         By how many units in the last place a worth may be off: 0 but for R, whose parser of
         decimals is documented to be off by as much.
@@ -211,6 +216,22 @@ def _same(one: Value | Answer, other: Value | Answer, ulps: int) -> bool:
     return one == other
 
 
+def first_row(rule: Rule, given: dict[str, Any]) -> Row | None:
+    """The first row that holds, by nothing but comparisons."""
+    for row in rule.rows:
+        ends = {"step": (row.step_from, row.step_to), **row.ranges}
+        named = {f"{a}_shows": s for a, s in row.shows.items()}
+        named |= {f"{a}_thresholds": s for a, s in row.thresholds.items()}
+        if row.first_answer is not None:
+            named["first_answer"] = row.first_answer
+        if all(
+            (least is None or given[key] >= least) and (most is None or given[key] <= most)
+            for key, (least, most) in ends.items()
+        ) and all(given[key] in names for key, names in named.items() if key in given):
+            return row
+    return None
+
+
 def _held(part: Part, asked: Asked) -> list[Row | None]:
     keys = [one.key for one in part.inputs]
     known: dict[tuple[int | str, ...], Row | None] = {}
@@ -254,8 +275,7 @@ def _any(
 
 def _tallies(part: Part, given: Given, findings: Findings) -> list[float]:
     """Each bar of the row that holds and its neighbours, or tallies about the thresholds."""
-    number = row_in(part.rule, given)
-    row = Row() if number is None else part.rule.rows[number]
+    row = first_row(part.rule, given) or Row()
     if not part.valued:
         bars = [bar for bar in (row.minus_at, row.plus_at) if bar is not None]
         return sorted({0, *(bar + by for bar in bars for by in (-1, 0, 1))})

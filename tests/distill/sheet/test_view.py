@@ -166,8 +166,8 @@ def test_costs_of_a_hundred() -> None:
     made = sheet(samples.frost())
     assert made.costs.head == (
         "",
-        "wrong of 100, if “frost tonight”",
-        "wrong of 100, if “no frost tonight”",
+        "if “frost tonight”",
+        "if “no frost tonight”",
         "average check",
     )
     assert made.costs.rows == (
