@@ -55,7 +55,12 @@ def kinds(pricer: Pricer, counted: bool) -> list[tuple[str, ...]]:
 
 def log_loss(value: FloatArray, plus: FloatArray, minus: FloatArray) -> float:
     """Loss (nats) of giving situations with these masses these worths."""
-    return float((plus * np.logaddexp(0.0, -value) + minus * np.logaddexp(0.0, value)).sum())
+    total = 0.0
+    for mass, side in ((plus, -value), (minus, value)):
+        # What is never met costs nothing, even where its worth is infinite.
+        met = mass > 0
+        total += float(mass[met] @ np.logaddexp(0.0, side[met]))
+    return total
 
 
 def fitted(

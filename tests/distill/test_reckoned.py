@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -15,7 +16,7 @@ from thumbwright.distill.faults import Faults
 from thumbwright.distill.findings import Findings
 from thumbwright.distill.forms import MODULES
 from thumbwright.distill.gather import gather
-from thumbwright.distill.pricing import pricer_of
+from thumbwright.distill.pricing import pricer_for, pricer_of
 from thumbwright.distill.reading import case_from_text
 from thumbwright.distill.rules import Row, Rule
 from thumbwright.distill.starters import starter_text
@@ -142,3 +143,17 @@ def test_a_crowd_prices_functions_too() -> None:
         lambda view: ALPHA * (view.number("plus_shown") - view.number("minus_shown"))
     )
     assert counted.risk != nothing.risk
+
+
+def test_the_three_lines_of_the_readme(capsys: pytest.CaptureFixture[str]) -> None:
+    readme = (Path(__file__).resolve().parents[2] / "README.md").read_text("utf-8")
+    block = readme.split("<!-- price -->")[1].split("<!-- end of price -->")[0]
+    lines = block.strip().removeprefix("```python").removesuffix("```").strip().splitlines()
+    assert len(lines) == 3
+    exec("\n".join(lines), {})  # noqa: S102 - the code of our own README
+    printed = capsys.readouterr().out
+    pricer = pricer_for("frost-watch")
+    worths = np.array([0.0, 1.6, -0.8])
+    same = pricer.price(lambda view: worths[view.state("upper")])
+    assert same.benefit_kept is not None
+    assert f"benefit_kept={same.benefit_kept!r}"[:24] in printed
