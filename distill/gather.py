@@ -13,6 +13,7 @@ import numpy as np
 from thumbwright.distill.assemble import NO_LIMITS, Limits
 from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
+from thumbwright.distill.crowds import HISTORIES
 from thumbwright.distill.example import example
 from thumbwright.distill.findings import (
     Figures,
@@ -48,9 +49,10 @@ def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIM
     plain = pricer.figures(pricer.plain_count_tally())
     alone = pricer.figures(pricer.alone_tally)
     evidence = _evidence(pricer)
-    priced = [f.figures for f in forms.values()] + [f.figures for f in reckoned.values()]
-    priced += [plain, alone]
-    caveats = (*_caveats(pricer, priced, missing), *left_out)
+    figures = [f.figures for f in forms.values()] + [f.figures for f in reckoned.values()]
+    figures += [plain, alone]
+    figures += [f.everybody for f in forms.values() if f.everybody is not None]
+    caveats = (*_caveats(pricer, figures, missing), *left_out)
     return Findings(
         case=case,
         digest=case.digest,
@@ -73,7 +75,7 @@ def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIM
         alone_rows=alone_rows(pricer) if evidence.countable and evidence.alpha[0] > 0 else (),
         worth_curves=worth_curves(pricer, case),
         labels=evidence.labels,
-        is_exact=_is_exact(pricer, priced),
+        is_exact=_is_exact(pricer, figures),
         caveats=caveats,
         near_tie_mass=pricer.inexact().near_tie_mass,
         example=example(pricer, main.rule) if isinstance(pricer, NetworkPricer) else (),
@@ -99,7 +101,7 @@ def _forms(
                 refusals.append(refusal)
                 continue
             if isinstance(made.rule, Rule):
-                forms[name] = _form_result(pricer, made.rule, made)
+                forms[name] = _form_result(pricer, made.rule, made, progress)
             else:
                 figures = pricer.price(made.rule)
                 kept = made.information_kept
@@ -109,7 +111,9 @@ def _forms(
     return forms, reckoned, tuple(f"A form is left out: {refusal}." for refusal in refusals)
 
 
-def _form_result(pricer: Pricer, rule: Rule, made: Distilled) -> tuple[FormResult, Tally]:
+def _form_result(
+    pricer: Pricer, rule: Rule, made: Distilled, progress: Progress | None
+) -> tuple[FormResult, Tally]:
     found, uses = pricer.rule_uses(rule)
     result = FormResult(
         rule,
@@ -118,8 +122,26 @@ def _form_result(pricer: Pricer, rule: Rule, made: Distilled) -> tuple[FormResul
         made.information_kept,
         made.information_ceiling,
         made.notes,
+        pricer.agreement(rule),
+        _everybody(pricer, rule, progress),
     )
     return result, found
+
+
+def _everybody(pricer: Pricer, rule: Rule, progress: Progress | None) -> Figures | None:
+    """How the agent fares where all who can use its rule do; None where that is nobody else."""
+    users = pricer.users(rule)
+    if len(users) < 2:
+        return None
+    if progress:
+        progress("everybody", 0, 1)
+    try:
+        found = pricer.figures(pricer.together_tally(rule, users))
+    except ModelError:
+        found = None
+    if progress:
+        progress("everybody", 1, 1)
+    return found
 
 
 def _evidence(pricer: Pricer) -> Evidence:
@@ -148,7 +170,9 @@ def _leans(group: Group, seen: tuple[str, ...]) -> dict[str, str]:
 
 
 def _is_exact(pricer: Pricer, figures: list[Figures]) -> bool:
-    return pricer.inexact().nothing and all(f.off_model == 0.0 for f in figures)
+    sampled = any(f.errors is not None for f in figures)
+    odd = any(f.off_model > 0.0 for f in figures)
+    return pricer.inexact().nothing and not sampled and not odd
 
 
 def _caveats(pricer: Pricer, figures: list[Figures], missing: str | None) -> tuple[str, ...]:
@@ -175,6 +199,12 @@ def _caveats(pricer: Pricer, figures: list[Figures], missing: str | None) -> tup
         said.append(
             f"What the others show was sampled: {histories:,} public histories with seed {seed}, "
             "the beliefs along each of them exact. Figures carry standard errors and are not exact."
+        )
+    elif any(f.errors is not None for f in figures):
+        said.append(
+            f"What happens where everybody uses the rule was sampled, {HISTORIES:,} public "
+            "histories of too many to enumerate; those figures carry standard errors and are not "
+            "exact."
         )
     odd = max((f.off_model for f in figures), default=0.0)
     if odd > 0:
