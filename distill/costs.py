@@ -12,6 +12,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 from thumbwright.distill.findings import Agreed, CostBasis, Figures, RowUse
+from thumbwright.distill.reckoned import Way
 from thumbwright.distill.rules import Rule
 from thumbwright.distill.situations import Weighed, values_of
 from thumbwright.distill.tallies import (
@@ -112,6 +113,15 @@ class Pricer(ABC):
     @abstractmethod
     def rule_uses(self, rule: Rule) -> tuple[Tally, tuple[RowUse, ...]]:
         """How a rule turns out and how often each of its rows is in force and decides."""
+
+    @abstractmethod
+    def way_tally(self, way: Way, whole: bool = True) -> Tally:
+        """How any function of a view turns out; ``whole`` as for :meth:`rule_tally`."""
+
+    def price(self, way: Rule | Way) -> Figures:
+        """Figures of a rule, or of any function of a view (see ``reckoned``)."""
+        found = self.rule_tally(way) if isinstance(way, Rule) else self.way_tally(way)
+        return self.figures(found)
 
     @abstractmethod
     def plain_count_tally(self) -> Tally:

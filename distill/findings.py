@@ -5,10 +5,11 @@ Built once by ``distill.job``; frozen; no export computes a figure of its own.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Any
 
 from thumbwright.distill.case import Case
+from thumbwright.distill.reckoned import Reckoned
 from thumbwright.distill.rules import Row, Rule
 
 
@@ -84,6 +85,16 @@ class FormResult:
     notes: tuple[str, ...]
     agreed: Agreed | None = None
     everybody: Figures | None = None
+
+
+@dataclass(frozen=True)
+class ReckonedResult:
+    """A rule that is reckoned and not looked up in rows, with its price."""
+
+    rule: Reckoned
+    figures: Figures
+    information_kept: float | None
+    notes: tuple[str, ...]
 
 
 @dataclass(frozen=True)
@@ -188,6 +199,7 @@ class Findings:
     caveats: tuple[str, ...]
     near_tie_mass: float
     example: tuple[dict[str, Any], ...]
+    reckoned: dict[str, ReckonedResult] = field(default_factory=dict)
 
     def _repr_html_(self) -> str:
         """Tables and the chart, for notebooks."""

@@ -10,7 +10,8 @@ import numpy as np
 from thumbwright.distill.assemble import Setting
 from thumbwright.distill.costs import Inexact, Pricer
 from thumbwright.distill.findings import Agreed, RowUse
-from thumbwright.distill.playing import alone_policy, plain_count_policy, rule_policy
+from thumbwright.distill.playing import alone_policy, plain_count_policy, rule_policy, way_policy
+from thumbwright.distill.reckoned import Way
 from thumbwright.distill.rules import Rule
 from thumbwright.distill.situations import Situations, Weighed, situations_of
 from thumbwright.distill.tallies import Tally, average, prior_pair, tally
@@ -97,6 +98,10 @@ class NetworkPricer(Pricer):
         found, usage = self.play(self.rule_policies(rule), len(rule.rows))
         assert usage is not None
         return found, tuple(RowUse(float(steps), float(calls)) for steps, calls in usage)
+
+    def way_tally(self, way: Way, whole: bool = True) -> Tally:
+        """How any function of a view turns out; ``whole`` as for :meth:`play`."""
+        return self.play(lambda s: way_policy(way, self.seen, s.names), whole=whole)[0]
 
     def plain_count_tally(self) -> Tally:
         """How counting commitments at face value, silence as nothing, turns out."""

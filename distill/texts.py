@@ -180,6 +180,10 @@ def sheet_text(findings: Findings, written: Sequence[Path]) -> str:
             (f"{name}, {len(form.rule.rows)} rows", form.figures)
             for name, form in findings.forms.items()
         ),
+        *(
+            (f"{name}, {len(one.rule.parameters)} numbers", one.figures)
+            for name, one in findings.reckoned.items()
+        ),
         ("full calculation", findings.exact),
         ("undecided neighbours ignored", findings.plain_count),
         ("everybody ignored", findings.alone),
