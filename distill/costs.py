@@ -11,7 +11,7 @@ from abc import ABC, abstractmethod
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
-from thumbwright.distill.findings import CostBasis, Figures, RowUse
+from thumbwright.distill.findings import Agreed, CostBasis, Figures, RowUse
 from thumbwright.distill.rules import Rule
 from thumbwright.distill.situations import Weighed, values_of
 from thumbwright.distill.tallies import (
@@ -26,32 +26,11 @@ from thumbwright.distill.tallies import (
 )
 from thumbwright.distill.users import users_of
 from thumbwright.exact.arrays import FloatArray
-from thumbwright.exact.crowd_figures import Weights
 from thumbwright.exact.group import Group
 from thumbwright.exact.stopping import Cone, Losses
 
 WORTH_WATCHING = 0.01
 """Below this share of the risk alone, what exact watching saves is called nothing."""
-
-
-@dataclass(frozen=True)
-class Agreed:
-    """How a rule and exact play compare on the same observations, averaged over the prior.
-
-    Attributes
-    ----------
-    same, opposite : float
-        Probability that both end alike, and that one says plus and the other minus.
-    steps_apart : float
-        Mean absolute difference of the steps used.
-    errors : mapping of str to float, or None
-        Standard errors, where histories were sampled.
-    """
-
-    same: float
-    opposite: float
-    steps_apart: float
-    errors: dict[str, float] | None = None
 
 
 @dataclass(frozen=True)
@@ -183,41 +162,40 @@ class Pricer(ABC):
         """Mean number of steps used."""
         return mean_step_of(self.prior_plus).of(found)
 
-    @property
-    def weights(self) -> Weights | None:
-        """Weights of sampled histories; None where nothing is sampled."""
-        return None
-
     def _errors(self, found: Tally) -> dict[str, float] | None:
         """Standard errors of the figures that are printed; None where nothing is sampled."""
-        weights = self.weights
-        if weights is None or found.sampled is None:
+        if found.sampled is None:
             return None
         accuracy, step = accuracy_of(self.prior_plus), mean_step_of(self.prior_plus)
-        kept = {
-            "wrong_given_plus": error_of(wrong_of(0), found, weights),
-            "wrong_given_minus": error_of(wrong_of(1), found, weights),
-            "accuracy": error_of(accuracy, found, weights),
-            "mean_step": error_of(step, found, weights),
-            "accuracy_lost": error_of_difference(accuracy, found, self.exact_tally, weights),
-            "delay_added": error_of_difference(step, found, self.exact_tally, weights),
+        errors = {
+            "wrong_given_plus": error_of(wrong_of(0), found),
+            "wrong_given_minus": error_of(wrong_of(1), found),
+            "accuracy": error_of(accuracy, found),
+            "mean_step": error_of(step, found),
+            "accuracy_lost": error_of_difference(accuracy, found, self.exact_tally),
+            "delay_added": error_of_difference(step, found, self.exact_tally),
         }
         if self.losses is not None:
             risk = risk_of(self.losses, self.prior_plus)
-            kept["risk"] = error_of(risk, found, weights)
-            kept["benefit_kept"] = self._benefit_error(found, risk, weights)
-        return {name: error for name, error in kept.items() if error is not None}
+            errors["risk"] = error_of(risk, found)
+            kept = self._benefit_error(found, risk)
+            if kept is not None:
+                errors["benefit_kept"] = kept
+        return errors
 
-    def _benefit_error(self, found: Tally, risk: Figure, weights: Weights) -> float | None:
-        """Error of a ratio of two differences over the same histories, linearised."""
+    def _benefit_error(self, found: Tally, risk: Figure) -> float | None:
+        """Error of a ratio of two differences, linearised; paired where histories are the same."""
         assert self.losses is not None
         kept = self.benefit_kept(found, self.losses)
-        played = [one.sampled for one in (self.alone_tally, found, self.exact_tally)]
-        if kept is None or None in played:
+        if kept is None or found.sampled is None:
             return None
-        alone, rule, exact = (risk.by_history(one) for one in played if one is not None)
         saved = risk.of(self.alone_tally) - risk.of(self.exact_tally)
-        return weights.total_error((alone - rule - kept * (alone - exact)) / saved)
+        played = [one.sampled for one in (self.alone_tally, found, self.exact_tally)]
+        if all(one is not None and one.weights is found.sampled.weights for one in played):
+            alone, rule, exact = (risk.by_history(one) for one in played if one is not None)
+            residue = (alone - rule - kept * (alone - exact)) / saved
+            return found.sampled.weights.total_error(residue)
+        return error_of(risk, found) / abs(saved)
 
     def figures(self, found: Tally) -> Figures:
         """The figures that are printed, held against exact play."""

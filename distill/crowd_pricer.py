@@ -8,9 +8,10 @@ from dataclasses import dataclass
 import numpy as np
 
 from thumbwright.distill.case import CROWD
-from thumbwright.distill.costs import Agreed, Inexact, Pricer
+from thumbwright.distill.costs import Inexact, Pricer
 from thumbwright.distill.crowd_situations import Counted, CrowdSituations
-from thumbwright.distill.findings import RowUse
+from thumbwright.distill.crowds import ENUMERATED, HISTORIES
+from thumbwright.distill.findings import Agreed, RowUse
 from thumbwright.distill.playing import acts
 from thumbwright.distill.rules import Rule
 from thumbwright.distill.tallies import PARTS, Sampled, Tally, prior_pair
@@ -20,7 +21,7 @@ from thumbwright.exact.crowd import (
     CrowdPolicy,
     InPublic,
     Shown,
-    Weights,
+    TooMany,
     adopt_crowd,
     enumerate_shown,
     exact_member,
@@ -84,11 +85,6 @@ class CrowdPricer(Pricer):
         """The crowd as a group."""
         return self.whole_group
 
-    @property
-    def weights(self) -> Weights | None:
-        """Weights of sampled histories; None where they are enumerated."""
-        return _weights(self.shown)
-
     def rule_tally(self, rule: Rule, whole: bool = True) -> Tally:
         """How a rule turns out; it is always counted how often others are shown odd answers."""
         return _played(self.shown, self._policy(rule))[0]
@@ -125,6 +121,9 @@ class CrowdPricer(Pricer):
     def among(self, rule: Rule) -> Shown:
         """What a member is shown where all others go by a rule, and all know.
 
+        There may be too many histories to enumerate even if exact play has few enough; then they
+        are sampled.
+
         Raises ModelError where not all can go by it.
         """
         shown = self.shown
@@ -137,20 +136,24 @@ class CrowdPricer(Pricer):
         policies = [self._policy(rule)] * len(shown.crowd.kinds)
         given = (shown.crowd, shown.kind, shown.prior, shown.horizon, shown.exchange)
         if shown.weight is None:
-            return enumerate_shown(*given, drop=self.drop, policies=policies)
+            try:
+                return enumerate_shown(*given, drop=self.drop, most=ENUMERATED, policies=policies)
+            except TooMany:
+                return sample_shown(*given, HISTORIES, self.seed, policies=policies)
         histories = shown.weight.shape[1]
         return sample_shown(*given, histories, self.seed, policies=policies)
 
     def agreement(self, rule: Rule) -> Agreed:
         """How a rule compares with exact play on the same observations."""
         found = crowd_agreement(self.shown, self._policy(rule))
-        prior, weights = prior_pair(self.prior_plus), self.weights
+        prior, weights = prior_pair(self.prior_plus), self.shown.weights
         parts = {name: getattr(found, name) for name in ("same", "opposite", "steps_apart")}
         if weights is None:
-            return Agreed(**{name: float(prior @ part[:, 0]) for name, part in parts.items()})
+            same, opposite, apart = (float(prior @ part[:, 0]) for part in parts.values())
+            return Agreed(same, opposite, apart)
         errors = {n: weights.total_error(prior[:, None] * part) for n, part in parts.items()}
-        means = {n: float(prior @ weights.mean(part)[0]) for n, part in parts.items()}
-        return Agreed(**means, errors=errors)
+        same, opposite, apart = (float(prior @ weights.mean(p)[0]) for p in parts.values())
+        return Agreed(same, opposite, apart, errors)
 
     def inexact(self) -> Inexact:
         """What in the exact beliefs is not exact."""
@@ -183,10 +186,6 @@ def _alone(_seen: InPublic) -> Act:
     return Act(np.zeros(()))
 
 
-def _weights(shown: Shown) -> Weights | None:
-    return None if shown.weight is None else Weights(shown.weight, shown.half)
-
-
 def _played(shown: Shown, policy: CrowdPolicy, rows: int = 0) -> tuple[Tally, tuple[RowUse, ...]]:
     """A member's tally with a policy, and the use of each of its rows."""
     found = adopt_crowd(shown, policy, rows)
@@ -200,7 +199,7 @@ def _played(shown: Shown, policy: CrowdPolicy, rows: int = 0) -> tuple[Tally, tu
         "lean_minus": found.leaning[1] + half,
     }
     assert tuple(parts) == PARTS
-    weights = _weights(shown)
+    weights = shown.weights
     prior = np.array([shown.prior_plus, 1.0 - shown.prior_plus])
 
     def mean(x: FloatArray) -> FloatArray:
@@ -209,7 +208,7 @@ def _played(shown: Shown, policy: CrowdPolicy, rows: int = 0) -> tuple[Tally, tu
     tally = Tally(
         **{name: mean(x) for name, x in parts.items()},
         off_model=float(prior @ mean(found.off_model)),
-        sampled=None if weights is None else Sampled(**parts),
+        sampled=None if weights is None else Sampled(**parts, weights=weights),
     )
     uses = () if found.usage is None else found.usage
     return tally, tuple(

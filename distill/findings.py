@@ -47,11 +47,33 @@ class RowUse:
 
 
 @dataclass(frozen=True)
+class Agreed:
+    """How a rule and exact play compare on the same observations, averaged over the prior.
+
+    Attributes
+    ----------
+    same, opposite : float
+        Probability that both end alike, and that one says plus and the other minus.
+    steps_apart : float
+        Mean absolute difference of the steps used.
+    errors : mapping of str to float, or None
+        Standard errors, where histories were sampled.
+    """
+
+    same: float
+    opposite: float
+    steps_apart: float
+    errors: dict[str, float] | None = None
+
+
+@dataclass(frozen=True)
 class FormResult:
     """A distilled rule with its price.
 
     ``notes`` are plain sentences on how it was chosen (rows merged, ceiling met or not).
-    ``information_ceiling`` is the most that any grouping into as many rows could keep.
+    ``information_ceiling`` is the most that any grouping into as many rows could keep. ``agreed``
+    compares it with exact play on the same observations. ``everybody`` is how its agent fares where
+    all who can use the rule do; None where there is nobody else, or it could not be worked out.
     """
 
     rule: Rule
@@ -60,6 +82,8 @@ class FormResult:
     information_kept: float | None
     information_ceiling: float | None
     notes: tuple[str, ...]
+    agreed: Agreed | None = None
+    everybody: Figures | None = None
 
 
 @dataclass(frozen=True)

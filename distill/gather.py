@@ -13,13 +13,14 @@ import numpy as np
 from thumbwright.distill.assemble import NO_LIMITS, Limits
 from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
+from thumbwright.distill.crowds import HISTORIES
 from thumbwright.distill.example import example
 from thumbwright.distill.findings import Figures, Findings, FormResult, WorthCurve
 from thumbwright.distill.forms import MODULES, Wanted, form
 from thumbwright.distill.forms.runs import alone_rows
 from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.pricing import pricer_of
-from thumbwright.distill.rules import SHOWN
+from thumbwright.distill.rules import SHOWN, Rule
 from thumbwright.distill.situations import Situations, Weighed, values_of
 from thumbwright.distill.tallies import Tally
 from thumbwright.exact.engine import Progress
@@ -42,7 +43,9 @@ def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIM
     plain = pricer.figures(pricer.plain_count_tally())
     alone = pricer.figures(pricer.alone_tally)
     evidence = _evidence(pricer)
-    caveats = _caveats(pricer, [*(f.figures for f in forms.values()), plain, alone], missing)
+    figures = [*(f.figures for f in forms.values()), plain, alone]
+    figures += [f.everybody for f in forms.values() if f.everybody is not None]
+    caveats = _caveats(pricer, figures, missing)
     caveats = (*caveats, *left_out)
     return Findings(
         case=case,
@@ -66,7 +69,7 @@ def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIM
         alone_rows=alone_rows(pricer) if evidence.countable and evidence.alpha[0] > 0 else (),
         worth_curves=worth_curves(pricer, case),
         labels=evidence.labels,
-        is_exact=_is_exact(pricer, [*(f.figures for f in forms.values()), plain, alone]),
+        is_exact=_is_exact(pricer, figures),
         caveats=caveats,
         near_tie_mass=pricer.inexact().near_tie_mass,
         example=example(pricer, main.rule) if isinstance(pricer, NetworkPricer) else (),
@@ -105,8 +108,26 @@ def _form_result(
         made.information_kept,
         made.information_ceiling,
         made.notes,
+        pricer.agreement(made.rule),
+        _everybody(pricer, made.rule, progress),
     )
     return result, found
+
+
+def _everybody(pricer: Pricer, rule: Rule, progress: Progress | None) -> Figures | None:
+    """How the agent fares where all who can use its rule do; None where that is nobody else."""
+    users = pricer.users(rule)
+    if len(users) < 2:
+        return None
+    if progress:
+        progress("everybody", 0, 1)
+    try:
+        found = pricer.figures(pricer.together_tally(rule, users))
+    except ModelError:
+        found = None
+    if progress:
+        progress("everybody", 1, 1)
+    return found
 
 
 def _evidence(pricer: Pricer) -> Evidence:
@@ -135,7 +156,9 @@ def _leans(group: Group, seen: tuple[str, ...]) -> dict[str, str]:
 
 
 def _is_exact(pricer: Pricer, figures: list[Figures]) -> bool:
-    return pricer.inexact().nothing and all(f.off_model == 0.0 for f in figures)
+    sampled = any(f.errors is not None for f in figures)
+    odd = any(f.off_model > 0.0 for f in figures)
+    return pricer.inexact().nothing and not sampled and not odd
 
 
 def _caveats(pricer: Pricer, figures: list[Figures], missing: str | None) -> tuple[str, ...]:
@@ -162,6 +185,12 @@ def _caveats(pricer: Pricer, figures: list[Figures], missing: str | None) -> tup
         said.append(
             f"What the others show was sampled: {histories:,} public histories with seed {seed}, "
             "the beliefs along each of them exact. Figures carry standard errors and are not exact."
+        )
+    elif any(f.errors is not None for f in figures):
+        said.append(
+            f"What happens where everybody uses the rule was sampled, {HISTORIES:,} public "
+            "histories of too many to enumerate; those figures carry standard errors and are not "
+            "exact."
         )
     odd = max((f.off_model for f in figures), default=0.0)
     if odd > 0:

@@ -8,8 +8,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from thumbwright.distill.assemble import Setting
-from thumbwright.distill.costs import Agreed, Inexact, Pricer
-from thumbwright.distill.findings import RowUse
+from thumbwright.distill.costs import Inexact, Pricer
+from thumbwright.distill.findings import Agreed, RowUse
 from thumbwright.distill.playing import alone_policy, plain_count_policy, rule_policy
 from thumbwright.distill.rules import Rule
 from thumbwright.distill.situations import Situations, situations_of

@@ -91,7 +91,7 @@ def crowd_agreement(shown: Shown, policy: CrowdPolicy) -> Agreement:
             walk.mass, walk.log_scale = walk.mass[:, showing.parent], walk.log_scale[showing.parent]
             pairs.begin(showing.step)
             act, size = policy(showing), len(showing.parent)
-            rule = Reading(*reached(walk, shown.prior, act, size), showing.worth, compared=False)
+            rule = Reading(*reached(walk, shown.prior, act, size), showing.worth)
             scene = Scene(showing.step, showing.round, (), showing.log_shown, walk, shown.prior)
             ways = rule, by_value(scene, showing.worth)
             pairs.decide(*ways, showing.log_shown, _ends(part, number))

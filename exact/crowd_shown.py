@@ -12,6 +12,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from functools import cached_property
 
 import numpy as np
 
@@ -26,6 +27,7 @@ from thumbwright.exact.crowd_course import (
     half_of,
     play,
 )
+from thumbwright.exact.crowd_figures import Weights
 from thumbwright.exact.crowd_kinds import Crowd, Kind, check_play
 from thumbwright.exact.crowd_play import Choice, Histories
 from thumbwright.exact.crowd_policy import CrowdPolicy, InPublic
@@ -99,6 +101,11 @@ class Shown:
     def member(self) -> Kind:
         """The kind that the member is of."""
         return self.crowd.kinds[self.kind]
+
+    @cached_property
+    def weights(self) -> Weights | None:
+        """Weighted sums over sampled histories; None if enumerated."""
+        return None if self.weight is None else Weights(self.weight, self.half)
 
     @property
     def sampled(self) -> bool:

@@ -21,7 +21,7 @@ from thumbwright.distill.exports.rule_csv import (
     shows_used,
     threshold_names,
 )
-from thumbwright.distill.findings import CostBasis, Findings, FormResult
+from thumbwright.distill.findings import Agreed, CostBasis, Findings, FormResult
 from thumbwright.distill.rules import FIRST_ANSWERS, SHOWN, Row, Rule
 
 NAME = "rule as JSON"
@@ -106,8 +106,24 @@ def _form(result: FormResult, findings: Findings) -> dict[str, Any]:
         "information_kept": json_figure(result.information_kept),
         "information_ceiling": json_figure(result.information_ceiling),
         "costs": figures_record(result.figures),
+        "costs_if_everybody_uses_it": (
+            None if result.everybody is None else figures_record(result.everybody)
+        ),
+        "agreement": _agreement(result.agreed),
         "notes": list(result.notes),
     }
+
+
+def _agreement(agreed: Agreed | None) -> dict[str, Any] | None:
+    """Return how a rule compares with exact play on the same observations."""
+    if agreed is None:
+        return None
+    record: dict[str, Any] = {
+        name: json_figure(getattr(agreed, name)) for name in ("same", "opposite", "steps_apart")
+    }
+    if agreed.errors is not None:
+        record["errors"] = {name: json_figure(error) for name, error in agreed.errors.items()}
+    return record
 
 
 def _row(row: Row, rule: Rule, findings: Findings) -> dict[str, Any]:

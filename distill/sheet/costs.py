@@ -22,8 +22,10 @@ def ways(findings: Findings, voice: Voice) -> tuple[tuple[str, Figures], ...]:
     if result is None:
         result = next(iter(findings.forms.values()))
     name = "this card" if "lines" in findings.forms else "this sheet"
+    together = [] if result.everybody is None else [("if everybody uses it", result.everybody)]
     return (
         (name, result.figures),
+        *together,
         ("full calculation", findings.exact),
         (f"{quoted(voice.shows['undecided'])} ignored", findings.plain_count),
         ("everybody ignored", findings.alone),

@@ -7,7 +7,7 @@ from collections.abc import Callable
 from typing import Any
 
 from thumbwright.distill.case import Agent, is_crowd
-from thumbwright.distill.findings import Figures, Findings, FormResult
+from thumbwright.distill.findings import Agreed, Figures, Findings, FormResult
 from thumbwright.distill.rules import FIRST_ANSWERS, NUMBERS, SHOWN, Row
 from thumbwright.distill.sheet.chart import chart
 from thumbwright.distill.sheet.nested import nested
@@ -135,9 +135,11 @@ def _rule_notes(result: FormResult) -> list[str]:
 
 def _figures(findings: Findings) -> Grid:
     """Return every figure of every way of playing, with five digits."""
+    forms = _forms(findings)
     ways = [
         ("exact", findings.exact),
-        *((name, result.figures) for name, result in _forms(findings)),
+        *((name, result.figures) for name, result in forms),
+        *((f"{n}, all use it", r.everybody) for n, r in forms if r.everybody is not None),
         ("plain count", findings.plain_count),
         ("alone", findings.alone),
     ]
@@ -160,11 +162,24 @@ def _figures(findings: Findings) -> Grid:
         (label, *(_measure(measure(way), label, findings) for _, way in ways))
         for label, measure in measures
     )
+    agreed = {name: result.agreed for name, result in forms if result.agreed is not None}
+    if agreed:
+        rows += tuple(
+            (label, *(five(measure(agreed[n])) if n in agreed else "" for n, _ in ways))
+            for label, measure in _AGREEMENT
+        )
     return Grid(
-        "Figures with five digits, one adopter",
+        "Figures with five digits; one adopter where nothing else is said",
         ("measure (probability where no unit stands)", *(name for name, _ in ways)),
         rows,
     )
+
+
+_AGREEMENT: tuple[tuple[str, Callable[[Agreed], float]], ...] = (
+    ("ends as exact play does on the same observations", lambda one: one.same),
+    ("ends opposite to it", lambda one: one.opposite),
+    ("steps apart from it, on the same observations", lambda one: one.steps_apart),
+)
 
 
 def _measure(value: float | None, label: str, findings: Findings) -> str:
@@ -178,6 +193,8 @@ def _figure_notes(findings: Findings) -> tuple[str, ...]:
         "One adopter: only this agent uses the rule; the others play exact and take everyone for"
         " exact. Exact play is a benchmark and no ceiling: thresholds are not chosen anew for"
         " company, so benefit kept may exceed 1.",
+        "All use it: everybody who can, and the others play exact. What the agent’s exact play is"
+        " held against is the group in which all play exact.",
         "Plain count: a commitment seen counts as that agent’s threshold less the prior, an"
         " undecided agent as nothing.",
     ]
