@@ -6,6 +6,7 @@ alone; then what the sheet needs to explain itself: worth curves, an example, ca
 
 from __future__ import annotations
 
+from dataclasses import replace
 from importlib.metadata import version
 
 import numpy as np
@@ -16,12 +17,14 @@ from thumbwright.distill.costs import Pricer
 from thumbwright.distill.crowds import HISTORIES
 from thumbwright.distill.example import example
 from thumbwright.distill.findings import Figures, Findings, FormResult, WorthCurve
-from thumbwright.distill.forms import MODULES, Wanted, form
+from thumbwright.distill.forms import MODULES, Wanted
+from thumbwright.distill.forms.making import make, wanted_of
 from thumbwright.distill.forms.runs import alone_rows
 from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.pricing import pricer_of
 from thumbwright.distill.rules import SHOWN, Rule
 from thumbwright.distill.situations import Situations, Weighed, values_of
+from thumbwright.distill.sizes import come_free, priced_sizes
 from thumbwright.distill.tallies import Tally
 from thumbwright.exact.engine import Progress
 from thumbwright.exact.errors import ModelError
@@ -35,7 +38,7 @@ MOST_CURVES = 9
 def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIMITS) -> Findings:
     """Everything that is printed about the rule's agent of a case."""
     pricer, missing = pricer_of(case, progress, limits)
-    wanted = Wanted(case.rule.rows, tuple(case.rule.inputs), case.rule.max_accuracy_lost)
+    wanted = wanted_of(case, pricer)
     made, left_out = _forms(pricer, case, wanted, progress)
     forms = {name: one for name, (one, _) in made.items()}
     main, main_tally = next(iter(made.values()))
@@ -99,7 +102,8 @@ def _forms(
 def _form_result(
     pricer: Pricer, name: str, wanted: Wanted, progress: Progress | None
 ) -> tuple[FormResult, Tally]:
-    made = form(name).distil(pricer, wanted, progress)
+    wanted = replace(wanted, every_size=come_free(name, pricer, wanted))
+    made = make(name, pricer, wanted, progress)
     found, uses = pricer.rule_uses(made.rule)
     result = FormResult(
         made.rule,
@@ -110,6 +114,7 @@ def _form_result(
         made.notes,
         pricer.agreement(made.rule),
         _everybody(pricer, made.rule, progress),
+        priced_sizes(pricer, made.sizes),
     )
     return result, found
 

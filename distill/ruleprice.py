@@ -63,7 +63,7 @@ def priced(case: Case, pricer: Pricer, rule: str) -> dict[str, Any]:
             if not (rows_here == number).any():
                 remarks.append(f"row {number + 1} never applies: no such situation can arise")
     figures = pricer.figures(tally)
-    if figures.risk is not None and figures.benefit_kept is not None and figures.benefit_kept < 0:
+    if figures.worse_than(pricer.figures(pricer.alone_tally)):
         remarks.append("this rule is worse than ignoring the neighbours")
     return {
         "figures": asdict(figures),

@@ -29,9 +29,7 @@ def wanted_of(case: Case, pricer: Pricer) -> Wanted:
     )
 
 
-def make(
-    name: str, pricer: Pricer, wanted: Wanted, progress: Progress | None = None
-) -> Distilled:
+def make(name: str, pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> Distilled:
     """The rule of one form, polished where that is wanted.
 
     Raises ModelError where the form cannot be had of this case.

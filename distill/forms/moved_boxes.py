@@ -123,7 +123,9 @@ def moved_cuts(boxes: tuple[Box, ...], reach: Sequence[int]) -> Iterator[tuple[B
         most = max(box[axis][1] for box in boxes)
         for at in sorted({box[axis][1] for box in boxes} - {most}):
             for below, above in _faces(boxes, axis, at):
-                room = [min(boxes[k][axis][1] - boxes[k][axis][0] for k in s) for s in (below, above)]
+                room = [
+                    min(boxes[k][axis][1] - boxes[k][axis][0] for k in s) for s in (below, above)
+                ]
                 for by in reach:
                     if by < room[0]:
                         yield _moved(boxes, axis, (below, above), at - by)

@@ -7,7 +7,14 @@ from dataclasses import replace
 
 from thumbwright.distill.forms.batch import Batch
 from thumbwright.distill.forms.boxes import gain
-from thumbwright.distill.forms.runs import Layout, Line, Sides, as_rule, count_range, threshold_order
+from thumbwright.distill.forms.runs import (
+    Layout,
+    Line,
+    Sides,
+    as_rule,
+    count_range,
+    threshold_order,
+)
 from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.rules import SHOWN, Row, Rule
 from thumbwright.distill.tallies import Tally

@@ -70,7 +70,9 @@ def polished(
         return replace(made, notes=(*made.notes, "Not polished: it has no rows with values."))
     if rule.has_bars:
         assert isinstance(pricer, NetworkPricer)
-        return _searched(_Search(pricer, wanted, LineMoves(pricer, wanted.inputs, rule)), made, progress)
+        return _searched(
+            _Search(pricer, wanted, LineMoves(pricer, wanted.inputs, rule)), made, progress
+        )
     return _searched(_Search(pricer, wanted, BoxMoves(pricer, wanted.inputs, rule)), made, progress)
 
 
@@ -141,9 +143,7 @@ class _Search(Generic[Shape]):
         return found if found.risk <= best.risk + SAME else best
 
 
-def _searched(
-    search: _Search[Shape], made: Distilled, progress: Progress | None
-) -> Distilled:
+def _searched(search: _Search[Shape], made: Distilled, progress: Progress | None) -> Distilled:
     pricer, first = search.pricer, search.first
     found = search.descend(made.rule.form, progress)
     how = f"{search.priced:,} rules priced, one bar, value or cut moved at a time"
