@@ -216,9 +216,23 @@ def outcomes(case: str, limits: Limits, as_json: bool) -> None:
 @verbs.command()
 @CASE
 @click.argument("rule", metavar="RULE")
+@click.option(
+    "--used-by",
+    default="one",
+    metavar="WHO",
+    help="Who goes by the rule: one (the agent it is for), everybody who can, or ids joined by "
+    "commas.",
+)
+@click.option(
+    "--others-use",
+    metavar="RULE2",
+    help="A rule that all others go by who can; left out: they play exactly.",
+)
 @limited
 @JSON
-def price(case: str, rule: str, limits: Limits, as_json: bool) -> None:
+def price(
+    case: str, rule: str, used_by: str, others_use: str | None, limits: Limits, as_json: bool
+) -> None:
     """What a given rule costs, and how often each of its rows is used.
 
     RULE is a CSV file as written by "sheet" (rule.csv), or one of: exact, plain-count, alone.
@@ -226,10 +240,11 @@ def price(case: str, rule: str, limits: Limits, as_json: bool) -> None:
     from thumbwright.distill import job
     from thumbwright.distill.progress import progress_on_terminal
     from thumbwright.distill.reading import read_case
+    from thumbwright.distill.ruleprice import Use
 
     read = read_case(case)
     with progress_on_terminal() as progress:
-        found = job.price(read, rule, progress, limits)
+        found = job.price(read, rule, progress, limits, Use(used_by, others_use))
     _show(_as_json(found) if as_json else job.price_text(found))
 
 

@@ -21,7 +21,7 @@ from thumbwright.distill.ends import ends_of_crowd, ends_of_network
 from thumbwright.distill.exports import render_all
 from thumbwright.distill.gather import gather
 from thumbwright.distill.pricing import pricer_of
-from thumbwright.distill.ruleprice import priced
+from thumbwright.distill.ruleprice import ALONE_IN_USE, Use, priced
 from thumbwright.distill.writing import write_files
 from thumbwright.exact.engine import Progress, solve
 from thumbwright.exact.forecast import forecast, refuse_too_large
@@ -121,11 +121,15 @@ def outcomes_text(found: dict[str, Any]) -> str:
 
 
 def price(
-    case: Case, rule: str, progress: Progress | None = None, limits: Limits = NO_LIMITS
+    case: Case,
+    rule: str,
+    progress: Progress | None = None,
+    limits: Limits = NO_LIMITS,
+    use: Use = ALONE_IN_USE,
 ) -> dict[str, Any]:
-    """The cost of a rule: a CSV file, or exact, plain-count or alone."""
+    """The cost of a rule, a CSV file, or exact, plain-count or alone; and who else uses it."""
     pricer, missing = pricer_of(case, progress, limits)
-    found = priced(case, pricer, rule)
+    found = priced(case, pricer, rule, use)
     basis = found.pop("basis")
     inexact = pricer.inexact()
     return {
@@ -139,7 +143,9 @@ def price(
         "dropped_mass": inexact.dropped_mass,
         "near_tie_mass": inexact.near_tie_mass,
         "sampled_histories_and_seed": inexact.sampled,
-        "exact": inexact.nothing and found["figures"]["off_model"] == 0.0,
+        "exact": inexact.nothing
+        and found["figures"]["off_model"] == 0.0
+        and found["figures"]["errors"] is None,
         "remarks": [*found["remarks"], *([missing] if missing else [])],
     }
 

@@ -337,7 +337,7 @@ def _group_lines(found: dict[str, Any]) -> list[str]:
 def price_text(found: dict[str, Any]) -> str:
     """A price beside the other ways of playing, then the use of each row and what is odd."""
     named = [(f"this rule ({found['rule']})", found["figures"]), *found["others"].items()]
-    lines = [f"{found['case']}: {found['agent']} uses the rule, the others stay exact", ""]
+    lines = [f"{found['case']}: {_who_uses(found)}", ""]
     lines += figures_table(named, "plus", "minus")
     figures = found["figures"]
     lines.append("")
@@ -345,8 +345,26 @@ def price_text(found: dict[str, Any]) -> str:
         f"accuracy lost {signed(figures['accuracy_lost'], 6)}, delay added "
         f"{signed(figures['delay_added'], 4)} steps, against exact"
     )
+    agreed = found.get("agreement")
+    if agreed is not None:
+        errors = agreed["errors"] or {}
+        same, opposite = (
+            with_error(agreed[name], errors.get(name), 2, " %") for name in ("same", "opposite")
+        )
+        apart = with_error(agreed["steps_apart"], errors.get("steps_apart"), 3)
+        lines.append(
+            f"on the same observations it ends as exact play does in {same} of outings, opposite "
+            f"in {opposite}; {apart} steps apart"
+        )
     if not found["watching_is_worth_something"]:
         lines.append("watching is worth nothing here: no benefit is given in per cent")
+    if "agents" in found:
+        rows = [("agent", "given", "plus", "minus", "undecided", "mean step")]
+        for name, sides in found["agents"].items():
+            for key, one in sides.items():
+                ends = (f"{one[end]:.6f}" for end in ("plus", "minus", "undecided"))
+                rows.append((name, key.removeprefix("given_"), *ends, f"{one['steps']:.3f}"))
+        lines += ["", *columns(rows, right=range(2, 6))]
     if found["rows"]:
         uses = [("row", "steps in force per outing", "answers given under it, of 100")]
         uses += [
@@ -360,6 +378,14 @@ def price_text(found: dict[str, Any]) -> str:
     lines += [f"Note: {text}" for text in found["remarks"]]
     lines.append("exact" if found["exact"] else f"{INEXACT}, or displays read off-model")
     return "\n".join(lines)
+
+
+def _who_uses(found: dict[str, Any]) -> str:
+    users, others = found.get("used_by"), found.get("rule_of_others")
+    rest = "the others stay exact" if others is None else f"the others who can go by {others}"
+    if not users or users == [found["agent"]]:
+        return f"{found['agent']} uses the rule, {rest}"
+    return f"{', '.join(users)} use the rule, {rest}; the figures are those of {found['agent']}"
 
 
 def signed(number: float, digits: int) -> str:

@@ -165,7 +165,7 @@ def test_jumps(patch: Patch, capsys: pytest.CaptureFixture[str]) -> None:
 def test_outcomes_and_price(patch: Patch, capsys: pytest.CaptureFixture[str]) -> None:
     patch("outcomes", lambda case, _limits: {"who": case.name, "mean": None, "share": 0.1 + 0.2})
     patch("outcomes_text", lambda found: f"text of {found['who']}")
-    patch("price", lambda case, rule, _progress, _limits: {"who": case.name, "rule": rule})
+    patch("price", lambda case, rule, _progress, _limits, _use: {"who": case.name, "rule": rule})
     patch("price_text", lambda found: f"price of {found['rule']}")
     assert main(["outcomes", "frost-watch"]) == 0
     assert capsys.readouterr().out == "text of frost-watch\n"
