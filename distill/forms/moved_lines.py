@@ -44,7 +44,10 @@ class LineMoves:
         """Every layout that is one move away."""
         for number, line in enumerate(layout.lines):
             for moved in self._bars(line):
-                yield layout.with_line(number, moved)
+                other = layout.with_line(number, moved)
+                # Rows without any bar would be read as rows of values.
+                if any(one.bars != (None, None) for one in other.lines):
+                    yield other
         for place, (sides, lines) in enumerate(layout.groups):
             for k in range(1, len(lines)):
                 for stop in self._borders(lines[k - 1], lines[k]):
