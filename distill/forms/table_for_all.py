@@ -84,14 +84,14 @@ def _settled(
             said += f" Histories were sampled, so values within {apart:g} nats count as the same."
     else:
         # No fixed point was met: of what came up, the best where all use it.
-        tried = turns[again or 0 :]
-        risks = [pricer.objective(_together(pricer, one)) for one, _ in tried]
-        rule, made = tried[risks.index(min(risks))]
+        risks = [pricer.objective(_together(pricer, one)) for one, _ in turns]
+        rule, made = turns[risks.index(min(risks))]
         said = (
-            f"The tables came round again after {len(tried)}: there is no fixed point on this way."
+            f"The tables came round again after {len(turns) - again}: there is no fixed point on "
+            "this way."
             if again is not None
             else f"After {MOST_TURNS} turns the table still changed."
-        ) + " This is the best of them where all use it."
+        ) + " Of all that came up this is the best where all use it."
     return Distilled(
         rule,
         made.information_kept,
