@@ -71,7 +71,7 @@ def test_help_needs_nothing_heavy(words: list[str]) -> None:
 def test_help_names_every_verb(capsys: pytest.CaptureFixture[str]) -> None:
     assert main(["--help"]) == 0
     text = capsys.readouterr().out
-    known = ["starter", "check", "sheet", "jumps", "outcomes", "price", "replay"]
+    known = ["starter", "check", "sheet", "jumps", "outcomes", "price", "replay", "sizes"]
     assert list(verbs.commands) == known
     assert all(f"  {verb} " in text for verb in verbs.commands)
 
@@ -177,6 +177,34 @@ def test_outcomes_and_price(patch: Patch, capsys: pytest.CaptureFixture[str]) ->
     assert capsys.readouterr().out == "price of alone\n"
     assert main(["price", "frost-watch", "my.csv", "--json"]) == 0
     assert json.loads(capsys.readouterr().out) == {"who": "frost-watch", "rule": "my.csv"}
+
+
+def test_sizes(patch: Patch, capsys: pytest.CaptureFixture[str]) -> None:
+    told = {"complete": True, "kept": 0.1 + 0.2}
+    patch("sizes", lambda case, _progress, _limits: told | {"who": case.name})
+    patch("sizes_text", lambda case, found: f"sizes of {found['who']} {case.title[:5]}")
+    assert main(["sizes", "frost-watch"]) == 0
+    assert capsys.readouterr().out == "sizes of frost-watch Frost\n"
+    assert main(["sizes", "frost-watch", "--json"]) == 0
+    assert json.loads(capsys.readouterr().out) == told | {"who": "frost-watch"}
+
+
+def test_sizes_stopped_by_the_user_print_what_there_is() -> None:
+    before = """
+import os, signal
+from thumbwright.distill import sizes
+def fill(case, pricer, wanted, found, left_out, progress, whole=sizes._fill):
+    def stop(label, done, total):
+        if label == "sizes, table" and done == 2:
+            os.kill(os.getpid(), signal.SIGINT)
+    whole(case, pricer, wanted, found, left_out, stop)
+sizes._fill = fill
+"""
+    done = program("sizes", "frost-watch", before=before)
+    assert done.returncode == 130
+    assert done.stderr == ""
+    assert done.stdout.splitlines()[-1].startswith("INCOMPLETE")
+    assert "lines\nrows" in done.stdout
 
 
 # What goes wrong
