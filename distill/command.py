@@ -75,6 +75,9 @@ JSON = click.option("--json", "as_json", is_flag=True, help="Print all figures a
 TRACE = "THUMBWRIGHT_TRACE"
 """Environment variable: when set, a fault of the program itself is shown in full."""
 
+_STOPPED = 130
+"""Exit status when stopped by the user."""
+
 _TOO_LARGE = (
     "this case needs more memory than there is: shorten the horizon, let agents see fewer others,"
     " or split the group"
@@ -274,6 +277,27 @@ def replay(case: str, events: Path, rule: str | None, limits: Limits, as_json: b
     _show(_as_json(found) if as_json else job.replay_text(read, found))
 
 
+@verbs.command()
+@CASE
+@limited
+@JSON
+def sizes(case: str, limits: Limits, as_json: bool) -> None:
+    """What each number of rows costs, up to that of the case, for each rule form it asks for.
+
+    A long run can be stopped (Ctrl-C): the sizes worked out so far are printed, marked incomplete.
+    """
+    from thumbwright.distill import job
+    from thumbwright.distill.progress import progress_on_terminal
+    from thumbwright.distill.reading import read_case
+
+    read = read_case(case)
+    with progress_on_terminal() as progress:
+        found = job.sizes(read, progress, limits)
+    _show(_as_json(found) if as_json else job.sizes_text(read, found))
+    if not found["complete"]:
+        raise SystemExit(_STOPPED)
+
+
 def main(argv: Sequence[str] | None = None) -> int:
     """Run the command line and return its exit status.
 
@@ -307,7 +331,7 @@ def _run(argv: Sequence[str] | None) -> int:
     except SystemExit as stop:
         return stop.code if isinstance(stop.code, int) else 1
     except (KeyboardInterrupt, click.Abort):
-        return 130
+        return _STOPPED
     except click.ClickException as error:
         error.show()
         return error.exit_code

@@ -38,6 +38,12 @@ class Figures:
     off_model: float
     errors: dict[str, float] | None = None
 
+    def worse_than(self, other: Figures) -> bool:
+        """Whether these have a noticeably larger risk; False where none is known."""
+        if self.risk is None or other.risk is None:
+            return False
+        return self.risk > other.risk + 1e-9 * abs(other.risk)
+
 
 @dataclass(frozen=True)
 class RowUse:
@@ -68,6 +74,15 @@ class Agreed:
 
 
 @dataclass(frozen=True)
+class Size:
+    """What a rule of so many rows costs, and the share of information that it keeps."""
+
+    rows: int
+    figures: Figures
+    information_kept: float | None
+
+
+@dataclass(frozen=True)
 class FormResult:
     """A distilled rule with its price.
 
@@ -75,6 +90,8 @@ class FormResult:
     ``information_ceiling`` is the most that any grouping into as many rows could keep. ``agreed``
     compares it with exact play on the same observations. ``everybody`` is how its agent fares where
     all who can use the rule do; None where there is nobody else, or it could not be worked out.
+    ``sizes`` are rules of fewer and fewer rows, those of one search, before any polish; empty where
+    they would have taken long.
     """
 
     rule: Rule
@@ -85,6 +102,7 @@ class FormResult:
     notes: tuple[str, ...]
     agreed: Agreed | None = None
     everybody: Figures | None = None
+    sizes: tuple[Size, ...] = ()
 
 
 @dataclass(frozen=True)

@@ -6,6 +6,7 @@ alone; then what the sheet needs to explain itself: worth curves, an example, ca
 
 from __future__ import annotations
 
+from dataclasses import replace
 from importlib.metadata import version
 
 import numpy as np
@@ -22,12 +23,14 @@ from thumbwright.distill.findings import (
     ReckonedResult,
     WorthCurve,
 )
-from thumbwright.distill.forms import MODULES, Distilled, Wanted, form
+from thumbwright.distill.forms import MODULES, Distilled, Wanted
+from thumbwright.distill.forms.making import make, wanted_of
 from thumbwright.distill.forms.runs import alone_rows
 from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.pricing import pricer_of
 from thumbwright.distill.rules import SHOWN, Rule
 from thumbwright.distill.situations import Situations, Weighed, values_of
+from thumbwright.distill.sizes import come_free, priced_sizes
 from thumbwright.distill.tallies import Tally
 from thumbwright.exact.engine import Progress
 from thumbwright.exact.errors import ModelError
@@ -41,7 +44,7 @@ MOST_CURVES = 9
 def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIMITS) -> Findings:
     """Everything that is printed about the rule's agent of a case."""
     pricer, missing = pricer_of(case, progress, limits)
-    wanted = Wanted(case.rule.rows, tuple(case.rule.inputs), case.rule.max_accuracy_lost)
+    wanted = wanted_of(case, pricer)
     made, reckoned, left_out = _forms(pricer, case, wanted, progress)
     forms = {name: one for name, (one, _) in made.items()}
     main, main_tally = next(iter(made.values()))
@@ -96,7 +99,8 @@ def _forms(
     for name in MODULES:
         if name in case.rule.forms:
             try:
-                made = form(name).distil(pricer, wanted, progress)
+                asked = replace(wanted, every_size=come_free(name, pricer, wanted))
+                made = make(name, pricer, asked, progress)
             except ModelError as refusal:
                 refusals.append(refusal)
                 continue
@@ -124,6 +128,7 @@ def _form_result(
         made.notes,
         pricer.agreement(rule),
         _everybody(pricer, rule, progress),
+        priced_sizes(pricer, made.sizes),
     )
     return result, found
 

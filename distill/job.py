@@ -156,6 +156,22 @@ def price(
     }
 
 
+def sizes(
+    case: Case, progress: Progress | None = None, limits: Limits = NO_LIMITS
+) -> dict[str, Any]:
+    """What each number of rows costs, for each form; ``complete`` is False if it was stopped."""
+    from thumbwright.distill.sizes import sizes as found_by_size
+
+    return found_by_size(case, progress, limits)
+
+
+def sizes_text(case: Case, found: dict[str, Any]) -> str:
+    """Sizes as lines to read."""
+    from thumbwright.distill.sizes_text import sizes_text as told
+
+    return told(case, found)
+
+
 def price_text(found: dict[str, Any]) -> str:
     """A price as lines to read."""
     return texts.price_text(found)

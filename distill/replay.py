@@ -246,7 +246,7 @@ class _Walker:
         columns = [
             tuple(np.array(x) for x in (one.state, one.step, one.round or 0)) for one in told
         ]
-        view = view_of(self.rule, self.names, np.array(moment.step), columns)
+        view = view_of(self.rule.seen, self.names, np.array(moment.step), columns)
         number = int(rows_in(self.rule, view)[0])
         if number == NO_ROW:
             return RuleSays(does=sure or WATCH)

@@ -92,7 +92,7 @@ def priced(case: Case, pricer: Pricer, rule: str, use: Use = ALONE_IN_USE) -> di
             more |= told
             remarks.append("how often rows are used, and agreement, are those of a single user")
     figures = pricer.figures(tally)
-    if figures.risk is not None and figures.benefit_kept is not None and figures.benefit_kept < 0:
+    if figures.worse_than(pricer.figures(pricer.alone_tally)):
         remarks.append("this rule is worse than ignoring the neighbours")
     return {
         "figures": asdict(figures),

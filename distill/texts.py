@@ -189,6 +189,11 @@ def sheet_text(findings: Findings, written: Sequence[Path]) -> str:
         ("everybody ignored", findings.alone),
     ]
     lines += figures_table(named, case.question.plus, case.question.minus)
+    lines += [
+        f"The {name} is worse than ignoring the neighbours."
+        for name, form in findings.forms.items()
+        if form.figures.worse_than(findings.alone)
+    ]
     if not findings.watching_is_worth:
         lines.append("Watching is worth nothing here.")
     lines += [f"Note: {text}" for text in findings.caveats]
@@ -279,11 +284,11 @@ def outcomes_text(found: dict[str, Any]) -> str:
             f"{found['histories']:,} public histories sampled with seed "
             f"{found['sampled_with_seed']}, the beliefs along each exact; ± is one standard error"
         )
-    lines.append("exact" if found["exact"] else _INEXACT)
+    lines.append("exact" if found["exact"] else INEXACT)
     return "\n".join(lines)
 
 
-_INEXACT = "not exact: evidence split, or histories dropped or sampled"
+INEXACT = "not exact: evidence split, or histories dropped or sampled"
 
 
 def _told_apart(agents: list[dict[str, Any]]) -> list[tuple[str, dict[str, Any]]]:
@@ -373,9 +378,9 @@ def price_text(found: dict[str, Any]) -> str:
         lines += ["", *columns(uses, right=range(3))]
     losses = found["losses"]
     if losses is not None:
-        lines += ["", _losses_text(losses)]
+        lines += ["", losses_text(losses)]
     lines += [f"Note: {text}" for text in found["remarks"]]
-    lines.append("exact" if found["exact"] else f"{_INEXACT}, or displays read off-model")
+    lines.append("exact" if found["exact"] else f"{INEXACT}, or displays read off-model")
     return "\n".join(lines)
 
 
@@ -392,7 +397,8 @@ def signed(number: float, digits: int) -> str:
     return f"{number:+.{digits}f}" if round(number, digits) else f"{0:.{digits}f}"
 
 
-def _losses_text(losses: dict[str, Any]) -> str:
+def losses_text(losses: dict[str, Any]) -> str:
+    """The losses used, with their ranges where they were inferred."""
     text = (
         f"losses: false plus {losses['false_plus']:.4g}, false minus {losses['false_minus']:.4g}, "
         f"{losses['per_step']:.4g} per step"

@@ -36,7 +36,7 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
     so.
     """
     first = table.distil(pricer, wanted)
-    users = pricer.users(first.rule)
+    users = pricer.users(first.in_rows)
     if len(users) < 2:
         raise ModelError(
             f'the form "{NAME}" needs others who can use the rule too, and only {pricer.agent} '
@@ -49,7 +49,7 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
     for rows in range(1, wanted.rows + 1):
         narrow = replace(wanted, rows=rows, max_accuracy_lost=None)
         made = _settled(pricer, narrow, table.distil(pricer, narrow), progress)
-        together = pricer.together_tally(made.rule, pricer.users(made.rule))
+        together = pricer.together_tally(made.in_rows, pricer.users(made.in_rows))
         if exact - pricer.accuracy(together) <= allowed:
             said = "The fewest rows within the accuracy that may be lost where all use them."
             return replace(made, notes=(*made.notes, said))
@@ -61,16 +61,16 @@ def _settled(
     pricer: Pricer, wanted: Wanted, first: Distilled, progress: Progress | None
 ) -> Distilled:
     """Play and value anew until nothing changes, or the tables come round again."""
-    turns: list[Turn] = [(replace(first.rule, form=NAME), first)]
+    turns: list[Turn] = [(replace(first.in_rows, form=NAME), first)]
     again: int | None = None
-    sampled = _together(pricer, first.rule).sampled is not None
+    sampled = _together(pricer, first.in_rows).sampled is not None
     apart = SETTLED_IF_SAMPLED if sampled else SETTLED
     for number in range(MOST_TURNS):
         if progress:
             progress(NAME, number, MOST_TURNS)
         rule, _ = turns[-1]
         made = table.distil(pricer.with_situations(pricer.situations_among(rule)), wanted)
-        new = replace(made.rule, form=NAME)
+        new = replace(made.in_rows, form=NAME)
         again = next((k for k, (old, _) in enumerate(turns) if _same(old, new, apart)), None)
         if again is not None:
             break

@@ -66,9 +66,15 @@ def costs(findings: Findings, voice: Voice) -> Grid:
     )
 
 
-def cost_note(findings: Findings) -> str:
-    """Say where watching is worth nothing; "" where it is worth something."""
-    return "" if findings.watching_is_worth else "Here watching is worth next to nothing."
+def cost_note(findings: Findings, voice: Voice) -> str:
+    """Say where watching is worth nothing, or the card worse than not watching; else ""."""
+    said = []
+    if not findings.watching_is_worth:
+        said.append("Here watching is worth next to nothing.")
+    name, figures = ways(findings, voice)[0]
+    if figures.worse_than(findings.alone):
+        said.append(f"{capital(name)} is worse than ignoring everybody.")
+    return " ".join(said)
 
 
 def example(findings: Findings, voice: Voice, counting: Counting, card: Card) -> Grid | None:

@@ -13,6 +13,7 @@ from thumbwright.distill.rules import FIRST_ANSWERS, NUMBERS, SHOWN, Row
 from thumbwright.distill.sheet.chart import chart
 from thumbwright.distill.sheet.nested import nested
 from thumbwright.distill.sheet.parts import Grid, Modeller, Nested, Note, Sentence
+from thumbwright.distill.sheet.sizes import sizes_chart
 from thumbwright.distill.sheet.voice import Voice, own_evidence
 from thumbwright.distill.sheet.words import clean, five, listing, range_words, signed
 
@@ -52,6 +53,7 @@ def modeller(findings: Findings, voice: Voice) -> Modeller:
         losses=_losses(findings),
         exactness=_exactness(findings),
         settings=_settings(findings, voice),
+        sizes=sizes_chart(findings),
     )
 
 
@@ -214,6 +216,12 @@ def _figure_notes(findings: Findings) -> tuple[str, ...]:
         " held against is the group in which all play exact.",
         "Plain count: a commitment seen counts as that agent’s threshold less the prior, an"
         " undecided agent as nothing.",
+    ]
+    said += [
+        f"The {name} is worse than ignoring the neighbours: its risk is larger than that of an"
+        " agent alone."
+        for name, result in _forms(findings)
+        if result.figures.worse_than(findings.alone)
     ]
     if not findings.watching_is_worth:
         said.append(
