@@ -21,7 +21,7 @@ SHARE_TOLERANCE = 1e-9
 RECKONED = ("shifts", "formula")
 """Forms that have no rows and stand beside one that has."""
 
-WITH_ROWS = ("lines", "table", "table-by-risk", "tree")
+WITH_ROWS = ("lines", "table", "table-by-risk", "table-for-all", "tree")
 
 TIMETABLE = ("first_step", "looks_every", "looks_per_step")
 """Keys of an agent that say when it observes."""

@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 from pathlib import Path
 
+import jsonschema
 import numpy as np
 import pytest
 
@@ -12,6 +13,7 @@ from tests.distill.pricers import ALPHA, coin_group, one_way, pricer_of_group
 from thumbwright.distill import group_checks, texts
 from thumbwright.distill.case import FORMS
 from thumbwright.distill.exports import render_all
+from thumbwright.distill.exports.rule_schema import schema_text
 from thumbwright.distill.faults import Faults
 from thumbwright.distill.findings import Findings
 from thumbwright.distill.forms import MODULES
@@ -41,6 +43,11 @@ def test_reckoned_forms_go_through_sheet_json_and_terminal() -> None:
     assert list(findings.reckoned) == ["shifts", "formula"]
     files = render_all(findings)
     document = json.loads(files["rule.json"])
+    schema = jsonschema.Draft202012Validator(json.loads(schema_text()))
+    schema.validate(document)
+    spoilt = json.loads(files["rule.json"])
+    del spoilt["reckoned"]["shifts"]["costs"]
+    assert not schema.is_valid(spoilt)
     assert list(document["reckoned"]) == ["shifts", "formula"]
     found = document["reckoned"]["formula"]
     assert found["numbers"] == {"plus_upper": 4.0, "minus_upper": -2.0, "undecided_upper": 0.5}
