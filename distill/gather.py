@@ -13,13 +13,14 @@ import numpy as np
 from thumbwright.distill.assemble import NO_LIMITS, Limits
 from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
+from thumbwright.distill.doubts import doubted
 from thumbwright.distill.example import example
-from thumbwright.distill.findings import Figures, Findings, FormResult, WorthCurve
+from thumbwright.distill.findings import Doubted, Figures, Findings, FormResult, WorthCurve
 from thumbwright.distill.forms import MODULES, Wanted, form
 from thumbwright.distill.forms.runs import alone_rows
 from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.pricing import pricer_of
-from thumbwright.distill.rules import SHOWN
+from thumbwright.distill.rules import SHOWN, Rule
 from thumbwright.distill.situations import Situations, Weighed, values_of
 from thumbwright.distill.tallies import Tally
 from thumbwright.exact.engine import Progress
@@ -44,6 +45,7 @@ def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIM
     evidence = _evidence(pricer)
     caveats = _caveats(pricer, [*(f.figures for f in forms.values()), plain, alone], missing)
     caveats = (*caveats, *left_out)
+    doubts, not_doubted = _doubts(pricer, case, main.rule, limits, progress)
     return Findings(
         case=case,
         digest=case.digest,
@@ -70,7 +72,17 @@ def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIM
         caveats=caveats,
         near_tie_mass=pricer.inexact().near_tie_mass,
         example=example(pricer, main.rule) if isinstance(pricer, NetworkPricer) else (),
+        doubts=doubts,
+        not_doubted=not_doubted,
     )
+
+
+def _doubts(
+    pricer: Pricer, case: Case, rule: Rule, limits: Limits, progress: Progress | None
+) -> tuple[tuple[Doubted, ...], tuple[str, ...]]:
+    if isinstance(pricer, NetworkPricer):
+        return doubted(pricer, case, rule, limits, progress)
+    return (), ("Wrong assumptions are not priced where everybody sees everybody and is counted.",)
 
 
 def _forms(

@@ -8,6 +8,7 @@ from typing import Any
 from thumbwright.distill.findings import Figures, Findings
 from thumbwright.distill.sheet.card import peg_words, short_act
 from thumbwright.distill.sheet.counted import tally_of
+from thumbwright.distill.sheet.doubts import doubts_front
 from thumbwright.distill.sheet.parts import Card, Grid
 from thumbwright.distill.sheet.voice import Counting, Voice
 from thumbwright.distill.sheet.words import capital, of_hundred, quoted
@@ -65,8 +66,10 @@ def costs(findings: Findings, voice: Voice) -> Grid:
 
 
 def cost_note(findings: Findings) -> str:
-    """Say where watching is worth nothing; "" where it is worth something."""
-    return "" if findings.watching_is_worth else "Here watching is worth next to nothing."
+    """Say where watching is worth nothing, or when it does harm; "" where there is no such case."""
+    if not findings.watching_is_worth:
+        return "Here watching is worth next to nothing."
+    return doubts_front(findings)
 
 
 def example(findings: Findings, voice: Voice, counting: Counting, card: Card) -> Grid | None:

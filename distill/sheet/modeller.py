@@ -10,6 +10,7 @@ from thumbwright.distill.case import Agent, is_crowd
 from thumbwright.distill.findings import Figures, Findings, FormResult
 from thumbwright.distill.rules import FIRST_ANSWERS, NUMBERS, SHOWN, Row
 from thumbwright.distill.sheet.chart import chart
+from thumbwright.distill.sheet.doubts import doubts_grid, doubts_notes
 from thumbwright.distill.sheet.nested import nested
 from thumbwright.distill.sheet.parts import Grid, Modeller, Note
 from thumbwright.distill.sheet.voice import Voice, own_evidence
@@ -47,6 +48,8 @@ def modeller(findings: Findings, voice: Voice) -> Modeller:
         figures=_figures(findings),
         figure_notes=_figure_notes(findings),
         losses=_losses(findings),
+        doubts=doubts_grid(findings) if findings.doubts else None,
+        doubts_notes=doubts_notes(findings),
         exactness=_exactness(findings),
         settings=_settings(findings, voice),
     )
