@@ -19,13 +19,14 @@ from thumbwright.distill.findings import Doubted, Figures
 from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.playing import alone_policy
 from thumbwright.distill.rules import Rule
+from thumbwright.distill.stated_doubts import at_random, stated_world, with_sight
 from thumbwright.distill.tallies import Tally, average, tally
 from thumbwright.exact import astray
 from thumbwright.exact.engine import Progress, solve
 from thumbwright.exact.errors import ModelError
 from thumbwright.exact.evidence.base import Evidence
 from thumbwright.exact.evidence.binary import bernoulli
-from thumbwright.exact.evidence.law import Law, real_law, stretched, useless
+from thumbwright.exact.evidence.law import Law, real_law, stretched
 from thumbwright.exact.forecast import forecast
 from thumbwright.exact.group import Agent, Group, Thresholds
 
@@ -84,10 +85,17 @@ def doubted(
     tuple of Doubted
     tuple of str
         Plain sentences on what was left out, and why.
+
+    Raises
+    ------
+    ModelError
+        Where a world that the case itself states cannot be played.
     """
     if any(setting.solution.dropped_mass > 0 for setting in pricer.settings):
         return (), ("Wrong assumptions were not priced, since rare events were dropped.",)
-    doubts, left_out = _doubts(pricer, case)
+    stated = [_stated(case, name) for name in case.doubts]
+    ours, left_out = _doubts(pricer, case)
+    doubts = [*stated, *(one for one in ours if one.name not in case.doubts)]
     found = []
     for number, doubt in enumerate(doubts):
         if progress:
@@ -95,6 +103,8 @@ def doubted(
         try:
             found.append(_priced(pricer, rule, doubt, limits))
         except ModelError as refusal:
+            if doubt.name in case.doubts:
+                raise ModelError(f"doubts.{doubt.name}: {refusal}") from refusal
             left_out.append(f"The doubt “{doubt.name}” was not priced: {refusal}.")
     if progress:
         progress("wrong assumptions", len(doubts), len(doubts))
@@ -128,6 +138,12 @@ def _kept(pricer: NetworkPricer, played: Tally, alone: Tally) -> float | None:
     losses, prior = pricer.losses, pricer.prior_plus
     expected = pricer.alone_tally.risk(losses, prior) - pricer.exact_tally.risk(losses, prior)
     return (alone.risk(losses, prior) - played.risk(losses, prior)) / expected
+
+
+def _stated(case: Case, name: str) -> Doubt:
+    """A world that the case states itself."""
+    doubt = case.doubts[name]
+    return Doubt(name, doubt.says or name, "", lambda s: stated_world(case, doubt, s))
 
 
 def _doubts(pricer: NetworkPricer, case: Case) -> tuple[list[Doubt], list[str]]:
@@ -292,15 +308,13 @@ def _moved(
 
 
 def _with_habit(who: Sequence[str], habit: astray.Habit) -> WorldFor:
-    """Worlds with agents that make nothing of others; those not silent have useless evidence."""
+    """Worlds with agents that never answer, or do so at random."""
 
     def world(setting: Setting) -> astray.World:
-        made, group = astray.as_believed_by(setting.solution), setting.solution.group
+        made = astray.as_believed_by(setting.solution)
         for one in who:
-            made = astray.with_habit(made, one, habit)
-            if habit is not astray.Habit.SILENT:
-                evidence = group.agents[group.index[one]].evidence
-                made = astray.with_laws(made, {one: useless(evidence)})
+            silent = habit is astray.Habit.SILENT
+            made = astray.with_habit(made, one, habit) if silent else at_random(made, one)
         return made
 
     return world
@@ -325,9 +339,7 @@ def with_sees(one: str, sees: tuple[str, ...]) -> WorldFor:
     """Worlds in which an agent sees others than it is said to, and reads them as if all knew."""
 
     def world(setting: Setting) -> astray.World:
-        group = setting.solution.group
-        agents = [replace(a, sees=sees) if a.id == one else a for a in group.agents]
-        linked = replace(group, agents=tuple(agents))
+        linked = with_sight(setting.solution.group, one, sees)
         seconds = forecast(linked).seconds
         if seconds > MOST_SECONDS:
             raise ModelError(f"exact play of that group takes about {seconds:.0f} seconds")

@@ -1,4 +1,4 @@
-"""What the card costs where the case is not right: a table for the modeller, a line for the front."""
+"""What the card costs where the case is not right: a table for the back, a line for the front."""
 
 from __future__ import annotations
 
@@ -60,7 +60,7 @@ def doubts_notes(findings: Findings) -> tuple[str, ...]:
             "Everybody goes by the case all the same: thresholds, what an observation is worth"
             " and what others are worth are those of the case, for all agents. Benefit kept is"
             " here the risk saved over looking at nobody in the same world, as a share of what"
-            " exact play saves where the case is right; below 0, looking does harm."
+            " exact play saves where the case is right; below 0, looking is worse than not looking."
         )
         said += [_ranges(findings.doubts), _harm(findings)]
         if any(not one.is_exact for one in findings.doubts):
@@ -87,7 +87,7 @@ def _ranges(doubts: tuple[Doubted, ...]) -> str:
 
 def harmful(findings: Findings) -> list[Doubted]:
     """The worlds in which the rule is worse than looking at nobody, the worst first."""
-    found = [one for one in findings.doubts if (one.rule.benefit_kept or 0.0) < -1e-9]
+    found = [one for one in findings.doubts if one.harms]
     return sorted(found, key=lambda one: (one.rule.benefit_kept or 0.0, one.name))
 
 
@@ -95,12 +95,13 @@ def _harm(findings: Findings) -> str:
     worst = harmful(findings)
     if not worst:
         return ""
-    return f"The rule does harm where {'; or where '.join(one.says for one in worst)}."
+    where = "; where ".join(one.says for one in worst)
+    return f"The rule is worse than looking at nobody where {where}."
 
 
 def doubts_front(findings: Findings) -> str:
-    """One sentence on when not to look at others at all; "" where no doubt makes looking harmful."""
+    """One sentence on when to look at nobody; "" where no doubt makes looking harmful."""
     worst = harmful(findings)[:MOST_NAMED]
     if not worst:
         return ""
-    return f"Looking does harm where {', or where '.join(clean(one.says) for one in worst)}."
+    return f"Better to look at nobody where {', or where '.join(clean(one.says) for one in worst)}."

@@ -54,7 +54,7 @@ def real_masses(
     found = []
     for plus, minus in masses:
         if not (plus and minus):
-            assert not plus and not minus
+            assert plus == minus == 0.0
             found.append((0.0, 0.0))
             continue
         worth = math.log(plus / minus)
