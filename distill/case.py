@@ -53,7 +53,7 @@ __all__ = [
     "Words",
 ]
 
-Form = Literal["lines", "table", "table-by-risk", "tree"]
+Form = Literal["lines", "table", "table-by-risk", "table-for-all", "tree", "shifts", "formula"]
 Input = Literal[
     "step",
     "shown",
@@ -198,6 +198,14 @@ class RuleWanted(Part):
     max_accuracy_lost: Probability | None = Field(
         default=None, description="Largest loss of accuracy, against exact play, to accept."
     )
+    min_benefit_kept: Probability | None = Field(
+        default=None,
+        description="Least share of what exact watching saves over being alone; needs costs.",
+    )
+    polish: bool = Field(
+        default=False,
+        description="Whether to move bars, values and cuts for less risk; needs costs.",
+    )
 
     def for_crowd(self) -> RuleWanted:
         """What is left out, filled in for a crowd: its rule counts the others."""
@@ -205,6 +213,9 @@ class RuleWanted(Part):
         left_out = {k: v for k, v in defaults.items() if k not in self.model_fields_set}
         return self.model_copy(update=left_out)
 
+
+NEWER = ("min_benefit_kept", "polish")
+"""Keys of the rule that cases did not have at first."""
 
 CROWD = 4
 """So many agents who all see each other are counted by a rule unless it says what it looks at."""
@@ -334,6 +345,10 @@ class Case(_Shared):
             for key in TIMETABLE:
                 if agent[key] == 1:
                     del agent[key]
+        # So are keys of the rule that came later, unless they are used.
+        for key in NEWER:
+            if content["rule"][key] == RuleWanted.model_fields[key].default:
+                del content["rule"][key]
         content["agents"] = list(content["agents"].items())
         if not content["doubts"]:
             del content["doubts"]  # as in cases from before there were any

@@ -75,6 +75,9 @@ JSON = click.option("--json", "as_json", is_flag=True, help="Print all figures a
 TRACE = "THUMBWRIGHT_TRACE"
 """Environment variable: when set, a fault of the program itself is shown in full."""
 
+_STOPPED = 130
+"""Exit status when stopped by the user."""
+
 _TOO_LARGE = (
     "this case needs more memory than there is: shorten the horizon, let agents see fewer others,"
     " or split the group"
@@ -213,9 +216,23 @@ def outcomes(case: str, limits: Limits, as_json: bool) -> None:
 @verbs.command()
 @CASE
 @click.argument("rule", metavar="RULE")
+@click.option(
+    "--used-by",
+    default="one",
+    metavar="WHO",
+    help="Who goes by the rule: one (the agent it is for), everybody who can, or ids joined by "
+    "commas.",
+)
+@click.option(
+    "--others-use",
+    metavar="RULE2",
+    help="A rule that all others go by who can; left out: they play exactly.",
+)
 @limited
 @JSON
-def price(case: str, rule: str, limits: Limits, as_json: bool) -> None:
+def price(
+    case: str, rule: str, used_by: str, others_use: str | None, limits: Limits, as_json: bool
+) -> None:
     """What a given rule costs, and how often each of its rows is used.
 
     RULE is a CSV file as written by "sheet" (rule.csv), or one of: exact, plain-count, alone.
@@ -223,11 +240,62 @@ def price(case: str, rule: str, limits: Limits, as_json: bool) -> None:
     from thumbwright.distill import job
     from thumbwright.distill.progress import progress_on_terminal
     from thumbwright.distill.reading import read_case
+    from thumbwright.distill.ruleprice import Use
 
     read = read_case(case)
     with progress_on_terminal() as progress:
-        found = job.price(read, rule, progress, limits)
+        found = job.price(read, rule, progress, limits, Use(used_by, others_use))
     _show(_as_json(found) if as_json else job.price_text(found))
+
+
+@verbs.command()
+@CASE
+@click.argument("events", metavar="EVENTS", type=click.Path(path_type=Path))
+@click.option(
+    "--rule",
+    metavar="FILE",
+    help="A rule in a CSV file, as for price; left out: the first form that the case distils.",
+)
+@limited
+@JSON
+def replay(case: str, events: Path, rule: str | None, limits: Limits, as_json: bool) -> None:
+    """Follow a record: what the rule says, and what the exact agent believes and does.
+
+    EVENTS is a CSV file with a line for each step: step (1, 2, ...); sign, what the rule's agent
+    itself observed (or sign_nats, its worth, for readings on a scale); and for each agent ID that
+    it sees ID_shows: undecided, plus or minus, as seen when deciding. Under exchange "settle" that
+    is at the end of the step, and ID_round may say in which round the answer came. What the model
+    calls impossible is named.
+    """
+    from thumbwright.distill import job
+    from thumbwright.distill.progress import progress_on_terminal
+    from thumbwright.distill.reading import read_case
+
+    read = read_case(case)
+    with progress_on_terminal() as progress:
+        found = job.replay(read, events, rule, progress, limits)
+    _show(_as_json(found) if as_json else job.replay_text(read, found))
+
+
+@verbs.command()
+@CASE
+@limited
+@JSON
+def sizes(case: str, limits: Limits, as_json: bool) -> None:
+    """What each number of rows costs, up to that of the case, for each rule form it asks for.
+
+    A long run can be stopped (Ctrl-C): the sizes worked out so far are printed, marked incomplete.
+    """
+    from thumbwright.distill import job
+    from thumbwright.distill.progress import progress_on_terminal
+    from thumbwright.distill.reading import read_case
+
+    read = read_case(case)
+    with progress_on_terminal() as progress:
+        found = job.sizes(read, progress, limits)
+    _show(_as_json(found) if as_json else job.sizes_text(read, found))
+    if not found["complete"]:
+        raise SystemExit(_STOPPED)
 
 
 def main(argv: Sequence[str] | None = None) -> int:
@@ -263,7 +331,7 @@ def _run(argv: Sequence[str] | None) -> int:
     except SystemExit as stop:
         return stop.code if isinstance(stop.code, int) else 1
     except (KeyboardInterrupt, click.Abort):
-        return 130
+        return _STOPPED
     except click.ClickException as error:
         error.show()
         return error.exit_code

@@ -8,9 +8,11 @@ not a ceiling, since its thresholds are not chosen anew for company.
 from __future__ import annotations
 
 from abc import ABC, abstractmethod
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
-from thumbwright.distill.findings import CostBasis, Figures, RowUse
+from thumbwright.distill.findings import Agreed, CostBasis, Figures, RowUse
+from thumbwright.distill.reckoned import Way
 from thumbwright.distill.rules import Rule
 from thumbwright.distill.situations import Weighed, values_of
 from thumbwright.distill.tallies import (
@@ -23,8 +25,8 @@ from thumbwright.distill.tallies import (
     risk_of,
     wrong_of,
 )
+from thumbwright.distill.users import users_of
 from thumbwright.exact.arrays import FloatArray
-from thumbwright.exact.crowd_figures import Weights
 from thumbwright.exact.group import Group
 from thumbwright.exact.stopping import Cone, Losses
 
@@ -113,8 +115,50 @@ class Pricer(ABC):
         """How a rule turns out and how often each of its rows is in force and decides."""
 
     @abstractmethod
+    def way_tally(self, way: Way, whole: bool = True) -> Tally:
+        """How any function of a view turns out; ``whole`` as for :meth:`rule_tally`."""
+
+    def price(self, way: Rule | Way) -> Figures:
+        """Figures of a rule, or of any function of a view (see ``reckoned``)."""
+        found = self.rule_tally(way) if isinstance(way, Rule) else self.way_tally(way)
+        return self.figures(found)
+
+    @abstractmethod
     def plain_count_tally(self) -> Tally:
         """How counting commitments at face value, silence as nothing, turns out."""
+
+    def users(self, rule: Rule) -> tuple[str, ...]:
+        """Ids of the agents that can use a rule, its own among them."""
+        return users_of(rule, self.group)
+
+    @abstractmethod
+    def together_tally(self, rule: Rule, users: Sequence[str], others: Rule | None = None) -> Tally:
+        """How a rule turns out for its agent where all ``users`` go by it.
+
+        The others play exactly and take everyone for exact; or, where a rule is given for
+        ``others``, those of them that can go by that.
+
+        Raises
+        ------
+        ModelError
+            Where this cannot be worked out for this group.
+        """
+
+    @abstractmethod
+    def situations_among(self, rule: Rule) -> Weighed:
+        """Situations of the rule's agent where all who can go by the rule and all know.
+
+        Their weights and worths are those of what then happens. Raises ModelError as
+        :meth:`together_tally`.
+        """
+
+    @abstractmethod
+    def with_situations(self, situations: Weighed) -> Pricer:
+        """The same pricer over other situations, to distil from."""
+
+    @abstractmethod
+    def agreement(self, rule: Rule) -> Agreed:
+        """How a rule compares with exact play on the same observations."""
 
     @abstractmethod
     def inexact(self) -> Inexact:
@@ -140,41 +184,40 @@ class Pricer(ABC):
         """Mean number of steps used."""
         return mean_step_of(self.prior_plus).of(found)
 
-    @property
-    def weights(self) -> Weights | None:
-        """Weights of sampled histories; None where nothing is sampled."""
-        return None
-
     def _errors(self, found: Tally) -> dict[str, float] | None:
         """Standard errors of the figures that are printed; None where nothing is sampled."""
-        weights = self.weights
-        if weights is None or found.sampled is None:
+        if found.sampled is None:
             return None
         accuracy, step = accuracy_of(self.prior_plus), mean_step_of(self.prior_plus)
-        kept = {
-            "wrong_given_plus": error_of(wrong_of(0), found, weights),
-            "wrong_given_minus": error_of(wrong_of(1), found, weights),
-            "accuracy": error_of(accuracy, found, weights),
-            "mean_step": error_of(step, found, weights),
-            "accuracy_lost": error_of_difference(accuracy, found, self.exact_tally, weights),
-            "delay_added": error_of_difference(step, found, self.exact_tally, weights),
+        errors = {
+            "wrong_given_plus": error_of(wrong_of(0), found),
+            "wrong_given_minus": error_of(wrong_of(1), found),
+            "accuracy": error_of(accuracy, found),
+            "mean_step": error_of(step, found),
+            "accuracy_lost": error_of_difference(accuracy, found, self.exact_tally),
+            "delay_added": error_of_difference(step, found, self.exact_tally),
         }
         if self.losses is not None:
             risk = risk_of(self.losses, self.prior_plus)
-            kept["risk"] = error_of(risk, found, weights)
-            kept["benefit_kept"] = self._benefit_error(found, risk, weights)
-        return {name: error for name, error in kept.items() if error is not None}
+            errors["risk"] = error_of(risk, found)
+            kept = self._benefit_error(found, risk)
+            if kept is not None:
+                errors["benefit_kept"] = kept
+        return errors
 
-    def _benefit_error(self, found: Tally, risk: Figure, weights: Weights) -> float | None:
-        """Error of a ratio of two differences over the same histories, linearised."""
+    def _benefit_error(self, found: Tally, risk: Figure) -> float | None:
+        """Error of a ratio of two differences, linearised; paired where histories are the same."""
         assert self.losses is not None
         kept = self.benefit_kept(found, self.losses)
-        played = [one.sampled for one in (self.alone_tally, found, self.exact_tally)]
-        if kept is None or None in played:
+        if kept is None or found.sampled is None:
             return None
-        alone, rule, exact = (risk.by_history(one) for one in played if one is not None)
         saved = risk.of(self.alone_tally) - risk.of(self.exact_tally)
-        return weights.total_error((alone - rule - kept * (alone - exact)) / saved)
+        played = [one.sampled for one in (self.alone_tally, found, self.exact_tally)]
+        if all(one is not None and one.weights is found.sampled.weights for one in played):
+            alone, rule, exact = (risk.by_history(one) for one in played if one is not None)
+            residue = (alone - rule - kept * (alone - exact)) / saved
+            return found.sampled.weights.total_error(residue)
+        return error_of(risk, found) / abs(saved)
 
     def figures(self, found: Tally) -> Figures:
         """The figures that are printed, held against exact play."""

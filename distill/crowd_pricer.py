@@ -2,25 +2,34 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
 
 import numpy as np
 
+from thumbwright.distill.case import CROWD
 from thumbwright.distill.costs import Inexact, Pricer
 from thumbwright.distill.crowd_situations import Counted, CrowdSituations
-from thumbwright.distill.findings import RowUse
+from thumbwright.distill.crowds import ENUMERATED, HISTORIES
+from thumbwright.distill.findings import Agreed, RowUse
 from thumbwright.distill.playing import acts
+from thumbwright.distill.reckoned import Way, act_of
 from thumbwright.distill.rules import Rule
-from thumbwright.distill.tallies import PARTS, Sampled, Tally
+from thumbwright.distill.situations import Weighed
+from thumbwright.distill.tallies import PARTS, Sampled, Tally, prior_pair
+from thumbwright.exact.agreement import crowd_agreement
 from thumbwright.exact.arrays import FloatArray
 from thumbwright.exact.crowd import (
     CrowdPolicy,
-    Showing,
+    InPublic,
     Shown,
-    Weights,
+    TooMany,
     adopt_crowd,
+    enumerate_shown,
     exact_member,
+    sample_shown,
 )
+from thumbwright.exact.errors import ModelError
 from thumbwright.exact.group import Group
 from thumbwright.exact.play import Act
 from thumbwright.exact.stopping import Cone, Losses
@@ -38,6 +47,8 @@ class CrowdPricer(Pricer):
         Expected number of members that the tie rule decides, from exact play of the crowd.
     seed : int
         With which histories were sampled, where they were.
+    drop : float
+        Below which probability histories were dropped.
     """
 
     agent: str
@@ -50,6 +61,7 @@ class CrowdPricer(Pricer):
     whole_group: Group
     near_tie_mass: float
     seed: int
+    drop: float
 
     @classmethod
     def build(
@@ -61,22 +73,19 @@ class CrowdPricer(Pricer):
         cone: Cone | None,
         near_tie_mass: float,
         seed: int,
+        drop: float = 0.0,
     ) -> CrowdPricer:
         """Play exactly and alone once; everything else is held against these."""
         exact, _ = _played(shown, exact_member)
         alone, _ = _played(shown, _alone)
         situations = CrowdSituations.of(shown)
-        return cls(agent, situations, losses, cone, exact, alone, shown, group, near_tie_mass, seed)
+        played = (situations, losses, cone, exact, alone, shown)
+        return cls(agent, *played, group, near_tie_mass, seed, drop)
 
     @property
     def group(self) -> Group:
         """The crowd as a group."""
         return self.whole_group
-
-    @property
-    def weights(self) -> Weights | None:
-        """Weights of sampled histories; None where they are enumerated."""
-        return _weights(self.shown)
 
     def rule_tally(self, rule: Rule, whole: bool = True) -> Tally:
         """How a rule turns out; it is always counted how often others are shown odd answers."""
@@ -87,9 +96,80 @@ class CrowdPricer(Pricer):
         found, uses = _played(self.shown, self._policy(rule), len(rule.rows))
         return found, uses
 
+    def way_tally(self, way: Way, whole: bool = True) -> Tally:
+        """How any function of a view turns out; see :meth:`rule_tally` for ``whole``."""
+        others = self.shown.crowd.size - 1
+        return _played(self.shown, lambda showing: _whole(way, Counted.of(showing, others)))[0]
+
     def plain_count_tally(self) -> Tally:
         """How counting commitments at face value, silence as nothing, turns out."""
         return _played(self.shown, self._plain_count)[0]
+
+    def together_tally(self, rule: Rule, users: Sequence[str], others: Rule | None = None) -> Tally:
+        """How a rule turns out for its agent where all ``users`` go by it.
+
+        Raises
+        ------
+        ModelError
+            Where some go by a rule and the rest by exact play that takes everyone for exact: in a
+            crowd that is worked out for one member only.
+        """
+        if tuple(users) == (self.agent,):
+            shown = self.shown if others is None else self.among(others)
+            return _played(shown, self._policy(rule))[0]
+        if others is None and set(users) == set(self.shown.crowd.members):
+            return _played(self.among(rule), self._policy(rule))[0]
+        raise ModelError(
+            "in a crowd a rule is priced for one member that uses it, for one among members that "
+            "use another, or for all; for any set of users make the group smaller than "
+            f"{CROWD}, or let its rule tell the others apart"
+        )
+
+    def among(self, rule: Rule) -> Shown:
+        """What a member is shown where all others go by a rule, and all know.
+
+        There may be too many histories to enumerate even if exact play has few enough; then they
+        are sampled.
+
+        Raises ModelError where not all can go by it.
+        """
+        shown = self.shown
+        strangers = set(shown.crowd.members) - set(self.users(rule))
+        if strangers:
+            raise ModelError(
+                f"not everybody in this crowd can use the rule: {min(strangers)} cannot, as its "
+                "own count, its thresholds or its timetable are others"
+            )
+        policies = [self._policy(rule)] * len(shown.crowd.kinds)
+        given = (shown.crowd, shown.kind, shown.prior, shown.horizon, shown.exchange)
+        if shown.weight is None:
+            try:
+                return enumerate_shown(*given, drop=self.drop, most=ENUMERATED, policies=policies)
+            except TooMany:
+                return sample_shown(*given, HISTORIES, self.seed, policies=policies)
+        histories = shown.weight.shape[1]
+        return sample_shown(*given, histories, self.seed, policies=policies)
+
+    def situations_among(self, rule: Rule) -> CrowdSituations:
+        """Situations of the rule's agent where all go by the rule and all know."""
+        return CrowdSituations.of(self.among(rule))
+
+    def with_situations(self, situations: Weighed) -> CrowdPricer:
+        """The same pricer over other situations, to distil from."""
+        assert isinstance(situations, CrowdSituations)
+        return replace(self, situations=situations)
+
+    def agreement(self, rule: Rule) -> Agreed:
+        """How a rule compares with exact play on the same observations."""
+        found = crowd_agreement(self.shown, self._policy(rule))
+        prior, weights = prior_pair(self.prior_plus), self.shown.weights
+        parts = {name: getattr(found, name) for name in ("same", "opposite", "steps_apart")}
+        if weights is None:
+            same, opposite, apart = (float(prior @ part[:, 0]) for part in parts.values())
+            return Agreed(same, opposite, apart)
+        errors = {n: weights.total_error(prior[:, None] * part) for n, part in parts.items()}
+        same, opposite, apart = (float(prior @ weights.mean(p)[0]) for p in parts.values())
+        return Agreed(same, opposite, apart, errors)
 
     def inexact(self) -> Inexact:
         """What in the exact beliefs is not exact."""
@@ -106,26 +186,29 @@ class CrowdPricer(Pricer):
 
     def _policy(self, rule: Rule) -> CrowdPolicy:
         values, others = self.row_values(rule), self.shown.crowd.size - 1
-        return lambda showing: acts(rule, Counted.of(showing, others), values)
+        return lambda seen: acts(rule, Counted.of(seen, others), values)
 
-    def _plain_count(self, showing: Showing) -> Act:
-        worth: FloatArray = np.zeros(len(showing.parent))
-        for kind, plus, minus in zip(
-            self.shown.crowd.kinds, showing.plus, showing.minus, strict=True
-        ):
+    def _plain_count(self, seen: InPublic) -> Act:
+        worth: FloatArray = np.zeros(len(seen))
+        for kind, plus, minus in zip(self.shown.crowd.kinds, seen.plus, seen.minus, strict=True):
             up = sum(share * bound.plus for share, bound in kind.thresholds) - self.shown.prior
             down = sum(share * bound.minus for share, bound in kind.thresholds) - self.shown.prior
             worth = worth + plus * up + minus * down
         return Act(worth)
 
 
-def _alone(_showing: Showing) -> Act:
+def _whole(way: Way, view: Counted) -> Act:
+    """What a way of playing says, one entry for each situation."""
+    said, shape = act_of(way(view)), view.step.shape
+    value = np.broadcast_to(np.asarray(said.value, dtype=float), shape)
+    if said.minus_at is None or said.plus_at is None:
+        return Act(value)
+    return Act(value, np.broadcast_to(said.minus_at, shape), np.broadcast_to(said.plus_at, shape))
+
+
+def _alone(_seen: InPublic) -> Act:
     """Nobody is looked at."""
     return Act(np.zeros(()))
-
-
-def _weights(shown: Shown) -> Weights | None:
-    return None if shown.weight is None else Weights(shown.weight, shown.half)
 
 
 def _played(shown: Shown, policy: CrowdPolicy, rows: int = 0) -> tuple[Tally, tuple[RowUse, ...]]:
@@ -141,7 +224,7 @@ def _played(shown: Shown, policy: CrowdPolicy, rows: int = 0) -> tuple[Tally, tu
         "lean_minus": found.leaning[1] + half,
     }
     assert tuple(parts) == PARTS
-    weights = _weights(shown)
+    weights = shown.weights
     prior = np.array([shown.prior_plus, 1.0 - shown.prior_plus])
 
     def mean(x: FloatArray) -> FloatArray:
@@ -150,7 +233,7 @@ def _played(shown: Shown, policy: CrowdPolicy, rows: int = 0) -> tuple[Tally, tu
     tally = Tally(
         **{name: mean(x) for name, x in parts.items()},
         off_model=float(prior @ mean(found.off_model)),
-        sampled=None if weights is None else Sampled(**parts),
+        sampled=None if weights is None else Sampled(**parts, weights=weights),
     )
     uses = () if found.usage is None else found.usage
     return tally, tuple(

@@ -17,7 +17,7 @@ import numpy as np
 from thumbwright.distill.situations import Weighed
 from thumbwright.distill.views import View, coded_answer
 from thumbwright.exact.arrays import FloatArray, IntArray
-from thumbwright.exact.crowd import Showing, Shown
+from thumbwright.exact.crowd import InPublic, Shown
 from thumbwright.exact.crowd_course import balanced
 from thumbwright.exact.errors import ModelError
 
@@ -54,17 +54,17 @@ class Counted:
         return MappingProxyType({})
 
     @classmethod
-    def of(cls, showing: Showing, others: int) -> Counted:
+    def of(cls, seen: InPublic, others: int) -> Counted:
         """What a member sees of one round."""
         return cls(
-            np.full(len(showing.parent), showing.step),
+            np.full(len(seen), seen.step),
             others,
-            showing.plus.sum(axis=0),
-            showing.minus.sum(axis=0),
-            showing.first,
-            showing.last,
-            showing.first_plus,
-            showing.first_minus,
+            seen.plus.sum(axis=0),
+            seen.minus.sum(axis=0),
+            seen.first,
+            seen.last,
+            seen.first_plus,
+            seen.first_minus,
         )
 
     def state(self, agent: str) -> IntArray:

@@ -5,10 +5,11 @@ Built once by ``distill.job``; frozen; no export computes a figure of its own.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Any
 
 from thumbwright.distill.case import Case
+from thumbwright.distill.reckoned import Reckoned
 from thumbwright.distill.rules import Row, Rule
 
 
@@ -37,6 +38,12 @@ class Figures:
     off_model: float
     errors: dict[str, float] | None = None
 
+    def worse_than(self, other: Figures) -> bool:
+        """Whether these have a noticeably larger risk; False where none is known."""
+        if self.risk is None or other.risk is None:
+            return False
+        return self.risk > other.risk + 1e-9 * abs(other.risk)
+
 
 @dataclass(frozen=True)
 class RowUse:
@@ -47,11 +54,44 @@ class RowUse:
 
 
 @dataclass(frozen=True)
+class Agreed:
+    """How a rule and exact play compare on the same observations, averaged over the prior.
+
+    Attributes
+    ----------
+    same, opposite : float
+        Probability that both end alike, and that one says plus and the other minus.
+    steps_apart : float
+        Mean absolute difference of the steps used.
+    errors : mapping of str to float, or None
+        Standard errors, where histories were sampled.
+    """
+
+    same: float
+    opposite: float
+    steps_apart: float
+    errors: dict[str, float] | None = None
+
+
+@dataclass(frozen=True)
+class Size:
+    """What a rule of so many rows costs, and the share of information that it keeps."""
+
+    rows: int
+    figures: Figures
+    information_kept: float | None
+
+
+@dataclass(frozen=True)
 class FormResult:
     """A distilled rule with its price.
 
     ``notes`` are plain sentences on how it was chosen (rows merged, ceiling met or not).
-    ``information_ceiling`` is the most that any grouping into as many rows could keep.
+    ``information_ceiling`` is the most that any grouping into as many rows could keep. ``agreed``
+    compares it with exact play on the same observations. ``everybody`` is how its agent fares where
+    all who can use the rule do; None where there is nobody else, or it could not be worked out.
+    ``sizes`` are rules of fewer and fewer rows, those of one search, before any polish; empty where
+    they would have taken long.
     """
 
     rule: Rule
@@ -59,6 +99,19 @@ class FormResult:
     uses: tuple[RowUse, ...]
     information_kept: float | None
     information_ceiling: float | None
+    notes: tuple[str, ...]
+    agreed: Agreed | None = None
+    everybody: Figures | None = None
+    sizes: tuple[Size, ...] = ()
+
+
+@dataclass(frozen=True)
+class ReckonedResult:
+    """A rule that is reckoned and not looked up in rows, with its price."""
+
+    rule: Reckoned
+    figures: Figures
+    information_kept: float | None
     notes: tuple[str, ...]
 
 
@@ -200,5 +253,12 @@ class Findings:
     caveats: tuple[str, ...]
     near_tie_mass: float
     example: tuple[dict[str, Any], ...]
+    reckoned: dict[str, ReckonedResult] = field(default_factory=dict)
     doubts: tuple[Doubted, ...] = ()
     not_doubted: tuple[str, ...] = ()
+
+    def _repr_html_(self) -> str:
+        """Tables and the chart, for notebooks."""
+        from thumbwright.distill.sheet.notebook import findings_html
+
+        return findings_html(self)

@@ -6,6 +6,7 @@ alone; then what the sheet needs to explain itself: worth curves, an example, ca
 
 from __future__ import annotations
 
+from dataclasses import replace
 from importlib.metadata import version
 
 import numpy as np
@@ -13,15 +14,25 @@ import numpy as np
 from thumbwright.distill.assemble import NO_LIMITS, Limits
 from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
+from thumbwright.distill.crowds import HISTORIES
 from thumbwright.distill.doubts import doubted
 from thumbwright.distill.example import example
-from thumbwright.distill.findings import Doubted, Figures, Findings, FormResult, WorthCurve
-from thumbwright.distill.forms import MODULES, Wanted, form
+from thumbwright.distill.findings import (
+    Doubted,
+    Figures,
+    Findings,
+    FormResult,
+    ReckonedResult,
+    WorthCurve,
+)
+from thumbwright.distill.forms import MODULES, Distilled, Wanted
+from thumbwright.distill.forms.making import make, wanted_of
 from thumbwright.distill.forms.runs import alone_rows
 from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.pricing import pricer_of
 from thumbwright.distill.rules import SHOWN, Rule
 from thumbwright.distill.situations import Situations, Weighed, values_of
+from thumbwright.distill.sizes import come_free, priced_sizes
 from thumbwright.distill.tallies import Tally
 from thumbwright.exact.engine import Progress
 from thumbwright.exact.errors import ModelError
@@ -35,16 +46,18 @@ MOST_CURVES = 9
 def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIMITS) -> Findings:
     """Everything that is printed about the rule's agent of a case."""
     pricer, missing = pricer_of(case, progress, limits)
-    wanted = Wanted(case.rule.rows, tuple(case.rule.inputs), case.rule.max_accuracy_lost)
-    made, left_out = _forms(pricer, case, wanted, progress)
+    wanted = wanted_of(case, pricer)
+    made, reckoned, left_out = _forms(pricer, case, wanted, progress)
     forms = {name: one for name, (one, _) in made.items()}
     main, main_tally = next(iter(made.values()))
     exact = pricer.figures(pricer.exact_tally)
     plain = pricer.figures(pricer.plain_count_tally())
     alone = pricer.figures(pricer.alone_tally)
     evidence = _evidence(pricer)
-    caveats = _caveats(pricer, [*(f.figures for f in forms.values()), plain, alone], missing)
-    caveats = (*caveats, *left_out)
+    figures = [f.figures for f in forms.values()] + [f.figures for f in reckoned.values()]
+    figures += [plain, alone]
+    figures += [f.everybody for f in forms.values() if f.everybody is not None]
+    caveats = (*_caveats(pricer, figures, missing), *left_out)
     doubts, not_doubted = _doubts(pricer, case, main.rule, limits, progress)
     return Findings(
         case=case,
@@ -68,10 +81,11 @@ def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIM
         alone_rows=alone_rows(pricer) if evidence.countable and evidence.alpha[0] > 0 else (),
         worth_curves=worth_curves(pricer, case),
         labels=evidence.labels,
-        is_exact=_is_exact(pricer, [*(f.figures for f in forms.values()), plain, alone]),
+        is_exact=_is_exact(pricer, figures),
         caveats=caveats,
         near_tie_mass=pricer.inexact().near_tie_mass,
         example=example(pricer, main.rule) if isinstance(pricer, NetworkPricer) else (),
+        reckoned=reckoned,
         doubts=doubts,
         not_doubted=not_doubted,
     )
@@ -87,38 +101,65 @@ def _doubts(
 
 def _forms(
     pricer: Pricer, case: Case, wanted: Wanted, progress: Progress | None
-) -> tuple[dict[str, tuple[FormResult, Tally]], tuple[str, ...]]:
+) -> tuple[dict[str, tuple[FormResult, Tally]], dict[str, ReckonedResult], tuple[str, ...]]:
     """Every form asked for that this case can have; sentences on those it cannot.
 
-    Raises ModelError where it can have none.
+    Raises ModelError where it can have none of rows.
     """
     forms: dict[str, tuple[FormResult, Tally]] = {}
+    reckoned: dict[str, ReckonedResult] = {}
     refusals: list[ModelError] = []
     for name in MODULES:
         if name in case.rule.forms:
             try:
-                forms[name] = _form_result(pricer, name, wanted, progress)
+                asked = replace(wanted, every_size=come_free(name, pricer, wanted))
+                made = make(name, pricer, asked, progress)
             except ModelError as refusal:
                 refusals.append(refusal)
+                continue
+            if isinstance(made.rule, Rule):
+                forms[name] = _form_result(pricer, made.rule, made, progress)
+            else:
+                figures = pricer.price(made.rule)
+                kept = made.information_kept
+                reckoned[name] = ReckonedResult(made.rule, figures, kept, made.notes)
     if not forms:
         raise refusals[0]
-    return forms, tuple(f"A form is left out: {refusal}." for refusal in refusals)
+    return forms, reckoned, tuple(f"A form is left out: {refusal}." for refusal in refusals)
 
 
 def _form_result(
-    pricer: Pricer, name: str, wanted: Wanted, progress: Progress | None
+    pricer: Pricer, rule: Rule, made: Distilled, progress: Progress | None
 ) -> tuple[FormResult, Tally]:
-    made = form(name).distil(pricer, wanted, progress)
-    found, uses = pricer.rule_uses(made.rule)
+    found, uses = pricer.rule_uses(rule)
     result = FormResult(
-        made.rule,
+        rule,
         pricer.figures(found),
         uses,
         made.information_kept,
         made.information_ceiling,
         made.notes,
+        pricer.agreement(rule),
+        _everybody(pricer, rule, progress),
+        priced_sizes(pricer, made.sizes),
     )
     return result, found
+
+
+def _everybody(pricer: Pricer, rule: Rule, progress: Progress | None) -> Figures | None:
+    """How the agent fares where all who can use its rule do; None where that is nobody else."""
+    users = pricer.users(rule)
+    if len(users) < 2:
+        return None
+    if progress:
+        progress("everybody", 0, 1)
+    try:
+        found = pricer.figures(pricer.together_tally(rule, users))
+    except ModelError:
+        found = None
+    if progress:
+        progress("everybody", 1, 1)
+    return found
 
 
 def _evidence(pricer: Pricer) -> Evidence:
@@ -147,7 +188,9 @@ def _leans(group: Group, seen: tuple[str, ...]) -> dict[str, str]:
 
 
 def _is_exact(pricer: Pricer, figures: list[Figures]) -> bool:
-    return pricer.inexact().nothing and all(f.off_model == 0.0 for f in figures)
+    sampled = any(f.errors is not None for f in figures)
+    odd = any(f.off_model > 0.0 for f in figures)
+    return pricer.inexact().nothing and not sampled and not odd
 
 
 def _caveats(pricer: Pricer, figures: list[Figures], missing: str | None) -> tuple[str, ...]:
@@ -174,6 +217,12 @@ def _caveats(pricer: Pricer, figures: list[Figures], missing: str | None) -> tup
         said.append(
             f"What the others show was sampled: {histories:,} public histories with seed {seed}, "
             "the beliefs along each of them exact. Figures carry standard errors and are not exact."
+        )
+    elif any(f.errors is not None for f in figures):
+        said.append(
+            f"What happens where everybody uses the rule was sampled, {HISTORIES:,} public "
+            "histories of too many to enumerate; those figures carry standard errors and are not "
+            "exact."
         )
     odd = max((f.off_model for f in figures), default=0.0)
     if odd > 0:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import asdict
+from dataclasses import asdict, dataclass
 from pathlib import Path
 from typing import Any
 
@@ -11,9 +11,11 @@ import numpy as np
 from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.faults import Faults
+from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.rule_reading import read_rule
 from thumbwright.distill.rules import SHOWN, Rule
 from thumbwright.distill.situations import Weighed
+from thumbwright.distill.tallies import Tally
 from thumbwright.exact.arrays import BoolArray
 
 MOST_TOLD = 5000
@@ -23,7 +25,26 @@ KNOWN = ("exact", "plain-count", "alone")
 """Ways of playing that have a name and need no file."""
 
 
-def priced(case: Case, pricer: Pricer, rule: str) -> dict[str, Any]:
+@dataclass(frozen=True)
+class Use:
+    """In whose hands a rule is.
+
+    Attributes
+    ----------
+    by : str
+        "one", the rule's agent alone; "everybody" who can use it; or ids joined by commas.
+    others : str or None
+        Path of a rule that all others go by who can; None is exact play.
+    """
+
+    by: str = "one"
+    others: str | None = None
+
+
+ALONE_IN_USE = Use()
+
+
+def priced(case: Case, pricer: Pricer, rule: str, use: Use = ALONE_IN_USE) -> dict[str, Any]:
     """Figures of a rule beside exact play, plain count and being alone.
 
     Parameters
@@ -32,38 +53,46 @@ def priced(case: Case, pricer: Pricer, rule: str) -> dict[str, Any]:
     pricer : Pricer
     rule : str
         One of :data:`KNOWN`, or the path of a CSV file.
+    use : Use
+        Who else goes by it, and by what the rest go.
 
     Returns
     -------
     dict
-        ``figures``, ``others`` (name to figures), ``rows``, ``remarks``, ``basis``.
+        ``figures``, ``others`` (name to figures), ``rows``, ``remarks``, ``basis``; of a rule from
+        a file ``agreement`` with exact play; where more than its agent use it ``used_by``, and in
+        a network ``agents``, how each of them fares.
 
     Raises
     ------
     Faults
-        Where the file cannot be read as a rule of this case, or its rows leave gaps or overlap.
+        Where the file cannot be read as a rule of this case, its rows leave gaps or overlap, or it
+        cannot be used by those who are to.
     """
+    more: dict[str, Any] = {}
     plain = pricer.plain_count_tally()
     others = {"exact": pricer.exact_tally, "plain-count": plain, "alone": pricer.alone_tally}
     rows: list[dict[str, Any]] = []
     remarks: list[str] = []
     if rule in KNOWN:
+        if use != ALONE_IN_USE:
+            raise Faults([f"{rule}: only a rule from a file can be in several hands"])
         tally = others[rule]
     else:
-        read = _read(case, pricer, rule)
-        faults = _gaps_and_overlaps(pricer, read, rule)
-        if faults:
-            raise Faults(faults)
-        if read.has_bars:
-            remarks += _refused_bars(pricer, rule)
+        read, remarks = handed_in(case, pricer, rule)
         tally, uses = pricer.rule_uses(read)
         rows_here = pricer.situations.rows_of(read)
-        for number, (row, use) in enumerate(zip(read.rows, uses, strict=True)):
-            rows.append({"row": number + 1, **_plain_row(row), **asdict(use)})
+        for number, (row, in_force) in enumerate(zip(read.rows, uses, strict=True)):
+            rows.append({"row": number + 1, **_plain_row(row), **asdict(in_force)})
             if not (rows_here == number).any():
                 remarks.append(f"row {number + 1} never applies: no such situation can arise")
+        more["agreement"] = asdict(pricer.agreement(read))
+        if use != ALONE_IN_USE:
+            tally, told = _in_use(case, pricer, read, use)
+            more |= told
+            remarks.append("how often rows are used, and agreement, are those of a single user")
     figures = pricer.figures(tally)
-    if figures.risk is not None and figures.benefit_kept is not None and figures.benefit_kept < 0:
+    if figures.worse_than(pricer.figures(pricer.alone_tally)):
         remarks.append("this rule is worse than ignoring the neighbours")
     return {
         "figures": asdict(figures),
@@ -71,7 +100,59 @@ def priced(case: Case, pricer: Pricer, rule: str) -> dict[str, Any]:
         "rows": rows,
         "remarks": remarks,
         "basis": pricer.basis(tally),
+        **more,
     }
+
+
+def handed_in(case: Case, pricer: Pricer, path: str) -> tuple[Rule, list[str]]:
+    """Read a rule that must be whole, with remarks on what it is.
+
+    Raises Faults where the file cannot be read as a rule of this case, or its rows leave gaps or
+    overlap.
+    """
+    read = _read(case, pricer, path)
+    faults = _gaps_and_overlaps(pricer, read, path)
+    if faults:
+        raise Faults(faults)
+    return read, _refused_bars(pricer, path) if read.has_bars else []
+
+
+def _in_use(case: Case, pricer: Pricer, rule: Rule, use: Use) -> tuple[Tally, dict[str, Any]]:
+    """How the rule's agent fares where others use it too, and how they do."""
+    able = pricer.users(rule)
+    users = {"one": (pricer.agent,), "everybody": able}.get(use.by)
+    if users is None:
+        asked = [name.strip() for name in use.by.split(",")]
+        allowed = f"(allowed: one, everybody, or some of {', '.join(able)}, joined by commas)"
+        unable = [name for name in asked if name not in able]
+        if unable:
+            raise Faults([f"--used-by: {', '.join(unable)} cannot use this rule {allowed}"])
+        if pricer.agent not in asked:
+            raise Faults(
+                [f"--used-by: {pricer.agent}, whose figures are priced, is missing {allowed}"]
+            )
+        users = tuple(name for name in able if name in asked)
+    others = None
+    if use.others is not None:
+        others = _read(case, pricer, use.others)
+        faults = _gaps_and_overlaps(pricer, others, use.others)
+        if faults:
+            raise Faults(faults)
+    told: dict[str, Any] = {"used_by": list(users), "rule_of_others": use.others}
+    if isinstance(pricer, NetworkPricer):
+        tallies = pricer.together_tallies(rule, users, others)
+        told["agents"] = {
+            key: {
+                side: {
+                    name: float(getattr(one, name)[k])
+                    for name in ("plus", "minus", "undecided", "steps")
+                }
+                for k, side in enumerate(("given_plus", "given_minus"))
+            }
+            for key, one in tallies.items()
+        }
+        return tallies[pricer.agent], told
+    return pricer.together_tally(rule, users, others), told
 
 
 def _read(case: Case, pricer: Pricer, path: str) -> Rule:

@@ -109,6 +109,12 @@ class Rule:
         """Whether the rows look at steps, shown states and thresholds only."""
         return not any(row.ranges or row.first_answer is not None for row in self.rows)
 
+    def _repr_html_(self) -> str:
+        """The rows as a table, for notebooks."""
+        from thumbwright.distill.sheet.notebook import rule_html
+
+        return rule_html(self)
+
     @property
     def has_bars(self) -> bool:
         """Whether the rows hold bars on the own count rather than values in nats."""

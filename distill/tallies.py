@@ -23,7 +23,10 @@ PARTS = ("plus", "minus", "undecided", "steps", "lean_plus", "lean_minus")
 
 @dataclass(frozen=True)
 class Sampled:
-    """What happened in each of H sampled histories; fields as in :class:`Tally`, shape (2, H)."""
+    """What happened in each of H sampled histories; fields as in :class:`Tally`, shape (2, H).
+
+    ``weights`` are those of the histories.
+    """
 
     plus: FloatArray
     minus: FloatArray
@@ -31,6 +34,7 @@ class Sampled:
     steps: FloatArray
     lean_plus: FloatArray
     lean_minus: FloatArray
+    weights: Weights
 
 
 @dataclass(frozen=True)
@@ -117,19 +121,19 @@ def risk_of(losses: Losses, prior_plus: float) -> Figure:
     return Figure(weights)
 
 
-def error_of(figure: Figure, tally: Tally, weights: Weights) -> float | None:
-    """Standard error of a figure; None where nothing was sampled."""
+def error_of(figure: Figure, tally: Tally) -> float:
+    """Standard error of a figure; 0 where nothing was sampled."""
     if tally.sampled is None:
-        return None
-    return weights.total_error(figure.by_history(tally.sampled))
+        return 0.0
+    return tally.sampled.weights.total_error(figure.by_history(tally.sampled))
 
 
-def error_of_difference(figure: Figure, one: Tally, other: Tally, weights: Weights) -> float | None:
-    """Standard error of the difference of two figures over the same histories."""
-    if one.sampled is None or other.sampled is None:
-        return None
-    difference = figure.by_history(one.sampled) - figure.by_history(other.sampled)
-    return weights.total_error(difference)
+def error_of_difference(figure: Figure, one: Tally, other: Tally) -> float:
+    """Standard error of the difference of two figures, paired where the histories are the same."""
+    if one.sampled and other.sampled and one.sampled.weights is other.sampled.weights:
+        difference = figure.by_history(one.sampled) - figure.by_history(other.sampled)
+        return one.sampled.weights.total_error(difference)
+    return float(np.hypot(error_of(figure, one), error_of(figure, other)))
 
 
 def tally(track: Track, off_model: float = 0.0) -> Tally:

@@ -169,11 +169,20 @@ def sheet_text(findings: Findings, written: Sequence[Path]) -> str:
             (f"{name}, {len(form.rule.rows)} rows", form.figures)
             for name, form in findings.forms.items()
         ),
+        *(
+            (f"{name}, {len(one.rule.parameters)} numbers", one.figures)
+            for name, one in findings.reckoned.items()
+        ),
         ("full calculation", findings.exact),
         ("undecided neighbours ignored", findings.plain_count),
         ("everybody ignored", findings.alone),
     ]
     lines += figures_table(named, case.question.plus, case.question.minus)
+    lines += [
+        f"The {name} is worse than ignoring the neighbours."
+        for name, form in findings.forms.items()
+        if form.figures.worse_than(findings.alone)
+    ]
     if not findings.watching_is_worth:
         lines.append("Watching is worth nothing here.")
     lines += doubts_text(findings)
@@ -265,11 +274,11 @@ def outcomes_text(found: dict[str, Any]) -> str:
             f"{found['histories']:,} public histories sampled with seed "
             f"{found['sampled_with_seed']}, the beliefs along each exact; ± is one standard error"
         )
-    lines.append("exact" if found["exact"] else _INEXACT)
+    lines.append("exact" if found["exact"] else INEXACT)
     return "\n".join(lines)
 
 
-_INEXACT = "not exact: evidence split, or histories dropped or sampled"
+INEXACT = "not exact: evidence split, or histories dropped or sampled"
 
 
 def _told_apart(agents: list[dict[str, Any]]) -> list[tuple[str, dict[str, Any]]]:
@@ -322,7 +331,7 @@ def _group_lines(found: dict[str, Any]) -> list[str]:
 def price_text(found: dict[str, Any]) -> str:
     """A price beside the other ways of playing, then the use of each row and what is odd."""
     named = [(f"this rule ({found['rule']})", found["figures"]), *found["others"].items()]
-    lines = [f"{found['case']}: {found['agent']} uses the rule, the others stay exact", ""]
+    lines = [f"{found['case']}: {_who_uses(found)}", ""]
     lines += figures_table(named, "plus", "minus")
     figures = found["figures"]
     lines.append("")
@@ -330,8 +339,26 @@ def price_text(found: dict[str, Any]) -> str:
         f"accuracy lost {signed(figures['accuracy_lost'], 6)}, delay added "
         f"{signed(figures['delay_added'], 4)} steps, against exact"
     )
+    agreed = found.get("agreement")
+    if agreed is not None:
+        errors = agreed["errors"] or {}
+        same, opposite = (
+            with_error(agreed[name], errors.get(name), 2, " %") for name in ("same", "opposite")
+        )
+        apart = with_error(agreed["steps_apart"], errors.get("steps_apart"), 3)
+        lines.append(
+            f"on the same observations it ends as exact play does in {same} of outings, opposite "
+            f"in {opposite}; {apart} steps apart"
+        )
     if not found["watching_is_worth_something"]:
         lines.append("watching is worth nothing here: no benefit is given in per cent")
+    if "agents" in found:
+        rows = [("agent", "given", "plus", "minus", "undecided", "mean step")]
+        for name, sides in found["agents"].items():
+            for key, one in sides.items():
+                ends = (f"{one[end]:.6f}" for end in ("plus", "minus", "undecided"))
+                rows.append((name, key.removeprefix("given_"), *ends, f"{one['steps']:.3f}"))
+        lines += ["", *columns(rows, right=range(2, 6))]
     if found["rows"]:
         uses = [("row", "steps in force per outing", "answers given under it, of 100")]
         uses += [
@@ -341,10 +368,18 @@ def price_text(found: dict[str, Any]) -> str:
         lines += ["", *columns(uses, right=range(3))]
     losses = found["losses"]
     if losses is not None:
-        lines += ["", _losses_text(losses)]
+        lines += ["", losses_text(losses)]
     lines += [f"Note: {text}" for text in found["remarks"]]
-    lines.append("exact" if found["exact"] else f"{_INEXACT}, or displays read off-model")
+    lines.append("exact" if found["exact"] else f"{INEXACT}, or displays read off-model")
     return "\n".join(lines)
+
+
+def _who_uses(found: dict[str, Any]) -> str:
+    users, others = found.get("used_by"), found.get("rule_of_others")
+    rest = "the others stay exact" if others is None else f"the others who can go by {others}"
+    if not users or users == [found["agent"]]:
+        return f"{found['agent']} uses the rule, {rest}"
+    return f"{', '.join(users)} use the rule, {rest}; the figures are those of {found['agent']}"
 
 
 def signed(number: float, digits: int) -> str:
@@ -352,7 +387,8 @@ def signed(number: float, digits: int) -> str:
     return f"{number:+.{digits}f}" if round(number, digits) else f"{0:.{digits}f}"
 
 
-def _losses_text(losses: dict[str, Any]) -> str:
+def losses_text(losses: dict[str, Any]) -> str:
+    """The losses used, with their ranges where they were inferred."""
     text = (
         f"losses: false plus {losses['false_plus']:.4g}, false minus {losses['false_minus']:.4g}, "
         f"{losses['per_step']:.4g} per step"

@@ -219,4 +219,4 @@ class SilentReader(Reader):
         """Nothing."""
         histories = scene.log_shown[0].size
         never = np.zeros((len(scene.walk.count), histories), dtype=bool)
-        return Reading(never, never, np.zeros(histories), compared=False)
+        return Reading(never, never, np.zeros(histories))

@@ -12,12 +12,7 @@ import math
 
 import numpy as np
 
-from thumbwright.exact.crowd_adopt import (
-    CrowdAdoption,
-    CrowdPolicy,
-    adopt_crowd,
-    exact_member,
-)
+from thumbwright.exact.crowd_adopt import CrowdAdoption, adopt_crowd, exact_member
 from thumbwright.exact.crowd_course import (
     MOST,
     Enumerated,
@@ -42,7 +37,9 @@ from thumbwright.exact.crowd_held import (
     sample_situations,
 )
 from thumbwright.exact.crowd_kinds import Crowd, Kind, check_play, kinds_of
-from thumbwright.exact.crowd_play import Histories, Record
+from thumbwright.exact.crowd_play import Histories
+from thumbwright.exact.crowd_policy import CrowdPolicy, InPublic
+from thumbwright.exact.crowd_record import Record
 from thumbwright.exact.crowd_shown import Showing, Shown, enumerate_shown, sample_shown
 
 __all__ = [
@@ -51,6 +48,7 @@ __all__ = [
     "CrowdPlay",
     "CrowdPolicy",
     "CrowdSituations",
+    "InPublic",
     "Kind",
     "KindPlay",
     "Mean",

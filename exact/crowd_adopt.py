@@ -10,19 +10,16 @@ member's own observations can bring: only what others do is sampled.
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
 
-from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
+from thumbwright.exact.arrays import FloatArray, IntArray
+from thumbwright.exact.crowd_policy import CrowdPolicy, InPublic, reached, value_of
 from thumbwright.exact.crowd_shown import Showing, Shown
 from thumbwright.exact.play import Act
 from thumbwright.exact.player import leanings
-from thumbwright.exact.walk import TIE, Walk
-
-CrowdPolicy = Callable[[Showing], Act]
-"""What a member makes of all histories of a round; it must not look at what it is not shown."""
+from thumbwright.exact.walk import Walk
 
 
 @dataclass(frozen=True)
@@ -61,7 +58,7 @@ def adopt_crowd(shown: Shown, policy: CrowdPolicy, rows: int = 0) -> CrowdAdopti
     ----------
     shown : Shown
     policy : callable
-        ``policy(showing) -> act``; the arrays of the act have shape (H,).
+        ``policy(in_public) -> act``.
     rows : int
         If above 0, usage is counted for this many lines.
 
@@ -79,9 +76,10 @@ def adopt_crowd(shown: Shown, policy: CrowdPolicy, rows: int = 0) -> CrowdAdopti
     return CrowdAdoption(**joined, usage=np.concatenate(usage, axis=-1) if usage else None)
 
 
-def exact_member(showing: Showing) -> Act:
-    """Exact play as a policy."""
-    return Act(showing.worth)
+def exact_member(in_public: InPublic) -> Act:
+    """Exact play as a policy of the member that a :class:`Shown` is about."""
+    assert isinstance(in_public, Showing)
+    return Act(in_public.worth)
 
 
 class _Adopter:
@@ -158,26 +156,16 @@ class _Adopter:
         """
         size, walk = len(showing.parent), self._walk
         act = self._policy(showing)
-        self._value = np.broadcast_to(np.asarray(act.value, dtype=float), (size,))
+        self._value = value_of(act, size)
         if not walk.observed:
             # Nobody answers before the first observation, whatever is shown.
             return np.zeros((2, 2, size)), None
-        plus, minus = self._reached(act, size)
+        plus, minus = reached(walk, self._prior, act, size)
         row = None if act.row is None else np.broadcast_to(act.row, (size,))
         gone = walk.divide(plus, minus)[:2]
         if self._certain is not None:
             gone, self._certain = np.logaddexp(gone, self._certain), None
         return np.stack([self._weigh(showing, one) for one in gone]), row
-
-    def _reached(self, act: Act, size: int) -> tuple[BoolArray, BoolArray]:
-        walk = self._walk
-        if act.minus_at is None or act.plus_at is None:
-            belief = self._prior + walk.tally[:, None] + self._value[None, :]
-            with np.errstate(invalid="ignore"):
-                return belief >= walk.high[:, None] - TIE, belief <= walk.low[:, None] + TIE
-        count = walk.count[:, None]
-        low, high = (np.broadcast_to(bar, (size,)) for bar in (act.minus_at, act.plus_at))
-        return count >= high, count <= low
 
     def _weigh(self, showing: Showing, log_own: FloatArray) -> FloatArray:
         return np.exp(log_own + showing.log_shown)

@@ -15,7 +15,8 @@ from functools import lru_cache
 import numpy as np
 
 from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
-from thumbwright.exact.crowd_play import Choice, Histories, Record, times
+from thumbwright.exact.crowd_play import Choice, Histories, times
+from thumbwright.exact.crowd_record import Record
 from thumbwright.exact.errors import ModelError
 
 Watch = Callable[[int, int, Histories], None]
@@ -98,7 +99,7 @@ def play(
         while len(columns):
             if watch:
                 watch(step, round_, histories)
-            choice = histories.decide(columns)
+            choice = histories.decide(columns, round_)
             if chosen:
                 chosen(histories, choice)
             columns = course.go_on(histories, choice, step, round_)

@@ -18,7 +18,7 @@ import numpy as np
 
 from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.crowd_kinds import Crowd
-from thumbwright.exact.crowd_play import Record
+from thumbwright.exact.crowd_record import Record
 from thumbwright.exact.outcomes import Outcome
 from thumbwright.exact.together import Together
 

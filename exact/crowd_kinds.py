@@ -73,6 +73,11 @@ class Crowd:
             raise ModelError("two members of a crowd have the same id")
 
     @property
+    def members(self) -> tuple[str, ...]:
+        """Ids of all, kind by kind."""
+        return tuple(member for kind in self.kinds for member in kind.members)
+
+    @property
     def size(self) -> int:
         """Number of agents."""
         return sum(kind.size for kind in self.kinds)

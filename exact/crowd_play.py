@@ -20,117 +20,21 @@ on showing the same. Play and probabilities are the same; only idle rounds are m
 
 from __future__ import annotations
 
-from dataclasses import dataclass, fields
-from typing import Any
+from collections.abc import Sequence
+from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.crowd_kinds import Crowd
+from thumbwright.exact.crowd_policy import CrowdPolicy, InPublic, reached, value_of
+from thumbwright.exact.crowd_record import Record
+from thumbwright.exact.play import Act
 from thumbwright.exact.player import leanings
 from thumbwright.exact.walk import NEAR, TIE, Walk
 
 _ROUNDING = 1e-14
 """What rounding may add to a belief per member of the crowd (nats); no near tie below that."""
-
-
-@dataclass
-class Record:
-    """What has happened so far in each of H public histories; the last axis is the history.
-
-    Attributes
-    ----------
-    label : ndarray of int, shape (H,)
-        Number of the sampled history; 0 where histories are enumerated.
-    log_weight : ndarray of float, shape (2, H)
-        Log probability given plus and given minus; not kept up where histories are sampled.
-    plus, minus : ndarray of int, shape (K, H)
-        Members of each kind that have committed.
-    steps : ndarray of int, shape (K, H)
-        Sum of the steps at which they did.
-    first, first_round, last : ndarray of int, shape (H,)
-        Step and round of the first commitment and step of the last so far; 0 where there is none.
-    followers : ndarray of int, shape (H,)
-        Commitments in the step of the first, after its round.
-    first_plus, first_minus : ndarray of int, shape (H,)
-        Commitments to plus and to minus at the very moment of the first.
-    origin : ndarray of int, shape (H,)
-        Where the history, or the one it goes on from, stood when this was last written down.
-    near : ndarray of float, shape (2, H)
-        Expected number of members decided by the tie rule and no clear margin, given the history.
-    lean : ndarray of float, shape (K, 3, 2, H)
-        Expected number undecided at the horizon whose belief favours plus, minus, neither; given
-        plus and given minus.
-    ratio : ndarray of float, shape (H,)
-        Log ratio (nats) of the probability given plus and given minus, once the history is over.
-    """
-
-    label: IntArray
-    log_weight: FloatArray
-    plus: IntArray
-    minus: IntArray
-    steps: IntArray
-    first: IntArray
-    first_round: IntArray
-    last: IntArray
-    followers: IntArray
-    first_plus: IntArray
-    first_minus: IntArray
-    origin: IntArray
-    near: FloatArray
-    lean: FloatArray
-    ratio: FloatArray
-
-    @classmethod
-    def blank(cls, kinds: int, label: IntArray) -> Record:
-        """Nothing has happened yet."""
-        size = len(label)
-        sizes = {"plus": (kinds, size), "minus": (kinds, size), "steps": (kinds, size)}
-        names = ("first", "first_round", "last", "followers", "first_plus", "first_minus", "origin")
-        times = dict.fromkeys(names, (size,))
-        whole = {name: np.zeros(shape, dtype=np.int64) for name, shape in (sizes | times).items()}
-        return cls(
-            label=label,
-            log_weight=np.zeros((2, size)),
-            near=np.zeros((2, size)),
-            lean=np.zeros((kinds, 3, 2, size)),
-            ratio=np.zeros(size),
-            **whole,
-        )
-
-    def take(self, index: IntArray | BoolArray) -> Record:
-        """The chosen histories, some perhaps several times."""
-        return Record(**{name: array[..., index] for name, array in self.arrays().items()})
-
-    def note(
-        self, columns: IntArray, plus: IntArray, minus: IntArray, step: int, round_: int
-    ) -> None:
-        """Count commitments, shape (K, number of columns), of one round."""
-        self.plus[:, columns] += plus
-        self.minus[:, columns] += minus
-        self.steps[:, columns] += step * (plus + minus)
-        total = (plus + minus).sum(axis=0)
-        moved, number = columns[total > 0], total[total > 0]
-        new = self.first[moved] == 0
-        at_once = ~new & (self.first[moved] == step)
-        self.followers[moved[at_once]] += number[at_once]
-        self.first[moved[new]], self.first_round[moved[new]] = step, round_
-        for came, said in ((self.first_plus, plus), (self.first_minus, minus)):
-            came[moved[new]] = said.sum(axis=0)[total > 0][new]
-        self.last[moved] = step
-
-    def arrays(self) -> dict[str, NDArray[Any]]:
-        """All of them by name."""
-        return {field.name: getattr(self, field.name) for field in fields(self)}
-
-    @staticmethod
-    def join(records: list[Record]) -> Record:
-        """All histories of several records."""
-        parts = [record.arrays() for record in records]
-        return Record(
-            **{name: np.concatenate([part[name] for part in parts], axis=-1) for name in parts[0]}
-        )
 
 
 @dataclass(frozen=True)
@@ -174,6 +78,9 @@ class Histories:
     lasting : bool
         Whether the member that is held goes on showing undecided where the others' model says it
         cannot. To them its silence is no news then: what they have been shown is worth what it was.
+    policies : sequence of (callable or None), optional
+        Per kind what its members go by, ``policy(in_public) -> act``; None is exact play. All know
+        what all go by, so exact members reason by what the others do.
 
     Attributes
     ----------
@@ -191,10 +98,13 @@ class Histories:
         labels: IntArray,
         held: int | None = None,
         lasting: bool = False,
+        policies: Sequence[CrowdPolicy | None] | None = None,
     ) -> None:
         self._agents = [kind.agent for kind in crowd.kinds]
         self._prior, self.horizon, self.held = prior, horizon, held
         self._lasting = lasting and held is not None
+        self._policies = [None] * len(crowd.kinds) if policies is None else [*policies]
+        self.by_policies = all(policy is not None for policy in self._policies)
         self._near = max(NEAR, _ROUNDING * crowd.size)
         kinds, size = len(crowd.kinds), len(labels)
         self._walks = [
@@ -215,6 +125,7 @@ class Histories:
         self._said: FloatArray = np.zeros(size)
         self._value: FloatArray = np.zeros((kinds, size))
         self._certain: list[FloatArray | None] = [None] * kinds
+        self._step = 0
 
     def __len__(self) -> int:
         return len(self._said)
@@ -242,6 +153,7 @@ class Histories:
 
     def observe(self, step: int) -> None:
         """The private observations of a step."""
+        self._step = step
         for k, (walk, agent) in enumerate(zip(self._walks, self._agents, strict=True)):
             for _ in range(agent.looks_at(step)):
                 certain = walk.observe()
@@ -249,7 +161,7 @@ class Histories:
                     met = self._certain[k]
                     self._certain[k] = certain if met is None else np.logaddexp(met, certain)
 
-    def decide(self, columns: IntArray) -> Choice:
+    def decide(self, columns: IntArray, round_: int = 0) -> Choice:
         """Cut what commits, in the chosen histories, and say what may happen there.
 
         Everybody decides on what was shown before, so all worths are taken first.
@@ -266,8 +178,9 @@ class Histories:
         for k in range(kinds):
             value = self.worth(k, columns)
             self._value[k, columns] = np.where(told, value, self._value[k, columns])
+        acts = self._acts(columns, round_)
         for k in range(kinds):
-            divided = self._cut(k, columns, undecided[k])
+            divided = self._cut(k, columns, undecided[k], acts[k])
             if divided is None:
                 continue
             with np.errstate(invalid="ignore"):
@@ -278,31 +191,62 @@ class Histories:
         committing = np.isfinite(log_share[:, :2]).any(axis=(1, 2)) & undecided
         return Choice(columns, log_share, ratio, committing.any(axis=0) & able)
 
-    def _cut(self, k: int, columns: IntArray, undecided: BoolArray) -> FloatArray | None:
+    def _acts(self, columns: IntArray, round_: int) -> list[Act | None]:
+        """What the policies of kinds make of the chosen histories."""
+        if all(policy is None for policy in self._policies):
+            return [None] * len(self._policies)
+        record = self.record
+        seen = InPublic(
+            self._step,
+            round_,
+            record.plus[:, columns],
+            record.minus[:, columns],
+            record.first[columns],
+            record.last[columns],
+            record.first_plus[columns],
+            record.first_minus[columns],
+        )
+        acts = [None if policy is None else policy(seen) for policy in self._policies]
+        for k, act in enumerate(acts):
+            if act is not None:
+                self._value[k, columns] = value_of(act, len(columns))
+        return acts
+
+    def _cut(
+        self, k: int, columns: IntArray, undecided: BoolArray, act: Act | None
+    ) -> FloatArray | None:
         """Log weights (3, 2, A) of committing now to plus, to minus, of going on; None if none."""
         walk, certain = self._walks[k], self._certain[k]
         self._certain[k] = None
         if not undecided.any() or not walk.observed:
             return None
-        value, own = self._value[k, columns], self._prior + walk.tally
-        bars = (walk.high - own)[:, None], (walk.low - own)[:, None]
-        plus = (value[None, :] >= bars[0] - TIE) & undecided
-        minus = (value[None, :] <= bars[1] + TIE) & undecided
+        some = columns if len(columns) < len(self) else None
+        value = self._value[k, columns]
+        plus, minus = reached(walk, self._prior, act or Act(value), len(columns))
+        plus, minus = plus & undecided, minus & undecided
         if certain is None and not plus.any() and not minus.any():
             return None
-        some = columns if len(columns) < len(self) else None
-        for mask, bar in ((plus, bars[0]), (minus, bars[1])):
-            gap = np.abs(value[None, :] - bar)
+        if act is None:
+            self._note_near_ties(k, columns, (plus, minus), some)
+        divided = walk.divide(plus, minus, some)
+        if certain is not None:
+            divided[:2] = np.logaddexp(divided[:2], certain[..., columns])
+        return divided
+
+    def _note_near_ties(
+        self, k: int, columns: IntArray, masks: tuple[BoolArray, BoolArray], some: IntArray | None
+    ) -> None:
+        """Count members that the tie rule decides, and no clear margin."""
+        walk = self._walks[k]
+        value, own = self._value[k, columns], self._prior + walk.tally
+        for mask, bar in zip(masks, (walk.high - own, walk.low - own), strict=True):
+            gap = np.abs(value[None, :] - bar[:, None])
             near = mask & (gap <= TIE) & (gap > self._near)
             if near.any():
                 with np.errstate(invalid="ignore"):
                     share = walk.log_where(near, some) - self.log_left[k][:, columns]
                 number = np.exp(np.where(np.isnan(share), -np.inf, share)) * self.free[k, columns]
                 self.record.near[:, columns] += number
-        divided = walk.divide(plus, minus, some)
-        if certain is not None:
-            divided[:2] = np.logaddexp(divided[:2], certain[..., columns])
-        return divided
 
     def show(
         self,

@@ -10,7 +10,9 @@ of that. Others then take its silence for no news.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, field
+from functools import cached_property
 
 import numpy as np
 
@@ -25,47 +27,36 @@ from thumbwright.exact.crowd_course import (
     half_of,
     play,
 )
+from thumbwright.exact.crowd_figures import Weights
 from thumbwright.exact.crowd_kinds import Crowd, Kind, check_play
 from thumbwright.exact.crowd_play import Choice, Histories
+from thumbwright.exact.crowd_policy import CrowdPolicy, InPublic
 from thumbwright.exact.errors import ModelError
+
+Policies = Sequence[CrowdPolicy | None] | None
 
 
 @dataclass(frozen=True)
-class Showing:
+class Showing(InPublic):
     """One round of one step: all histories that the member may have been shown before it.
 
     Attributes
     ----------
-    step, round : int
     parent : ndarray of int, shape (H,)
         Which history of the round before each goes on from; zeros at the first.
-    plus, minus : ndarray of int, shape (K, H)
-        How many others of each kind show plus and show minus.
-    first, last : ndarray of int, shape (H,)
-        Step of the first and of the latest answer; 0 where there is none.
-    first_plus, first_minus : ndarray of int, shape (H,)
-        How many gave either answer at the moment of the first.
     log_shown : ndarray of float, shape (2, H)
         Log probability of the history given plus and given minus; zeros where sampled.
     worth : ndarray of float, shape (H,)
-        Exact worth (nats); nan where exact play leaves the member no chance to be undecided.
+        Exact worth (nats); nan where the member's own play leaves it no chance to be undecided.
     log_still : ndarray of float, shape (2, H)
-        Log probability that the member, playing exactly, is still undecided.
+        Log probability that the member is still undecided.
     may : ndarray of bool, shape (2, H)
         Whether the others' model allows the member to say plus, to say minus in this round.
     waiting : ndarray of float, shape (2, H)
         Expected number of others that are undecided after this round.
     """
 
-    step: int
-    round: int
     parent: IntArray
-    plus: IntArray
-    minus: IntArray
-    first: IntArray
-    last: IntArray
-    first_plus: IntArray
-    first_minus: IntArray
     log_shown: FloatArray
     worth: FloatArray
     log_still: FloatArray
@@ -111,6 +102,11 @@ class Shown:
         """The kind that the member is of."""
         return self.crowd.kinds[self.kind]
 
+    @cached_property
+    def weights(self) -> Weights | None:
+        """Weighted sums over sampled histories; None if enumerated."""
+        return None if self.weight is None else Weights(self.weight, self.half)
+
     @property
     def sampled(self) -> bool:
         """Whether histories were sampled."""
@@ -130,6 +126,7 @@ def enumerate_shown(
     exchange: str,
     drop: float = 0.0,
     most: int = MOST,
+    policies: Policies = None,
 ) -> Shown:
     """Everything that a member of one kind may be shown.
 
@@ -141,6 +138,8 @@ def enumerate_shown(
         Which kind the member is of.
     most : int
         Histories, and entries of the tree, that may be held.
+    policies : sequence, optional
+        As for ``Histories``: what each kind goes by, and all know.
 
     Raises
     ------
@@ -150,7 +149,8 @@ def enumerate_shown(
     _check(crowd, kind, prior, horizon, exchange)
     course, tree = Enumerated(crowd.size, drop, most), _Tree(kind, most)
     labels = np.zeros(1, dtype=np.int64)
-    tree.grow(Histories(crowd, prior, horizon, labels, kind, lasting=True), course, exchange)
+    histories = Histories(crowd, prior, horizon, labels, kind, lasting=True, policies=policies)
+    tree.grow(histories, course, exchange)
     dropped = float(course.dropped[0]), float(course.dropped[1])
     parts = (tuple(tree.showings),)
     return Shown(crowd, kind, prior, horizon, exchange, parts, None, None, dropped)
@@ -164,6 +164,7 @@ def sample_shown(
     exchange: str,
     histories: int,
     seed: int,
+    policies: Policies = None,
 ) -> Shown:
     """What a member of one kind is shown along sampled public histories, half given each answer.
 
@@ -173,6 +174,8 @@ def sample_shown(
         As for ``sample_crowd``.
     kind : int
         Which kind the member is of.
+    policies : sequence, optional
+        As for ``Histories``: what each kind goes by, and all know.
 
     Raises
     ------
@@ -184,7 +187,7 @@ def sample_shown(
     course, parts, ratios = Sampled(np.random.default_rng(seed), half), [], []
     for labels in blocks(histories):
         tree = _Tree(kind, None)
-        batch = Histories(crowd, prior, horizon, labels, kind, lasting=True)
+        batch = Histories(crowd, prior, horizon, labels, kind, lasting=True, policies=policies)
         ratios.append(tree.grow(batch, course, exchange))
         parts.append(tuple(tree.showings))
     weight = balanced(np.concatenate(ratios)) / histories
@@ -237,19 +240,21 @@ class _Tree:
             )
         may = np.zeros((2, size), dtype=bool)
         may[:, choice.columns] = np.isfinite(choice.log_share[self.kind, :2]).any(axis=1)
+        # Those who go by policies read nothing by a model.
+        may |= histories.by_policies
         stay = np.ones((len(choice.log_share), 2, size))
         stay[..., choice.columns] = np.exp(choice.log_share[:, 2])
         waiting = (histories.free[:, None] * stay).sum(axis=0)
         self.showings.append(
             Showing(
                 *self._moment,
-                parent=record.origin.copy() if self.showings else np.zeros(size, dtype=np.int64),
                 plus=record.plus.copy(),
                 minus=record.minus.copy(),
                 first=record.first.copy(),
                 last=record.last.copy(),
                 first_plus=record.first_plus.copy(),
                 first_minus=record.first_minus.copy(),
+                parent=record.origin.copy() if self.showings else np.zeros(size, dtype=np.int64),
                 log_shown=record.log_weight.copy(),
                 worth=self._worth,
                 log_still=self._log_still,

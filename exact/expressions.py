@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -58,6 +59,12 @@ class Pair(Expression):
     left: Expression
     right: Expression
     out: int | None
+
+    @cached_property
+    def shares(self) -> tuple[tuple[int, ...], tuple[int, ...], tuple[int, ...]]:
+        """The axes that both have and that stay, those of the left only, of the right only."""
+        assert self.out is not None, "asked of sums only"
+        return _shares(self.left, self.right, self.out)
 
 
 class Workspace:
@@ -174,7 +181,7 @@ def _shares(
 def _matrix_product(left: FloatArray, right: FloatArray, pair: Pair) -> FloatArray:
     """Sum over ``pair.out`` of left times right, as one batched matrix product."""
     assert pair.out is not None
-    both, only_left, only_right = _shares(pair.left, pair.right, pair.out)
+    both, only_left, only_right = pair.shares
     a = _spread(left, pair.left.axes, (*both, *only_left, pair.out))
     b = _spread(right, pair.right.axes, (*both, pair.out, *only_right))
     batch = a.shape[: 1 + len(both)]

@@ -141,7 +141,7 @@ class RuleReader(Reader):
         else:
             count = scene.walk.count[:, None]
             low, high = (np.broadcast_to(x, shape).ravel() for x in (act.minus_at, act.plus_at))
-            reading = Reading(count >= high, count <= low, value, compared=False)
+            reading = Reading(count >= high, count <= low, value)
         row = None if act.row is None else np.broadcast_to(act.row, shape).ravel()
         return replace(reading, row=row)
 
@@ -169,7 +169,7 @@ class DifferenceReader(Reader):
         """Masks of what differs and of what is answered alike."""
         one, other = (reader.read(scene) for reader in self._readers)
         differs = (one.plus != other.plus) | (one.minus != other.minus)
-        return Reading(differs, (one.plus | one.minus) & ~differs, one.value, compared=False)
+        return Reading(differs, (one.plus | one.minus) & ~differs, one.value)
 
 
 def silence_is_possible(solution: Solution, position: int) -> bool:

@@ -100,16 +100,35 @@ class Reading:
         What each history is worth to the belief (nats); nan where it says nothing.
     row : ndarray of int, shape (C,), or None
         Which line of a rule decided, for counting.
-    compared : bool
-        Whether the masks came from comparing that value with the thresholds, so that near ties
-        are to be reported.
+    near : ndarray of bool, shape (2, R, C), or None
+        Where the belief is within TIE of the lower threshold and of the upper one, but not on it;
+        None if nowhere, or if the masks did not come from comparing them.
     """
 
     plus: BoolArray
     minus: BoolArray
     value: FloatArray
-    compared: bool
+    near: BoolArray | None = None
     row: IntArray | None = None
+
+
+@dataclass(frozen=True)
+class Calls:
+    """What commits in a round; axis 0 is to plus, to minus, axis 1 given plus, given minus.
+
+    Attributes
+    ----------
+    log_weights : ndarray of float, shape (2, 2, histories...)
+        Log weight of committing after each history.
+    chance : ndarray of float, shape (2, 2)
+        Probability of committing.
+    possible : tuple of two bools
+        To plus, to minus: whether any history that can be met leads to it.
+    """
+
+    log_weights: FloatArray
+    chance: FloatArray
+    possible: tuple[bool, bool]
 
 
 class Reader(ABC):
@@ -195,10 +214,12 @@ def by_value(scene: Scene, value: FloatArray) -> Reading:
 
     A belief within TIE of a threshold has reached it. Nothing commits where the value is nan.
     """
-    walk, own = scene.walk, scene.prior + scene.walk.tally
-    plus = value >= (walk.high - own - TIE)[:, None]
-    minus = value <= (walk.low - own + TIE)[:, None]
-    return Reading(plus, minus, value, compared=True)
+    # What is wanted of the value is the same at all histories, so it is worked out per row first.
+    gap = value - (scene.walk.bars - (scene.prior + scene.walk.tally))[:, :, None]
+    plus, minus = gap[1] >= -TIE, gap[0] <= TIE
+    distance = np.abs(gap, out=gap)
+    near = (distance <= TIE) & (distance > NEAR)
+    return Reading(plus, minus, value, near if np.count_nonzero(near) else None)
 
 
 class ExactReader(Reader):
@@ -258,11 +279,8 @@ class Player:
         log_probability: FloatArray,
         columns: IntArray | None = None,
         lost: FloatArray | None = None,
-    ) -> FloatArray | None:
-        """Cut what commits in this round.
-
-        Returns its log weights, shape (2, 2, histories...): to plus and to minus, given plus and
-        given minus; None where nothing commits.
+    ) -> Calls | None:
+        """Cut what commits in this round and return it; None where nothing does.
 
         Parameters
         ----------
@@ -290,19 +308,21 @@ class Player:
             reading, lost = replace(reading, plus=nothing, minus=nothing), None
         if lost is not None:
             self._note_doubts(reading, part, columns, lost)
-        before, gone = self._log_undecided, None
+        before, gone, result = self._log_undecided, None, None
         commits = np.count_nonzero(reading.plus) or np.count_nonzero(reading.minus)
         if commits or self._certain is not None:
-            if reading.compared:
-                self._note_near_ties(reading, part, columns)
+            if reading.near is not None:
+                self._note_near_ties(reading, reading.near, part, columns)
             divided = self.walk.divide(reading.plus, reading.minus, columns)
             gone = divided[:2]
             if self._certain is not None:
                 gone = np.logaddexp(gone, self._certain)
                 self._certain = None
             self._log_undecided = _updated(before, columns, divided[2])
-            happened = np.exp(gone + part)
-            self.track.answers[:, :, step] += happened.sum(axis=2)
+            log_joint = gone + part
+            happened = np.exp(log_joint)
+            result = self._calls(gone, log_joint, happened.sum(axis=2), columns)
+            self.track.answers[:, :, step] += result.chance
         if not self.reader.steady:
             calls = np.zeros_like(part) if gone is None else happened.sum(axis=0)
             self.reader.tell(scene, reading, calls, np.exp(before.reshape(2, -1) + flat))
@@ -310,13 +330,24 @@ class Player:
         self.track.moments.append(
             Moment(step, round_, self._value, log_probability, before, self._log_undecided)
         )
-        if gone is None:
-            return None
+        return result
+
+    def _calls(
+        self,
+        gone: FloatArray,
+        log_joint: FloatArray,
+        chance: FloatArray,
+        columns: IntArray | None,
+    ) -> Calls:
+        """Log weights and log probabilities, shape (2, 2, k), as calls after all histories."""
         if columns is None:
-            return gone.reshape(2, 2, *self.shape)
-        everywhere = np.full((2, 2, *self.shape), -np.inf)
-        everywhere.reshape(2, 2, -1)[..., columns] = gone
-        return everywhere
+            everywhere = gone.reshape(2, 2, *self.shape)
+        else:
+            everywhere = np.full((2, 2, *self.shape), -np.inf)
+            everywhere.reshape(2, 2, -1)[..., columns] = gone
+        # The logarithm tells what is impossible from what is too rare for a float.
+        plus, minus = log_joint.max(axis=(1, 2), initial=-np.inf)
+        return Calls(everywhere, chance, (plus > -np.inf, minus > -np.inf))
 
     def wait(self, step: int, round_: int) -> None:
         """A round in which nothing has changed for the agent, whose reader is steady."""
@@ -326,18 +357,15 @@ class Player:
         )
 
     def _note_near_ties(
-        self, reading: Reading, log_probability: FloatArray, columns: IntArray | None
+        self,
+        reading: Reading,
+        near: BoolArray,
+        log_probability: FloatArray,
+        columns: IntArray | None,
     ) -> None:
-        own = self.prior + self.walk.tally
-        for mask, threshold in ((reading.plus, self.walk.high), (reading.minus, self.walk.low)):
-            gap = reading.value - (threshold - own)[:, None]
-            np.abs(gap, out=gap)
-            near = (gap <= TIE) & (gap > NEAR)
-            if not np.count_nonzero(near):
-                continue
-            near &= mask
-            if near.any():
-                mass = np.exp(self.walk.log_where(near, columns) + log_probability).sum(axis=1)
+        for mask in (near[0] & reading.minus, near[1] & reading.plus):
+            if mask.any():
+                mass = np.exp(self.walk.log_where(mask, columns) + log_probability).sum(axis=1)
                 self.track.near_tie += float(
                     self.prior_plus * mass[0] + (1.0 - self.prior_plus) * mass[1]
                 )
@@ -355,7 +383,7 @@ class Player:
             least = log_probability[0] - more[1]
             most = more[0] - log_probability[1]
         own = self.prior + self.walk.tally
-        high, low = (self.walk.high - own - TIE)[:, None], (self.walk.low - own + TIE)[:, None]
+        low, high = (self.walk.bars - own)[:, :, None] + np.array([TIE, -TIE])[:, None, None]
         unsure = (reading.plus != (most >= high)) | (reading.plus != (least >= high))
         unsure |= (reading.minus != (most <= low)) | (reading.minus != (least <= low))
         if unsure.any():

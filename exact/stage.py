@@ -16,7 +16,7 @@ from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.contract import Contractions
 from thumbwright.exact.evidence.law import Law
 from thumbwright.exact.group import MINUS, PLUS, Group
-from thumbwright.exact.player import Player, Reader, Track
+from thumbwright.exact.player import Calls, Player, Reader, Track
 from thumbwright.exact.store import shell
 
 Progress = Callable[[str, int, int], None]
@@ -41,7 +41,6 @@ class Stage:
     likeness : Likeness, optional
         Who is worked out for whom; if None, everybody for itself. The readers of agents that are
         worked out together must be alike as well.
-
     laws : sequence of Law or None, optional
         Per agent the law of what it really observes, where that is not what it takes it for.
 
@@ -126,8 +125,8 @@ class Stage:
         self.contractions.renew(self._gained, self._changed)
         return bool(self._changed)
 
-    def _decision(self, i: int, step: int, round_: int) -> FloatArray | None:
-        """What commits, as log weights; None where nothing does."""
+    def _decision(self, i: int, step: int, round_: int) -> Calls | None:
+        """What commits; None where nothing does."""
         player, columns = self.players[i], None
         if round_ and player.reader.steady:
             if self._sources[i].isdisjoint(self._changed):
@@ -154,26 +153,22 @@ class Stage:
         length = len(self.players[i].track.events)
         return np.array([0, *range(length - self._gained[i], length)])
 
-    def _show(self, i: int, step: int, round_: int, gone: FloatArray | None) -> tuple[int, bool]:
+    def _show(self, i: int, step: int, round_: int, calls: Calls | None) -> tuple[int, bool]:
         """Turn what was cut into display events; those impossible under both answers vanish.
 
         Returns how many there are, and whether anything could have been shown.
         """
-        if gone is None:
+        if calls is None:
             return 0, False
-        track = self.players[i].track
-        moment, events, changed = track.moments[-1], [], False
+        track, events = self.players[i].track, []
         for sign, state in enumerate((PLUS, MINUS)):
-            log_joint = (gone[sign] + moment.log_shown).reshape(2, -1)
-            if not np.isfinite(log_joint).any():
+            if not calls.possible[sign]:
                 continue
-            changed = True
-            if self._drop:
-                chance = np.exp(log_joint).sum(axis=1)
-                if chance.max() < self._drop:
-                    self.dropped += chance * self._likeness.lead.count(i)
-                    continue
+            chance = calls.chance[sign]
+            if self._drop and chance.max() < self._drop:
+                self.dropped += chance * self._likeness.lead.count(i)
+                continue
             track.events.add(state, step, round_)
-            events.append(gone[sign])
-        self.contractions.displays[i].show(moment.log_after, events)
-        return len(events), changed
+            events.append(calls.log_weights[sign])
+        self.contractions.displays[i].show(track.moments[-1].log_after, events)
+        return len(events), any(calls.possible)

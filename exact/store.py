@@ -44,8 +44,9 @@ class Store:
         lengths[axis + 1] += extra
         if lengths[axis + 1] > self._room.shape[axis + 1]:
             self._make_room(lengths)
-        self.array = self._room[tuple(slice(0, length) for length in lengths)]
-        self.array[along(axis, slice(used, None))] = self.array[along(axis, slice(0, 1))]
+        self.array = self._room[tuple([slice(length) for length in lengths])]
+        turned = self.array.swapaxes(0, axis + 1)
+        turned[used:] = turned[:1]
 
     def _make_room(self, lengths: list[int]) -> None:
         # All axes at once: they grow alike, and copying is what costs.

@@ -19,6 +19,7 @@ them for (see ``astray``).
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TypeVar
 
 import numpy as np
@@ -54,8 +55,8 @@ class Walk:
         Own count S of each row on a ladder; on a lattice of several axes a code of the counts.
     tally : ndarray of float, shape (R,)
         Sum of the worths of the own observations (nats) of each row, as the agent takes them.
-    low, high : ndarray of float, shape (R,)
-        Thresholds on the belief (nats) that hold for each row.
+    bars : ndarray of float, shape (2, R)
+        Thresholds on the belief (nats) that hold for each row, the lower ones first.
     mass : ndarray of float, shape (R, C)
         The measure m of each row and column, before ``exp(log_scale)``.
     log_scale : ndarray of float, shape (C,)
@@ -78,7 +79,7 @@ class Walk:
         # On several axes all offsets are 0 or 1, so strides of horizon + 1 never run over.
         self._strides = (horizon + 1) ** np.arange(axes, dtype=np.int64)
         self._moves: IntArray = self._law.offsets @ self._strides
-        self._bounds = np.array([[t.minus, t.plus] for _, t in thresholds])
+        self._bounds = np.array([[t.minus for _, t in thresholds], [t.plus for _, t in thresholds]])
         blocks = np.arange(len(thresholds), dtype=np.int64)
         self._code: IntArray = blocks * _BLOCK + _BLOCK // 2
         self.mass: FloatArray = np.array([[share] for share, _ in thresholds], dtype=float)
@@ -86,10 +87,22 @@ class Walk:
         self.observed = 0
         self._describe()
 
+    @property
+    def low(self) -> FloatArray:
+        """Lower threshold on the belief (nats) of each row, shape (R,)."""
+        lower: FloatArray = self.bars[0]
+        return lower
+
+    @property
+    def high(self) -> FloatArray:
+        """Upper threshold on the belief (nats) of each row, shape (R,)."""
+        upper: FloatArray = self.bars[1]
+        return upper
+
     def _describe(self) -> None:
         block, inner = np.divmod(self._code, _BLOCK)
         self.count: IntArray = inner - _BLOCK // 2
-        self.low, self.high = self._bounds[block, 0], self._bounds[block, 1]
+        self.bars: FloatArray = self._bounds[:, block]
         self.tally: FloatArray = self._valued(self._evidence)
         real = self._valued(self._law) if self._mistaken else self.tally
         # Row 0 turns the measure into mass given plus, row 1 into mass given minus.
@@ -221,11 +234,38 @@ class Walk:
             self.mass[:, columns] = parts[2]
         return divided
 
+    @property
+    def block(self) -> IntArray:
+        """Which possibility each row belongs to, shape (R,)."""
+        return np.asarray(self._code // _BLOCK)
+
+    def carry(self, out: BoolArray, moved: Sequence[tuple[int, BoolArray]]) -> None:
+        """Take out some mass, and carry other mass to the same own count of another possibility.
+
+        Parameters
+        ----------
+        out : ndarray of bool, shape (R, C)
+            What is taken out.
+        moved : sequence of (int, ndarray of bool, shape (R, C))
+            The possibility that mass goes to, and which; no mass is named twice.
+        """
+        codes, parts = [self._code], [np.where(out, 0.0, self.mass)]
+        for block, mask in moved:
+            rows = np.flatnonzero(mask.any(axis=1))
+            parts[0][mask] = 0.0
+            codes.append(self._code[rows] % _BLOCK + block * _BLOCK)
+            parts.append(np.where(mask, self.mass, 0.0)[rows])
+        self._code, row = np.unique(np.concatenate(codes), return_inverse=True)
+        self.mass = np.zeros((len(self._code), self.mass.shape[1]))
+        np.add.at(self.mass, row, np.concatenate(parts))
+        alive = self.mass.any(axis=1)
+        self._code, self.mass = self._code[alive], self.mass[alive]
+        self._describe()
+
     def _keep(self, rows: BoolArray) -> None:
         self._code, self.mass = self._code[rows], self.mass[rows]
         self.count, self.tally = self.count[rows], self.tally[rows]
-        self.low, self.high = self.low[rows], self.high[rows]
-        self._given = self._given[:, rows]
+        self.bars, self._given = self.bars[:, rows], self._given[:, rows]
 
     def _of(self, columns: IntArray | None) -> FloatArray:
         return self.mass if columns is None else self.mass[:, columns]
@@ -253,9 +293,9 @@ def grown(array: NDArray[Kind], axis: int, extra: int) -> NDArray[Kind]:
     lengths, used = [*array.shape], array.shape[axis]
     lengths[axis] += extra
     longer = np.empty(lengths, dtype=array.dtype)
-    before = (slice(None),) * axis
-    longer[(*before, slice(0, used))] = array
-    longer[(*before, slice(used, None))] = array[(*before, slice(0, 1))]
+    # Seen with that axis first; this is much faster than joining the two for small arrays.
+    new, old = longer.swapaxes(0, axis), array.swapaxes(0, axis)
+    new[:used], new[used:] = old, old[:1]
     return longer
 
 

@@ -15,6 +15,7 @@ from thumbwright.distill.findings import Figures, Findings
 from thumbwright.distill.rules import SHOWN
 
 _WIDTH = 92
+_MOST_NAMED = 8
 _APART = ("*/", "/*", "??", "</")
 """Pairs that end or begin a comment, or stand for another character, in one language or another."""
 
@@ -94,11 +95,16 @@ def _wrapped(paragraph: str) -> list[str]:
 def _what(findings: Findings) -> tuple[str, ...]:
     case = findings.case
     seen = [f"{case.agents[agent].name} ({agent})" for agent in findings.seen]
-    watching = f", watching {', '.join(seen)}" if seen else ", watching nobody"
+    if len(seen) > _MOST_NAMED:
+        seen = [f"{len(seen)} others"]
+    watching = f", watching {', '.join(seen) or 'nobody'}"
+    whose = f"{case.agents[findings.agent].name} ({findings.agent})"
+    if case.rule.agent == "any":
+        whose = f"any of the group, all being alike: here {whose}"
     return (
         f"Case: {case.title}",
         f"Case {case.name}, digest {findings.digest}; thumbwright {findings.version}.",
-        f"For {case.agents[findings.agent].name} ({findings.agent}){watching}.",
+        f"For {whose}{watching}.",
         f"plus: {case.question.plus}",
         f"minus: {case.question.minus}",
         f"Worked out for steps 1 to {case.time.horizon}. At later steps the rows that are open at"
@@ -165,6 +171,6 @@ def tally_means(findings: Findings, part: Part) -> str:
         " natural logarithm of how much likelier each is if plus is true"
     )
     if findings.count_is_whole and findings.alpha is not None and findings.beta is not None:
-        said += f" (here {findings.alpha:.10g} * own count"
-        said += f" + {findings.beta:.10g} * step)" if findings.beta else ")"
+        said += f" (here {findings.alpha:.13g} * own count"
+        said += f" + {findings.beta:.13g} * step)" if findings.beta else ")"
     return said.replace("+ -", "- ")

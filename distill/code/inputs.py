@@ -176,7 +176,7 @@ def _inputs(
 ) -> tuple[Input, ...]:
     """Return what the rule looks at, the step always first."""
     case = findings.case
-    label = f", of {case.time.step_label} each" if case.time.step_label else ""
+    label = f" of {case.time.step_label}" if case.time.step_label else ""
     made = [
         Input(
             STEP,

@@ -27,6 +27,9 @@ MODULES = (
 )
 """The export modules of this package, in the order in which they are rendered."""
 
+ON_REQUEST = ("sheet_pdf",)
+"""Export modules that need an extra, rendered only where they are asked for."""
+
 
 def render_all(findings: Findings) -> dict[str, str | bytes]:
     """Render every export; return all files, in the order of :data:`MODULES`.

@@ -21,7 +21,7 @@ from thumbwright.distill.exports.rule_csv import (
     shows_used,
     threshold_names,
 )
-from thumbwright.distill.findings import CostBasis, Findings, FormResult
+from thumbwright.distill.findings import Agreed, CostBasis, Findings, FormResult
 from thumbwright.distill.rules import FIRST_ANSWERS, SHOWN, Row, Rule
 
 NAME = "rule as JSON"
@@ -54,6 +54,7 @@ def rule_json(findings: Findings) -> str:
         "seen": list(findings.seen),
         "units": _units(findings),
         "forms": {name: _form(result, findings) for name, result in findings.forms.items()},
+        **_reckoned(findings),
         "costs": {
             "exact": figures_record(findings.exact),
             "plain_count": figures_record(findings.plain_count),
@@ -111,8 +112,42 @@ def _form(result: FormResult, findings: Findings) -> dict[str, Any]:
         "information_kept": json_figure(result.information_kept),
         "information_ceiling": json_figure(result.information_ceiling),
         "costs": figures_record(result.figures),
+        "costs_if_everybody_uses_it": (
+            None if result.everybody is None else figures_record(result.everybody)
+        ),
+        "agreement": _agreement(result.agreed),
         "notes": list(result.notes),
     }
+
+
+def _reckoned(findings: Findings) -> dict[str, Any]:
+    """Return the forms that have no rows, where there are any: numbers, and what they mean."""
+    if not findings.reckoned:
+        return {}
+    forms = {
+        name: {
+            "nats_per_unit": json_number(one.rule.unit),
+            "numbers": {key: json_number(value) for key, value in one.rule.parameters.items()},
+            "sentences": list(one.rule.sentences()),
+            "information_kept": json_figure(one.information_kept),
+            "costs": figures_record(one.figures),
+            "notes": list(one.notes),
+        }
+        for name, one in findings.reckoned.items()
+    }
+    return {"reckoned": forms}
+
+
+def _agreement(agreed: Agreed | None) -> dict[str, Any] | None:
+    """Return how a rule compares with exact play on the same observations."""
+    if agreed is None:
+        return None
+    record: dict[str, Any] = {
+        name: json_figure(getattr(agreed, name)) for name in ("same", "opposite", "steps_apart")
+    }
+    if agreed.errors is not None:
+        record["errors"] = {name: json_figure(error) for name, error in agreed.errors.items()}
+    return record
 
 
 def _row(row: Row, rule: Rule, findings: Findings) -> dict[str, Any]:

@@ -10,6 +10,7 @@ from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms import Wanted
 from thumbwright.distill.forms.axes import Axis
 from thumbwright.distill.forms.boxes import Box, Partition
+from thumbwright.distill.forms.enough import Enough
 from thumbwright.distill.rules import Row, Rule
 from thumbwright.exact.arrays import BoolArray, FloatArray
 
@@ -48,6 +49,11 @@ def box_masses(
     )
 
 
+def of_every_size(partitions: Sequence[Partition]) -> list[Partition]:
+    """Partitions with ever more boxes, each number of boxes once."""
+    return list({len(one.boxes): one for one in reversed(partitions)}.values())[::-1]
+
+
 def chosen(
     pricer: Pricer,
     wanted: Wanted,
@@ -61,16 +67,13 @@ def chosen(
     Returns it with a sentence on the choice, where there is something to say.
     """
     largest = partitions[-1]
-    if wanted.max_accuracy_lost is not None:
-        exact = pricer.accuracy(pricer.exact_tally)
+    if wanted.limited:
+        enough = Enough(pricer, wanted)
         for partition in partitions:
-            found = pricer.rule_tally(rule_of(partition))
-            if exact - pricer.accuracy(found) <= wanted.max_accuracy_lost:
-                return partition, ("The fewest rows within the accuracy that may be lost.",)
-        return largest, (
-            f"No {noun} of up to {wanted.rows} rows stays within the accuracy that may be lost; "
-            f"{best}.",
-        )
+            if enough(pricer.rule_tally(rule_of(partition))):
+                said = (f"The fewest rows that {enough.they}.",) if enough.they else ()
+                return partition, (*said, *enough.notes)
+        return largest, (f"No {noun} of up to {wanted.rows} rows {enough.it}; {best}.",)
     if len(largest.boxes) < wanted.rows:
         return largest, (
             f"{len(largest.boxes)} rows already say all that a {noun} of these inputs can say.",

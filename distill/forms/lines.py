@@ -16,9 +16,10 @@ from __future__ import annotations
 from collections.abc import Callable, Iterable, Iterator
 
 from thumbwright.distill.costs import Pricer
-from thumbwright.distill.forms import Distilled, Wanted
+from thumbwright.distill.forms import Distilled, Sized, Wanted
 from thumbwright.distill.forms.batch import Batch
 from thumbwright.distill.forms.boxes import gain
+from thumbwright.distill.forms.enough import Enough
 from thumbwright.distill.forms.runs import Layout, Moves, as_rule, lossless, moved_bars
 from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.exact.engine import Progress
@@ -81,7 +82,7 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
     layout, mixed = lossless(pricer, wanted.inputs)
     search = Search(pricer, wanted, layout, progress)
     notes = [f"Without merging there are {len(layout)} lines."]
-    if wanted.max_accuracy_lost is None:
+    if not wanted.limited:
         search.merge_unnoticed()
     unnoticed = len(layout) - len(search.layout)
     if unnoticed:
@@ -89,11 +90,11 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
             f"{unnoticed} merged away because together they change fewer than 1 outing in 10,000."
         )
     before = len(search.layout)
-    if wanted.max_accuracy_lost is None:
-        search.merge_down_to(wanted.rows)
+    if wanted.limited:
+        notes += search.merge_within(Enough(pricer, wanted))
     else:
-        notes.append(search.merge_within(wanted.max_accuracy_lost))
-    if wanted.max_accuracy_lost is None and len(search.layout) < before:
+        search.merge_down_to(wanted.rows)
+    if not wanted.limited and len(search.layout) < before:
         notes.append(
             f"{before - len(search.layout)} more merged at the least added risk, their bars set "
             "between the exact ones they cover, where the risk is least."
@@ -104,13 +105,23 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
             "more than the card may look at, such as the time of a call; their bars are set "
             "between the exact ones, where the risk is least."
         )
-    if wanted.max_accuracy_lost is None:
+    if not wanted.limited:
         search.settle_bars()
-    rule = as_rule(pricer, search.layout)
+    rule, kept = sized(pricer, search.layout)
+    sizes: list[Sized] = []
+    if wanted.every_size:
+        again = Search(pricer, wanted, layout, progress)
+        again.merge_unnoticed()
+        sizes = [sized(pricer, one) for one in again.every_size(wanted.rows)]
+    return Distilled(rule, kept, None, tuple(notes), tuple(sizes))
+
+
+def sized(pricer: NetworkPricer, layout: Layout) -> Sized:
+    """A layout as a rule, and the share of information that its lines keep."""
+    rule = as_rule(pricer, layout)
     situations = pricer.situations
     pooled = situations.pooled(situations.rows_of(rule), len(rule.rows))
-    kept = situations.information_kept(float(gain(*pooled).sum()))
-    return Distilled(rule, kept, None, tuple(notes))
+    return rule, situations.information_kept(float(gain(*pooled).sum()))
 
 
 class Search:
@@ -147,25 +158,41 @@ class Search:
             self._last = layouts[:SETTLED]
             self._tell()
 
-    def merge_within(self, most_lost: float) -> str:
-        """Take the fewest lines that lose no more accuracy; returns a sentence on how it went.
+    def every_size(self, rows: int) -> Iterator[Layout]:
+        """What :meth:`merge_down_to` and :meth:`settle_bars` lead to, for ever fewer lines."""
+        if len(self.layout) <= rows:
+            yield self._settled(self.layout)[1]
+        for layouts in self._levels(self._batch.objectives):
+            self.layout = layouts[0]
+            self._tell()
+            if len(self.layout) <= rows:
+                settled = [self._settled(layout) for layout in layouts[:SETTLED]]
+                yield min(settled, key=lambda pair: pair[0])[1]
+
+    def merge_within(self, enough: Enough) -> tuple[str, ...]:
+        """Take the fewest lines that are within limits; returns sentences on how it went.
 
         Of those that qualify with so many lines, the one of least risk.
         """
-        fits = self._lost([self.layout])[0] <= most_lost
-        for layouts in self._levels(self._lost):
-            lost = self._lost(layouts)
-            within = [one for one, loss in zip(layouts, lost, strict=True) if loss <= most_lost]
+
+        def excess(layouts: list[Layout]) -> list[float]:
+            return [enough.excess(found) for found in self._batch.tallies(layouts)]
+
+        fits = excess([self.layout])[0] <= 0.0
+        for layouts in self._levels(excess):
+            beyond = excess(layouts)
+            within = [one for one, much in zip(layouts, beyond, strict=True) if much <= 0.0]
             if within:
                 risks = self._batch.objectives(within)
                 self.layout, fits = within[risks.index(min(risks))], True
                 self._tell()
         if fits and len(self.layout) <= self._wanted.rows:
-            return "The fewest lines found within the accuracy that may be lost."
+            said = (f"The fewest lines found that {enough.they}.",) if enough.they else ()
+            return (*said, *enough.notes)
         self.merge_down_to(self._wanted.rows)
         return (
-            f"No rule of up to {self._wanted.rows} lines was found within the accuracy that may be "
-            "lost; this one loses more."
+            f"No rule of up to {self._wanted.rows} lines was found that {enough.it}; this one "
+            "does not.",
         )
 
     def _levels(self, loss: Callable[[list[Layout]], list[float]]) -> Iterator[list[Layout]]:
@@ -185,11 +212,6 @@ class Search:
             kept = [candidates[k] for k in order]
             if kept:
                 yield kept
-
-    def _lost(self, layouts: list[Layout]) -> list[float]:
-        """Accuracy lost against exact play."""
-        exact = self._pricer.accuracy(self._pricer.exact_tally)
-        return [exact - self._pricer.accuracy(found) for found in self._batch.tallies(layouts)]
 
     def settle_bars(self) -> None:
         """Move bars by one while that lowers the risk, between the exact bars of their line."""

@@ -14,7 +14,7 @@ from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms import Distilled, Wanted
 from thumbwright.distill.forms.axes import Axis, grid_axes
 from thumbwright.distill.forms.boxes import Box, Partition, best_partitions
-from thumbwright.distill.forms.choosing import chosen, valued_row
+from thumbwright.distill.forms.choosing import chosen, of_every_size, valued_row
 from thumbwright.distill.forms.coarse import boxes_of, searchable
 from thumbwright.distill.forms.grouping import best_groupings
 from thumbwright.distill.rules import Rule
@@ -53,11 +53,16 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
     rule = as_rule(pricer, axes, picked, plus, minus)
     if progress:
         progress("table", 1, 1)
+    sizes = [
+        (as_rule(pricer, axes, one, plus, minus), situations.information_kept(one.gain))
+        for one in (of_every_size(partitions) if wanted.every_size else ())
+    ]
     return Distilled(
         rule,
         situations.information_kept(picked.gain),
         situations.information_kept(float(ceiling[len(picked.boxes) - 1])),
         (*notes, *coarser),
+        tuple(sizes),
     )
 
 

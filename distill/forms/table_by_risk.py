@@ -12,6 +12,7 @@ from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms import Distilled, Wanted
 from thumbwright.distill.forms.boxes import gain
 from thumbwright.distill.forms.choosing import box_masses
+from thumbwright.distill.forms.enough import Enough
 from thumbwright.distill.forms.grouping import best_groupings
 from thumbwright.distill.forms.risk_search import Search
 from thumbwright.distill.forms.table import print_order, refuse_too_large
@@ -36,7 +37,7 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
     refuse_too_large(bench.axes, wanted.rows, NAME)
     search = Search(bench, wanted.rows, progress)
     notes: list[str] = []
-    if wanted.max_accuracy_lost is None:
+    if not wanted.limited:
         _, found = search.best(wanted.rows)
     else:
         found, notes = _fewest(pricer, wanted, bench, search)
@@ -59,16 +60,16 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
 def _fewest(
     pricer: Pricer, wanted: Wanted, bench: Bench, search: Search
 ) -> tuple[Valued, list[str]]:
-    """The fewest rows that lose no more accuracy against exact play than may be lost."""
-    assert wanted.max_accuracy_lost is not None
-    least = pricer.accuracy(pricer.exact_tally) - wanted.max_accuracy_lost
+    """The fewest rows found within the limits of the case."""
+    enough = Enough(pricer, wanted)
     for rows in range(1, wanted.rows + 1):
         _, found = search.best(rows)
-        if pricer.accuracy(bench.tallies([found])[0]) >= least:
-            return found, ["The fewest rows found within the accuracy that may be lost."]
+        if enough(bench.tallies([found])[0]):
+            said = [f"The fewest rows found that {enough.they}."] if enough.they else []
+            return found, [*said, *enough.notes]
     return found, [
-        f"No table of up to {wanted.rows} rows was found within the accuracy that may be lost; "
-        "this is the one of least risk."
+        f"No table of up to {wanted.rows} rows was found that {enough.it}; this is the one of "
+        "least risk."
     ]
 
 

@@ -15,7 +15,12 @@ from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms import Distilled, Wanted
 from thumbwright.distill.forms.axes import Axis, grid_axes
 from thumbwright.distill.forms.boxes import Box, Partition, gain
-from thumbwright.distill.forms.choosing import box_masses, chosen, valued_row
+from thumbwright.distill.forms.choosing import (
+    box_masses,
+    chosen,
+    of_every_size,
+    valued_row,
+)
 from thumbwright.distill.forms.grouping import best_groupings
 from thumbwright.distill.rules import Rule
 from thumbwright.distill.situations import values_of
@@ -28,7 +33,8 @@ NAME = "tree"
 def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> Distilled:
     """The tree of at most ``wanted.rows`` leaves."""
     axes = grid_axes(pricer, wanted.inputs)
-    sizes = range(1, wanted.rows + 1) if wanted.max_accuracy_lost is not None else [wanted.rows]
+    several = wanted.limited or wanted.every_size
+    sizes = range(1, wanted.rows + 1) if several else [wanted.rows]
     partitions = []
     for done, leaves in enumerate(sizes):
         if progress:
@@ -44,6 +50,10 @@ def distil(pricer: Pricer, wanted: Wanted, progress: Progress | None = None) -> 
         situations.information_kept(picked.gain),
         situations.information_kept(float(ceiling[-1])),
         notes,
+        tuple(
+            (as_rule(pricer, axes, one), situations.information_kept(one.gain))
+            for one in (of_every_size(partitions) if wanted.every_size else ())
+        ),
     )
 
 

@@ -24,6 +24,7 @@ MOST_EXTRA_LINES, MOST_EXTRA_ROWS = 3, 12
 """How much room the card gives to bars for nobody on watch; longer ones are left out of it."""
 
 NEVER = "never"
+ANY = "any"
 NOBODY = "Nobody on watch"
 UNSURE = "or you are not sure"
 
@@ -328,7 +329,7 @@ def _block_row(row: Row, voice: Voice, counting: Counting, ends_only: bool) -> t
     if counting.flipped:
         low, high = (None if high is None else -high), (None if low is None else -low)
     few = NEVER if low is None or low < 0 else str(low)
-    many = NEVER if high is None else str(max(high, 0))
+    many = NEVER if high is None else str(high) if high > 0 else ANY
     last = voice.horizon if row.step_to is None else row.step_to
     span = f"to {last}" if ends_only else voice.span(row.step_from, row.step_to)
     return span, few, many

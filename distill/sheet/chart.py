@@ -48,8 +48,10 @@ def chart(findings: Findings, voice: Voice) -> Chart | None:
     drawn = tuple(
         Curve(
             label=name,
-            path=_path([(across(s), None if v is None else up(v)) for s, v in _points(curve)]),
-            rule_path=_steps_path(curve, rule, across, up),
+            path=path_through(
+                [(across(s), None if v is None else up(v)) for s, v in _points(curve)]
+            ),
+            rule_path=_stepspath_through(curve, rule, across, up),
             band=_band(curve, across, up),
             dash=DASHES[place % len(DASHES)],
             end_y=f"{up(ends[place]):.1f}",
@@ -66,7 +68,7 @@ def chart(findings: Findings, voice: Voice) -> Chart | None:
         bottom=BOTTOM,
         zero_y=f"{up(0.0):.1f}",
         across=tuple(Mark(f"{across(step):.1f}", str(step)) for step in step_ticks(last)),
-        up=tuple(Mark(f"{up(tick):.1f}", _figure(tick)) for tick in ticks),
+        up=tuple(Mark(f"{up(tick):.1f}", figure_of(tick)) for tick in ticks),
         curves=drawn,
         across_title="step (own observations so far, this one included)",
         up_title="worth (nats)",
@@ -195,7 +197,7 @@ def _end(curve: WorthCurve) -> float:
     return known[-1] if known else 0.0
 
 
-def _path(points: Sequence[tuple[float, float | None]]) -> str:
+def path_through(points: Sequence[tuple[float, float | None]]) -> str:
     """Return the path through the points, lifted where one is missing; lone points get a dot."""
     parts: list[str] = []
     down = False
@@ -211,7 +213,7 @@ def _path(points: Sequence[tuple[float, float | None]]) -> str:
     return "".join(parts)
 
 
-def _steps_path(curve: WorthCurve, rule: Rule | None, across: Place, up: Place) -> str:
+def _stepspath_through(curve: WorthCurve, rule: Rule | None, across: Place, up: Place) -> str:
     """Return the table's values for this state as a path; "" where there is no table."""
     if rule is None:
         return ""
@@ -223,7 +225,7 @@ def _steps_path(curve: WorthCurve, rule: Rule | None, across: Place, up: Place) 
             runs.append([])
         runs[-1].append((across(step), up(said) if _is_real(said) else None))
         before = said
-    return "".join(_path(run) for run in runs)
+    return "".join(path_through(run) for run in runs)
 
 
 def _band(curve: WorthCurve, across: Place, up: Place) -> str:
@@ -243,7 +245,8 @@ def _band(curve: WorthCurve, across: Place, up: Place) -> str:
     return "".join(shapes)
 
 
-def _figure(tick: float) -> str:
+def figure_of(tick: float) -> str:
+    """Write the figure of a tick."""
     return f"{tick:g}".replace("-", "−")
 
 

@@ -23,8 +23,10 @@ def ways(findings: Findings, voice: Voice) -> tuple[tuple[str, Figures], ...]:
     if result is None:
         result = next(iter(findings.forms.values()))
     name = "this card" if "lines" in findings.forms else "this sheet"
+    together = [] if result.everybody is None else [("if everybody uses it", result.everybody)]
     return (
         (name, result.figures),
+        *together,
         ("full calculation", findings.exact),
         (f"{quoted(voice.shows['undecided'])} ignored", findings.plain_count),
         ("everybody ignored", findings.alone),
@@ -65,11 +67,15 @@ def costs(findings: Findings, voice: Voice) -> Grid:
     )
 
 
-def cost_note(findings: Findings) -> str:
-    """Say where watching is worth nothing, or when it does harm; "" where there is no such case."""
+def cost_note(findings: Findings, voice: Voice) -> str:
+    """Say where watching is worth nothing, the card worse than that, or would be; else ""."""
+    said = []
     if not findings.watching_is_worth:
-        return "Here watching is worth next to nothing."
-    return doubts_front(findings)
+        said.append("Here watching is worth next to nothing.")
+    name, figures = ways(findings, voice)[0]
+    if figures.worse_than(findings.alone):
+        said.append(f"{capital(name)} is worse than ignoring everybody.")
+    return " ".join(said) or doubts_front(findings)
 
 
 def example(findings: Findings, voice: Voice, counting: Counting, card: Card) -> Grid | None:

@@ -2,25 +2,30 @@
 
 from __future__ import annotations
 
+import re
 from collections import Counter
 from collections.abc import Callable
 from typing import Any
 
 from thumbwright.distill.case import Agent, is_crowd
-from thumbwright.distill.findings import Figures, Findings, FormResult
+from thumbwright.distill.findings import Agreed, Figures, Findings, FormResult, ReckonedResult
 from thumbwright.distill.rules import FIRST_ANSWERS, NUMBERS, SHOWN, Row
 from thumbwright.distill.sheet.chart import chart
 from thumbwright.distill.sheet.doubts import doubts_grid, doubts_notes
 from thumbwright.distill.sheet.nested import nested
-from thumbwright.distill.sheet.parts import Grid, Modeller, Note
+from thumbwright.distill.sheet.parts import Grid, Modeller, Nested, Note, Sentence
+from thumbwright.distill.sheet.sizes import sizes_chart
 from thumbwright.distill.sheet.voice import Voice, own_evidence
-from thumbwright.distill.sheet.words import clean, five, listing, signed
+from thumbwright.distill.sheet.words import clean, five, listing, range_words, signed
 
 FORM_TITLES = {
     "lines": "The lines: bars on the own count",
     "table": "The table: values in place of what others show",
     "table-by-risk": "The table by risk: boxes and values chosen for least risk",
+    "table-for-all": "The table for all: values that are right where everybody uses it",
     "tree": "The tree: values found by one cut after another",
+    "shifts": "The shifts: bars, and by how many boxes what is shown moves them",
+    "formula": "The formula: worth reckoned from few numbers",
 }
 
 IN_SENTENCES = ("tree",)
@@ -41,10 +46,9 @@ def modeller(findings: Findings, voice: Voice) -> Modeller:
             nested(FORM_TITLES[name], result, findings, voice)
             for name, result in _forms(findings)
             if name in IN_SENTENCES
-        ),
-        rule_notes=tuple(
-            Note(f"{name}:", " ".join(_rule_notes(result))) for name, result in _forms(findings)
-        ),
+        )
+        + tuple(_reckoned(name, one) for name, one in findings.reckoned.items()),
+        rule_notes=_notes(findings),
         figures=_figures(findings),
         figure_notes=_figure_notes(findings),
         losses=_losses(findings),
@@ -52,6 +56,7 @@ def modeller(findings: Findings, voice: Voice) -> Modeller:
         doubts_notes=doubts_notes(findings),
         exactness=_exactness(findings),
         settings=_settings(findings, voice),
+        sizes=sizes_chart(findings),
     )
 
 
@@ -85,23 +90,15 @@ def _shown(row: Row, findings: Findings, voice: Voice) -> str:
         states = [state for state in SHOWN if state in row.shows.get(agent, SHOWN)]
         text = "any" if len(states) == len(SHOWN) else " or ".join(states)
         parts.append(f"{voice.names[agent]} {text}")
-    if row.ranges or row.first_answer is not None:
-        parts = [part for part in parts if not part.endswith(" any")]
-    parts += [_range(name, row) for name in NUMBERS if name in row.ranges]
+    if not row.shows:
+        parts = []
+    numbers = [name for name in NUMBERS if name in row.ranges]
+    parts += [f"{name.replace('_', ' ')} {range_words(*row.ranges[name])}" for name in numbers]
     if row.first_answer is not None:
         said = [answer for answer in FIRST_ANSWERS if answer in row.first_answer]
         parts.append(f"first answer {' or '.join(said)}")
     habits = voice.habits(row.thresholds)
-    return "; ".join([*parts, habits] if habits else parts)
-
-
-def _range(name: str, row: Row) -> str:
-    """Say the least and greatest of a number that a row accepts."""
-    least, most = row.ranges[name]
-    words = name.replace("_", " ")
-    if most is None:
-        return f"{words} any" if least is None else f"{words} {least} or more"
-    return f"{words} {most}" if least == most else f"{words} {least or 0} to {most}"
+    return "; ".join([*parts, habits] if habits else parts) or "any"
 
 
 def _rule(name: str, result: FormResult, findings: Findings, voice: Voice) -> Grid:
@@ -131,12 +128,25 @@ def _bar(bar: int | None) -> str:
     return "never" if bar is None else signed(bar)
 
 
-def _rule_notes(result: FormResult) -> list[str]:
+def _reckoned(name: str, result: ReckonedResult) -> Nested:
+    """Say a rule without rows, one sentence after the other."""
+    texts = (re.sub(r"(?<!\w)-(?=\d)", "−", text) for text in result.rule.sentences())
+    said = tuple(Sentence(clean(text), ()) for text in texts)
+    return Nested(FORM_TITLES.get(name, f"The form {name}"), said)
+
+
+def _notes(findings: Findings) -> tuple[Note, ...]:
+    results: list[tuple[str, FormResult | ReckonedResult]] = list(_forms(findings))
+    results += findings.reckoned.items()
+    return tuple(Note(f"{name}:", " ".join(_rule_notes(result))) for name, result in results)
+
+
+def _rule_notes(result: FormResult | ReckonedResult) -> list[str]:
     said = []
     if result.information_kept is not None:
         kept = five(result.information_kept)
         said.append(f"Information kept {kept} (share of the log-loss gain).")
-    if result.information_ceiling is not None:
+    if isinstance(result, FormResult) and result.information_ceiling is not None:
         count = len(result.rule.rows)
         said.append(
             f"Ceiling over any {count} groups of situations: {five(result.information_ceiling)}."
@@ -146,9 +156,12 @@ def _rule_notes(result: FormResult) -> list[str]:
 
 def _figures(findings: Findings) -> Grid:
     """Return every figure of every way of playing, with five digits."""
+    forms = _forms(findings)
     ways = [
         ("exact", findings.exact),
-        *((name, result.figures) for name, result in _forms(findings)),
+        *((name, result.figures) for name, result in forms),
+        *((f"{n}, all use it", r.everybody) for n, r in forms if r.everybody is not None),
+        *((name, result.figures) for name, result in findings.reckoned.items()),
         ("plain count", findings.plain_count),
         ("alone", findings.alone),
     ]
@@ -171,11 +184,24 @@ def _figures(findings: Findings) -> Grid:
         (label, *(_measure(measure(way), label, findings) for _, way in ways))
         for label, measure in measures
     )
+    agreed = {name: result.agreed for name, result in forms if result.agreed is not None}
+    if agreed:
+        rows += tuple(
+            (label, *(five(measure(agreed[n])) if n in agreed else "" for n, _ in ways))
+            for label, measure in _AGREEMENT
+        )
     return Grid(
-        "Figures with five digits, one adopter",
+        "Figures with five digits; one adopter where nothing else is said",
         ("measure (probability where no unit stands)", *(name for name, _ in ways)),
         rows,
     )
+
+
+_AGREEMENT: tuple[tuple[str, Callable[[Agreed], float]], ...] = (
+    ("ends as exact play does on the same observations", lambda one: one.same),
+    ("ends opposite to it", lambda one: one.opposite),
+    ("steps apart from it, on the same observations", lambda one: one.steps_apart),
+)
 
 
 def _measure(value: float | None, label: str, findings: Findings) -> str:
@@ -189,8 +215,16 @@ def _figure_notes(findings: Findings) -> tuple[str, ...]:
         "One adopter: only this agent uses the rule; the others play exact and take everyone for"
         " exact. Exact play is a benchmark and no ceiling: thresholds are not chosen anew for"
         " company, so benefit kept may exceed 1.",
+        "All use it: everybody who can, and the others play exact. What the agent’s exact play is"
+        " held against is the group in which all play exact.",
         "Plain count: a commitment seen counts as that agent’s threshold less the prior, an"
         " undecided agent as nothing.",
+    ]
+    said += [
+        f"The {name} is worse than ignoring the neighbours: its risk is larger than that of an"
+        " agent alone."
+        for name, result in _forms(findings)
+        if result.figures.worse_than(findings.alone)
     ]
     if not findings.watching_is_worth:
         said.append(

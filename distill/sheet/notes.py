@@ -39,7 +39,7 @@ def acts(findings: Findings, voice: Voice, counting: Counting, card: Card) -> tu
         "table": "Add what it counts to what you have seen yourself.",
     }[card.kind]
     fits = "what is shown" if len(voice.seen) > 1 else f"what {voice.those} shows"
-    if card.kind == "table":
+    if card.kind == "table" and not findings.count_is_whole:
         look = ("Take one fresh look.", "Keep account of all you have seen as you always do.")
     states = [voice.shows_short[state] for state in ("undecided", "plus", "minus")]
     if any(not result.rule.is_grid for result in findings.forms.values()):
@@ -89,7 +89,7 @@ def notes(findings: Findings, voice: Voice, counting: Counting, card: Card) -> t
         found = [
             Note(
                 "Why there is no card:",
-                "none was asked for. This sheet says only how strongly speaks what is shown; the"
+                "none was asked for. This sheet says only how strongly what is shown speaks; the"
                 " look-up on the screen puts it together with your own signs."
                 if findings.count_is_whole
                 else "what you see here does not come in whole signs, so there is no count to keep"

@@ -139,7 +139,7 @@ class Curve:
 
 @dataclass(frozen=True)
 class Chart:
-    """The chart of worths over the checks, in user units of its view box."""
+    """A chart, in user units of its view box; ``key`` tells it from others on the page."""
 
     width: int
     height: int
@@ -157,6 +157,7 @@ class Chart:
     description: str
     reading: str
     figures: Grid
+    key: str = "chart"
 
 
 @dataclass(frozen=True)
@@ -191,6 +192,7 @@ class Modeller:
     doubts_notes: tuple[str, ...]
     exactness: tuple[str, ...]
     settings: Grid
+    sizes: Chart | None = None
 
 
 @dataclass(frozen=True)

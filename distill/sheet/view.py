@@ -44,7 +44,7 @@ def sheet(findings: Findings) -> Sheet:
         notes=notes(findings, words, kept, front),
         cost_heading="Wrong calls of 100, if only you use it",
         costs=costs(findings, words),
-        cost_note=cost_note(findings),
+        cost_note=cost_note(findings, words),
         example_heading="A made-up example",
         example=example(findings, words, kept, front),
         foot=(

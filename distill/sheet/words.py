@@ -234,6 +234,15 @@ def signed(number: int) -> str:
     return "0" if number == 0 else f"{'−' if number < 0 else '+'}{abs(number)}"
 
 
+def range_words(least: int | None, most: int | None, open_end: str = "or more") -> str:
+    """Say a range of whole numbers, both ends included; ``None`` is open."""
+    if most is None:
+        return "any" if least is None else f"{least} {open_end}"
+    if least is None or least == 0:
+        return "0" if most == 0 else f"at most {most}"
+    return str(least) if least == most else f"{least} to {most}"
+
+
 def told(heading: str, note: str) -> str:
     """Join a heading and the remark under it into one phrase."""
     if not note:

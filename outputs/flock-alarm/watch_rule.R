@@ -3,8 +3,8 @@
 #
 # Case: Flock alarm on a stubble field
 # Case flock-alarm, digest adbf2c693957; thumbwright 0.1.0.
-# For Agent 1 (a1), watching Agent 2 (a2), Agent 3 (a3), Agent 4 (a4), Agent 5 (a5), Agent 6
-#   (a6), Agent 7 (a7), Agent 8 (a8).
+# For any of the group, all being alike: here Agent 1 (a1), watching Agent 2 (a2), Agent 3
+#   (a3), Agent 4 (a4), Agent 5 (a5), Agent 6 (a6), Agent 7 (a7), Agent 8 (a8).
 # plus: hawk near
 # minus: no hawk
 # Worked out for steps 1 to 20. At later steps the rows that are open at the end still hold,
@@ -23,9 +23,11 @@
 # Share of outings that end in a wrong answer, given that plus or that minus is true, and the
 #   mean number of steps used, where this agent alone uses the rule and the others are exact.
 #   It holds for this very rule: price it again after any change.
-# Not every figure is exact. Others take the agent for exact; by a rule it shows them what
-#   their model calls impossible up to 1.22 times per outing, which they read as the same call
-#   at the latest earlier moment at which the model allowed it, or as no news.
+# Not every figure is exact. What happens where everybody uses the rule was sampled, 4,000
+#   public histories of too many to enumerate; those figures carry standard errors and are not
+#   exact. Others take the agent for exact; by a rule it shows them what their model calls
+#   impossible up to 1.22 times per outing, which they read as the same call at the latest
+#   earlier moment at which the model allowed it, or as no news.
 #
 #                                 wrong, plus true  wrong, minus true  mean steps
 # decide(), by value()                      0.0331             0.0633        5.52
@@ -42,9 +44,9 @@
 #
 # ARGUMENTS
 # tally: the own evidence in nats, the prior left out: the sum over all own observations of
-#   the natural logarithm of how much likelier each is if plus is true (here 1.349926717 * own
-#   count - 0.2513144283 * step)
-# step: own observations so far, this one included (steps, of second each); from 1
+#   the natural logarithm of how much likelier each is if plus is true (here 1.349926716949 *
+#   own count - 0.2513144282809 * step)
+# step: own observations so far, this one included (steps of second); from 1
 # plus_shown: how many of the seen agents show plus; from 0
 # minus_shown: how many of the seen agents show minus; from 0
 #

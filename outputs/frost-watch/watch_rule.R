@@ -39,7 +39,7 @@
 # ARGUMENTS
 # tally: the own count: a whole number, the sum over all own observations of what each moves
 #   it (mild sign -1, frost sign +1)
-# step: own observations so far, this one included (steps, of 10 minutes each); from 1
+# step: own observations so far, this one included (steps of 10 minutes); from 1
 # upper: what Upper field shows now (undecided: lamp dark; plus: lamp lit; minus: lamp
 #   blinking)
 #

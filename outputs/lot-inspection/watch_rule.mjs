@@ -40,7 +40,7 @@
 // ARGUMENTS
 // tally: the own count: a whole number, the sum over all own observations of what each moves
 //   it (0 +0, 1 +1)
-// step: own observations so far, this one included (steps, of one item each); from 1
+// step: own observations so far, this one included (steps of one item); from 1
 // first: what First inspector shows now (undecided: no tag yet; plus: lot tagged rejected;
 //   minus: lot tagged accepted)
 //

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 from thumbwright.exact.evidence.binary import coin
 from thumbwright.exact.group import Agent, Group, Thresholds, same_thresholds
 
@@ -24,6 +26,21 @@ def network(
         Agent(f"a{i}", evidence, bars, tuple(f"a{k}" for k in seen)) for i, seen in enumerate(sees)
     ]
     return Group(tuple(agents), 0.0, horizon, exchange)
+
+
+def unlike(group: Group) -> Group:
+    """The same group, no two agents alike by a hair: nothing can be worked out for several."""
+    agents = [
+        replace(
+            agent,
+            thresholds=tuple(
+                (share, Thresholds(bars.minus, bars.plus + 1e-6 * i))
+                for share, bars in agent.thresholds
+            ),
+        )
+        for i, agent in enumerate(group.agents)
+    ]
+    return replace(group, agents=tuple(agents))
 
 
 def relay(size: int) -> Sees:

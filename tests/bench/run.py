@@ -14,7 +14,16 @@ from unittest.mock import patch
 
 import numpy as np
 
-from tests.bench.networks import chain, crowd, network, relay, ring, star, two_way_ring
+from tests.bench.networks import (
+    chain,
+    crowd,
+    network,
+    relay,
+    ring,
+    star,
+    two_way_ring,
+    unlike,
+)
 from tests.slow import group as slow
 from tests.slow.enumerate import enumerate_group
 from thumbwright.exact import expressions
@@ -83,12 +92,13 @@ def bare_products(group: Group) -> tuple[float, float]:
 def products(tiny: bool) -> None:
     """The engine against bare matrix products."""
     head("Two-way ring of five, -2 and +4 observations, settle: against bare matrix products")
-    group = network(two_way_ring(5), 3 if tiny else 12, "settle")
-    seconds = best(lambda: solve(group), 2)
-    same, anew = bare_products(group)
-    say("engine", seconds)
-    say("its matrix products, bare", same, f"engine / bare = {seconds / same:.2f}")
-    say("products of all histories anew, bare", anew, f"engine / bare = {seconds / anew:.2f}")
+    alike = network(two_way_ring(5), 3 if tiny else 12, "settle")
+    for name, group in (("all alike", alike), ("no two alike", unlike(alike))):
+        seconds = best(lambda g=group: solve(g))
+        same, anew = bare_products(group)
+        say(f"{name}, engine", seconds)
+        say("its matrix products, bare", same, f"engine / bare = {seconds / same:.2f}")
+        say("products of all histories anew, bare", anew, f"engine / bare = {seconds / anew:.2f}")
 
 
 def enumeration(tiny: bool) -> None:
@@ -109,14 +119,17 @@ def enumeration(tiny: bool) -> None:
 
 def growth(tiny: bool) -> None:
     """How the time grows with the horizon and with the number of agents."""
-    head("Growth with the horizon: mutual pair")
-    for exchange, low, high in (("once", -4, 8), ("settle", -4, 8)):
-        first = 0.0
-        for horizon in (5, 10) if tiny else (40, 80, 160):
-            group = network(crowd(2), horizon, exchange, low, high)
-            seconds = best(lambda g=group: solve(g), 3 if horizon > 40 else 10)
-            first = first or seconds
-            say(f"{exchange}, {horizon} steps", seconds, f"{seconds / first:.1f} times the first")
+    head("Growth with the horizon: mutual pair, -4 and +8 observations")
+    for exchange in ("once", "settle"):
+        for name in ("alike", "not alike"):
+            first = 0.0
+            for horizon in (5, 10) if tiny else (40, 80, 160):
+                group = network(crowd(2), horizon, exchange, -4, 8)
+                group = group if name == "alike" else unlike(group)
+                seconds = best(lambda g=group: solve(g), 5 if horizon > 40 else 20)
+                first = first or seconds
+                more = f"{seconds / first:.1f} times the first"
+                say(f"{exchange}, {name}, {horizon} steps", seconds, more)
     head("Growth with the number of agents")
     for name, shape, exchange, horizon, sizes in (
         ("relay", relay, "once", 40, (50, 100, 200)),
@@ -131,8 +144,9 @@ def growth(tiny: bool) -> None:
             say(f"{name} of {size}, {exchange}", seconds, f"{1e3 * seconds / size:.2f} ms an agent")
     head("Crowd of three through tensors, 20 steps")
     for exchange in ("once", "settle"):
-        group = network(crowd(3), 3 if tiny else 20, exchange)
-        say(exchange, best(lambda g=group: solve(g), 3))
+        alike = network(crowd(3), 3 if tiny else 20, exchange)
+        for name, group in (("all alike", alike), ("no two alike", unlike(alike))):
+            say(f"{exchange}, {name}", best(lambda g=group: solve(g), 3))
 
 
 def memory(tiny: bool) -> None:

@@ -71,7 +71,8 @@ def test_help_needs_nothing_heavy(words: list[str]) -> None:
 def test_help_names_every_verb(capsys: pytest.CaptureFixture[str]) -> None:
     assert main(["--help"]) == 0
     text = capsys.readouterr().out
-    assert list(verbs.commands) == ["starter", "check", "sheet", "jumps", "outcomes", "price"]
+    known = ["starter", "check", "sheet", "jumps", "outcomes", "price", "replay"]
+    assert list(verbs.commands) == known
     assert all(f"  {verb} " in text for verb in verbs.commands)
 
 
@@ -165,7 +166,7 @@ def test_jumps(patch: Patch, capsys: pytest.CaptureFixture[str]) -> None:
 def test_outcomes_and_price(patch: Patch, capsys: pytest.CaptureFixture[str]) -> None:
     patch("outcomes", lambda case, _limits: {"who": case.name, "mean": None, "share": 0.1 + 0.2})
     patch("outcomes_text", lambda found: f"text of {found['who']}")
-    patch("price", lambda case, rule, _progress, _limits: {"who": case.name, "rule": rule})
+    patch("price", lambda case, rule, _progress, _limits, _use: {"who": case.name, "rule": rule})
     patch("price_text", lambda found: f"price of {found['rule']}")
     assert main(["outcomes", "frost-watch"]) == 0
     assert capsys.readouterr().out == "text of frost-watch\n"

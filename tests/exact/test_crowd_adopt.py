@@ -3,18 +3,23 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import replace
 from functools import reduce
 
 import numpy as np
 import pytest
 
+from tests.exact.comparing import COIN
 from tests.exact.crowds import BIASED, CERTAIN, UNKNOWN, bars, even, kind, network
+from tests.slow import simulate as sim
+from thumbwright.exact.adopters import adopt_together
 from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.crowd import Crowd, enumerate_crowd, enumerate_situations
 from thumbwright.exact.crowd_adopt import CrowdAdoption, adopt_crowd, exact_member
 from thumbwright.exact.crowd_figures import Weights
-from thumbwright.exact.crowd_shown import Showing, enumerate_shown, sample_shown
+from thumbwright.exact.crowd_policy import InPublic
+from thumbwright.exact.crowd_shown import enumerate_shown, sample_shown
 from thumbwright.exact.engine import Solution, solve
 from thumbwright.exact.errors import ModelError
 from thumbwright.exact.play import Act, Play, Situation, adopt
@@ -55,7 +60,7 @@ class Card:
         )
         return self.at(situation.step, plus, minus)
 
-    def of_crowd(self, showing: Showing) -> Act:
+    def of_crowd(self, showing: InPublic) -> Act:
         return self.at(showing.step, showing.plus.sum(axis=0), showing.minus.sum(axis=0))
 
 
@@ -224,3 +229,81 @@ def test_what_is_too_much_is_refused() -> None:
     with pytest.raises(ModelError, match="even"):
         sample_shown(even(3), 0, 0.0, 4, "once", 5, 1)
     assert math.isclose(enumerate_shown(even(3), 0, 0.5, 2, "once").prior_plus, 0.6224593312)
+
+
+@pytest.mark.parametrize("exchange", ["once", "settle"])
+@pytest.mark.parametrize("name", CROWDS)
+def test_everybody_by_a_rule_is_the_network_in_which_everybody_is(name: str, exchange: str) -> None:
+    crowd, prior = CROWDS[name]
+    if name == "unknown thresholds":
+        crowd = Crowd((kind(2, UNKNOWN), kind(2, bars(-2, 3))))
+    horizon = 4
+    solution = solution_of(crowd, prior, horizon, exchange)
+    by_kind = [Card(k, horizon, crowd.size, by_value=k == 1) for k in range(len(crowd.kinds))]
+    policies = [card.of_crowd for card in by_kind]
+    played = adopt_together(
+        solution,
+        {
+            member: card.of_network
+            for one, card in zip(crowd.kinds, by_kind, strict=True)
+            for member in one.members
+        },
+    )
+    for number, one in enumerate(crowd.kinds):
+        shown = enumerate_shown(crowd, number, prior, horizon, exchange, policies=policies)
+        found = adopt_crowd(shown, policies[number])
+        track = played.tracks[solution.group.index[one.members[0]]]
+        expected = Play(track, 0.0, None)
+        assert apart(found, expected, solution.group.prior_plus) < 1e-12, number
+        assert found.off_model.max() == 0.0
+
+
+def test_worths_among_rule_users_are_those_of_what_they_really_do() -> None:
+    """The log ratio of the probabilities of each history, the member held to undecided."""
+    crowd = Crowd((kind(4, bars(-2, 3)),))
+    card = Card(3, 5, 4, by_value=False)
+    shown = enumerate_shown(crowd, 0, 0.2, 5, "settle", policies=[card.of_crowd])
+    for showing in shown.parts[0]:
+        told = ~np.isnan(showing.worth)
+        ratio = showing.log_shown[0] - showing.log_shown[1]
+        assert showing.worth[told] == pytest.approx(ratio[told], abs=1e-10)
+    plain = enumerate_shown(crowd, 0, 0.2, 5, "settle")
+    assert len(plain.parts[0][-1]) != len(shown.parts[0][-1])
+
+
+def test_a_crowd_of_eight_by_one_card_agrees_with_simulation() -> None:
+    """Drawn bird by bird and observation by observation."""
+    size, horizon, runs = 8, 8, 20_000
+    crowd = even(size, -3, 3)
+
+    def bars_at(plus: int, minus: int) -> tuple[int, int]:
+        return (-3, 3) if plus == minus else (-5, 1) if plus > minus else (-1, 5)
+
+    table = np.array([[bars_at(p, m) for m in range(size)] for p in range(size)])
+
+    def card(seen: InPublic) -> Act:
+        low, high = table[seen.plus.sum(axis=0), seen.minus.sum(axis=0)].T
+        return Act(np.zeros(len(seen)), low, high)
+
+    shown = enumerate_shown(crowd, 0, 0.0, horizon, "once", policies=[card])
+    found = adopt_crowd(shown, card)
+    sees = [tuple(k for k in range(size) if k != agent) for agent in range(size)]
+
+    def player(
+        _step: int, _round: int, seen: Sequence[sim.Seen], _tally: FloatArray, count: IntArray
+    ) -> IntArray:
+        plus, minus = (sum((one.state == code).astype(int) for one in seen) for code in (1, 2))
+        low, high = np.moveaxis(table[plus, minus], -1, 0)
+        return np.where(count >= high, sim.PLUS, np.where(count <= low, sim.MINUS, sim.UNDECIDED))
+
+    evidence = [sim.values(COIN, sim.COIN_COUNTS)] * size
+    for given, answer in enumerate(("plus", "minus")):
+        drawn = sim.simulate(sees, evidence, [player] * size, horizon, answer, runs, 5 + given)
+        # All are alike: the mean over them, its error from the spread between runs.
+        for name, state in (("plus", sim.PLUS), ("minus", sim.MINUS), ("undecided", 0)):
+            share = (drawn.state == state).mean(axis=1)
+            error = share.std(ddof=1) / np.sqrt(runs)
+            assert abs(share.mean() - getattr(found, name)[given, 0]) < 4 * error, name
+        used = np.where(drawn.state == 0, horizon, drawn.step).mean(axis=1)
+        error = used.std(ddof=1) / np.sqrt(runs)
+        assert abs(used.mean() - found.steps[given, 0]) < 4 * error

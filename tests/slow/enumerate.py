@@ -28,7 +28,7 @@ from __future__ import annotations
 
 import math
 from collections import defaultdict
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from itertools import product
 from typing import NamedTuple
@@ -236,7 +236,7 @@ def _commit(
     now: Moment,
     last: Moment | None,
     held: int | None = None,
-    adopter: tuple[int, Rule] | None = None,
+    adopters: Mapping[int, Rule] | None = None,
 ) -> list[Branch]:
     """Let every undecided agent that is not held decide, all at the same time.
 
@@ -250,8 +250,8 @@ def _commit(
             if event is not None or agent == held or not branch.observed[agent]:
                 continue  # nobody commits before its first observation
             seen, tally = tables.seen(agent, branch.shown), branch.tally[agent]
-            if adopter is not None and agent == adopter[0]:
-                answer = adopter[1](*now, seen, tally, branch.observed[agent])
+            if adopters is not None and agent in adopters:
+                answer = adopters[agent](*now, seen, tally, branch.observed[agent])
             else:
                 reading, social, nothing = tables.read(agent, index, seen)
                 fresh = (e is not None and e.moment == last for e in seen)
@@ -358,7 +358,14 @@ def enumerate_group(group: Group) -> Enumeration:
 def play_rule(
     group: Group, model: Enumeration, adopter: int, rule: Rule, rounds: str = "model"
 ) -> Enumeration:
-    """Play the group with one agent following a rule; the others take it for exact.
+    """Play the group with one agent following a rule; see :func:`play_rules`."""
+    return play_rules(group, model, {adopter: rule}, rounds)
+
+
+def play_rules(
+    group: Group, model: Enumeration, adopters: Mapping[int, Rule], rounds: str = "model"
+) -> Enumeration:
+    """Play the group with some agents following rules; the others take all for exact.
 
     The rounds of a settle step are those of the model (``rounds="model"``), which everybody
     expects; or (``"actual"``) the step goes on as long as somebody can commit in this very play,
@@ -373,7 +380,7 @@ def play_rule(
         round_, going = 0, True
         while going:
             now = (step, round_)
-            after = _commit(group, tables, actual, watch, now, last, adopter=(adopter, rule))
+            after = _commit(group, tables, actual, watch, now, last, adopters=adopters)
             changed = any(a.shown != b.shown for a, b in zip(actual, after, strict=True))
             actual, last = after, now
             round_ += 1

@@ -32,11 +32,12 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from pathlib import Path
+from typing import Any
 
 from thumbwright.distill.code.inputs import STEP, Input, Part, Parts, parts_of
 from thumbwright.distill.code.told import row_in
 from thumbwright.distill.findings import Findings
-from thumbwright.distill.rules import Row
+from thumbwright.distill.rules import Row, Rule
 from thumbwright.exact.walk import TIE
 
 Given = dict[str, int | str]
@@ -215,6 +216,22 @@ def _same(one: Value | Answer, other: Value | Answer, ulps: int) -> bool:
     return one == other
 
 
+def first_row(rule: Rule, given: dict[str, Any]) -> Row | None:
+    """The first row that holds, by nothing but comparisons."""
+    for row in rule.rows:
+        ends = {"step": (row.step_from, row.step_to), **row.ranges}
+        named = {f"{a}_shows": s for a, s in row.shows.items()}
+        named |= {f"{a}_thresholds": s for a, s in row.thresholds.items()}
+        if row.first_answer is not None:
+            named["first_answer"] = row.first_answer
+        if all(
+            (least is None or given[key] >= least) and (most is None or given[key] <= most)
+            for key, (least, most) in ends.items()
+        ) and all(given[key] in names for key, names in named.items() if key in given):
+            return row
+    return None
+
+
 def _held(part: Part, asked: Asked) -> list[Row | None]:
     keys = [one.key for one in part.inputs]
     known: dict[tuple[int | str, ...], Row | None] = {}
@@ -258,8 +275,7 @@ def _any(
 
 def _tallies(part: Part, given: Given, findings: Findings) -> list[float]:
     """Each bar of the row that holds and its neighbours, or tallies about the thresholds."""
-    number = row_in(part.rule, given)
-    row = Row() if number is None else part.rule.rows[number]
+    row = first_row(part.rule, given) or Row()
     if not part.valued:
         bars = [bar for bar in (row.minus_at, row.plus_at) if bar is not None]
         return sorted({0, *(bar + by for bar in bars for by in (-1, 0, 1))})

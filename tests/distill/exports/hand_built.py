@@ -94,6 +94,7 @@ def counts() -> Findings:
             plus_at=1,
         ),
         Row(first_answer=frozenset({"minus"}), minus_at=-1, plus_at=5),
+        Row(first_answer=frozenset({"plus", "both"}), minus_at=-2, plus_at=2),
     )
     return of_rules(Rule("lines", "mill", SEEN, rows))
 
@@ -159,5 +160,6 @@ FINDINGS: dict[str, Callable[[], Findings]] = {
     "odd ids": odd_ids,
     "frost-watch": lambda: starter("frost-watch"),
     "lot-inspection": lambda: starter("lot-inspection"),
+    "flock-alarm": lambda: starter("flock-alarm"),
 }
 """By name. "odd ids" has too many inputs for every combination of them to be asked."""

@@ -16,40 +16,25 @@ from thumbwright.distill.code.inputs import Part
 from thumbwright.distill.exports import render_all
 from thumbwright.distill.findings import Findings
 from thumbwright.distill.rule_reading import read_rule
-from thumbwright.distill.rules import Row, Rule
+from thumbwright.distill.rules import Row
 
 
 def by_hand(_folder: Path, findings: Findings, asked: Asked) -> Answers:
     """The rule read row by row with nothing but comparisons."""
     value, decide = asked.parts.value, asked.parts.decide
-    rows = [_first(decide.rule, s.given) for s in asked.situations]
+    rows = [agreement.first_row(decide.rule, s.given) for s in asked.situations]
     return Answers(
         None
         if value is None
         else [
             None if row is None else row.value
-            for row in (_first(value.rule, s.given) for s in asked.situations)
+            for row in (agreement.first_row(value.rule, s.given) for s in asked.situations)
         ],
         [
             None if row is None else agreement.answer(decide, row, s.tally, findings)
             for row, s in zip(rows, asked.situations, strict=True)
         ],
     )
-
-
-def _first(rule: Rule, given: dict[str, Any]) -> Row | None:
-    for row in rule.rows:
-        ends = {"step": (row.step_from, row.step_to), **row.ranges}
-        named = {f"{a}_shows": s for a, s in row.shows.items()}
-        named |= {f"{a}_thresholds": s for a, s in row.thresholds.items()}
-        if row.first_answer is not None:
-            named["first_answer"] = row.first_answer
-        if all(
-            (least is None or given[key] >= least) and (most is None or given[key] <= most)
-            for key, (least, most) in ends.items()
-        ) and all(given[key] in names for key, names in named.items() if key in given):
-            return row
-    return None
 
 
 def from_csv(folder: Path, findings: Findings, asked: Asked) -> Answers:
