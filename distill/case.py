@@ -16,6 +16,7 @@ from pydantic import ConfigDict, Field, ValidationInfo, field_validator, model_v
 from pydantic_core import PydanticCustomError
 
 from thumbwright.distill import crosschecks
+from thumbwright.distill.doubt_keys import Doubt
 from thumbwright.distill.editor_schema import editor_schema
 from thumbwright.distill.evidence_keys import Evidence
 from thumbwright.distill.faults import key_text
@@ -248,6 +249,9 @@ class _Shared(Part):
     thresholds: dict[Id, Thresholds] = Field(min_length=1, description="Named pairs of thresholds.")
     rule: RuleWanted
     costs: Costs | None = None
+    doubts: dict[Id, Doubt] = Field(
+        default={}, description="Ways in which the case may be wrong, for the price of that."
+    )
 
 
 class CaseFile(_Shared):
@@ -346,6 +350,8 @@ class Case(_Shared):
             if content["rule"][key] == RuleWanted.model_fields[key].default:
                 del content["rule"][key]
         content["agents"] = list(content["agents"].items())
+        if not content["doubts"]:
+            del content["doubts"]  # as in cases from before there were any
         canonical = json.dumps(content, sort_keys=True, separators=(",", ":"), allow_nan=False)
         return hashlib.sha256(canonical.encode("utf-8")).hexdigest()[:12]
 

@@ -10,6 +10,7 @@ import math
 from collections.abc import Collection, Iterator, Mapping
 from typing import Any
 
+from thumbwright.distill.doubt_checks import doubts
 from thumbwright.distill.faults import Key, close_match, hint, quoted, shown
 from thumbwright.distill.group_checks import agents_and_network, mixture, rule
 from thumbwright.distill.plain import Plain
@@ -49,6 +50,7 @@ def contradictions(
         costs(plain),
         agents_and_network(plain),
         rule(plain),
+        doubts(plain, evidence),
     )
     return list(dict.fromkeys(found for check in checks for found in check))
 

@@ -159,6 +159,38 @@ class WorthCurve:
 
 
 @dataclass(frozen=True)
+class Doubted:
+    """What a rule costs in a world that is not what the case says.
+
+    Everybody goes by the case all the same; ``exact`` is the full calculation under the wrong
+    assumptions, and what is lost and added is against it. ``benefit_kept`` is the risk saved over
+    ``alone`` in that world, as a share of what exact play saves where the case is right: it is
+    negative where looking does harm. ``off_model`` counts what was read by the off-model
+    convention.
+
+    ``name`` is for files, ``says`` a plain phrase on what is really so, and ``how`` says how much;
+    it may be empty.
+    """
+
+    name: str
+    says: str
+    how: str
+    rule: Figures
+    exact: Figures
+    alone: Figures
+
+    @property
+    def is_exact(self) -> bool:
+        """Whether nothing in it was read by the off-model convention."""
+        return not any(way.off_model for way in (self.rule, self.exact, self.alone))
+
+    @property
+    def harms(self) -> bool:
+        """Whether the rule is worse than looking at nobody, by risk."""
+        return self.rule.benefit_kept is not None and self.rule.benefit_kept < -1e-9
+
+
+@dataclass(frozen=True)
 class Findings:
     """Everything a sheet prints about one agent of one case.
 
@@ -186,6 +218,10 @@ class Findings:
         whether anyone is on watch. Empty where there is no whole count.
     is_exact : bool
         Whether nothing in any figure was split, dropped, sampled or read off-model.
+    doubts : tuple of Doubted
+        The rule of the first form where the case is not right.
+    not_doubted : tuple of str
+        Plain sentences on what was left out of that.
     example : tuple of dict
         A made-up run: ``step``, ``shows`` (id to state), ``sign`` ("plus", "minus" or a label),
         ``peg`` (own count), ``line`` (row number), ``act`` ("watch", "plus", "minus"). Steps at
@@ -218,6 +254,8 @@ class Findings:
     near_tie_mass: float
     example: tuple[dict[str, Any], ...]
     reckoned: dict[str, ReckonedResult] = field(default_factory=dict)
+    doubts: tuple[Doubted, ...] = ()
+    not_doubted: tuple[str, ...] = ()
 
     def _repr_html_(self) -> str:
         """Tables and the chart, for notebooks."""

@@ -15,8 +15,10 @@ from thumbwright.distill.assemble import NO_LIMITS, Limits
 from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.crowds import HISTORIES
+from thumbwright.distill.doubts import doubted
 from thumbwright.distill.example import example
 from thumbwright.distill.findings import (
+    Doubted,
     Figures,
     Findings,
     FormResult,
@@ -56,6 +58,7 @@ def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIM
     figures += [plain, alone]
     figures += [f.everybody for f in forms.values() if f.everybody is not None]
     caveats = (*_caveats(pricer, figures, missing), *left_out)
+    doubts, not_doubted = _doubts(pricer, case, main.rule, limits, progress)
     return Findings(
         case=case,
         digest=case.digest,
@@ -83,7 +86,17 @@ def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIM
         near_tie_mass=pricer.inexact().near_tie_mass,
         example=example(pricer, main.rule) if isinstance(pricer, NetworkPricer) else (),
         reckoned=reckoned,
+        doubts=doubts,
+        not_doubted=not_doubted,
     )
+
+
+def _doubts(
+    pricer: Pricer, case: Case, rule: Rule, limits: Limits, progress: Progress | None
+) -> tuple[tuple[Doubted, ...], tuple[str, ...]]:
+    if isinstance(pricer, NetworkPricer):
+        return doubted(pricer, case, rule, limits, progress)
+    return (), ("Wrong assumptions are not priced where everybody sees everybody and is counted.",)
 
 
 def _forms(

@@ -8,10 +8,10 @@ from typing import Any
 
 from thumbwright.distill.case import Case
 from thumbwright.distill.cautions import cautions
+from thumbwright.distill.columns import columns
 from thumbwright.distill.decimals import json_number
 from thumbwright.distill.replay import WATCH, Step
 from thumbwright.distill.rules import SHOWN, Rule
-from thumbwright.distill.texts import columns
 
 
 def replay_record(

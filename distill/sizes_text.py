@@ -6,7 +6,8 @@ from typing import Any
 
 from thumbwright.distill.case import Case
 from thumbwright.distill.cautions import cautions
-from thumbwright.distill.texts import INEXACT, columns, figures_table, losses_text, with_error
+from thumbwright.distill.columns import columns
+from thumbwright.distill.texts import INEXACT, figures_table, losses_text, with_error
 
 HEAD = (
     "rows",

@@ -8,23 +8,12 @@ from typing import Any
 
 from thumbwright.distill.case import Case, is_crowd
 from thumbwright.distill.cautions import cautions
+from thumbwright.distill.columns import columns
 from thumbwright.distill.crowds import ENUMERATED, CrowdEngine, crowd_in
+from thumbwright.distill.doubts_text import doubts_text
 from thumbwright.distill.findings import Figures, Findings
 from thumbwright.exact.forecast import Forecast
 from thumbwright.exact.group import Agent, Group
-
-
-def columns(rows: Sequence[Sequence[str]], right: Sequence[int] = ()) -> list[str]:
-    """Rows of cells as aligned lines; the columns named in ``right`` end flush."""
-    widths = [max(len(row[k]) for row in rows) for k in range(len(rows[0]))]
-    lines = []
-    for row in rows:
-        cells = [
-            cell.rjust(width) if k in right else cell.ljust(width)
-            for k, (cell, width) in enumerate(zip(row, widths, strict=True))
-        ]
-        lines.append("  ".join(cells).rstrip())
-    return lines
 
 
 def check_text(case: Case, group: Group, engine: Sequence[str]) -> str:
@@ -196,6 +185,7 @@ def sheet_text(findings: Findings, written: Sequence[Path]) -> str:
     ]
     if not findings.watching_is_worth:
         lines.append("Watching is worth nothing here.")
+    lines += doubts_text(findings)
     lines += [f"Note: {text}" for text in findings.caveats]
     lines += ["", *cautions(case.question.stakes), ""]
     lines += [f"Wrote {path}" for path in written]

@@ -20,6 +20,7 @@ import numpy as np
 from thumbwright.exact.alike import likeness
 from thumbwright.exact.arrays import FloatArray
 from thumbwright.exact.errors import ModelError
+from thumbwright.exact.evidence.law import Law
 from thumbwright.exact.forecast import refuse_too_large
 from thumbwright.exact.group import Group
 from thumbwright.exact.player import (
@@ -144,10 +145,13 @@ def solve(
 
 
 def run(
-    group: Group, readers: Sequence[Reader], progress: Progress | None = None
+    group: Group,
+    readers: Sequence[Reader],
+    progress: Progress | None = None,
+    laws: Sequence[Law | None] | None = None,
 ) -> tuple[Track, ...]:
-    """Play the group with one reader per agent and return their tracks."""
-    return Stage(group, readers).play(progress)
+    """Play the group with one reader per agent and return their tracks; ``laws`` as for Stage."""
+    return Stage(group, readers, laws=laws).play(progress)
 
 
 def _two(pair: FloatArray) -> tuple[float, float]:

@@ -14,7 +14,7 @@ is reported.
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -33,6 +33,8 @@ from thumbwright.exact.engine import (
     by_value,
     run,
 )
+from thumbwright.exact.evidence.law import Law
+from thumbwright.exact.group import Group
 
 NEVER = np.int64(1) << 40
 """A bar this high (or, negative, this low) is never reached."""
@@ -228,20 +230,36 @@ def _play(solution: Solution, position: int, reader: Reader, whole: bool) -> tup
     group = solution.group
     alone = not group.influences(position)
     if alone or (not whole and silence_is_possible(solution, position)):
-        return _against(solution, position, reader), 0.0
+        return against(group, solution.tracks, position, reader), 0.0
     readers: list[Reader] = [AmongOthersReader(solution, i) for i in range(len(group.agents))]
     readers[position] = reader
     track = run(group, readers)[position]
     return track, sum(r.off_model for r in readers if isinstance(r, AmongOthersReader))
 
 
-def _against(solution: Solution, position: int, reader: Reader) -> Track:
-    """Play one agent against displays that it cannot change."""
-    group = solution.group
-    player = Player(group, position, reader)
-    seen = tuple(solution.tracks[other].events for other in group.sees[position])
+def against(
+    group: Group,
+    tracks: Sequence[Track],
+    position: int,
+    reader: Reader,
+    law: Law | None = None,
+) -> Track:
+    """Play one agent against displays that it cannot change.
+
+    Parameters
+    ----------
+    group : Group
+    tracks : sequence of Track
+        One per agent, of a play of the whole group.
+    position : int
+    reader : Reader
+    law : Law, optional
+        Of what the agent really observes, where that is not what it takes it for.
+    """
+    player = Player(group, position, reader, law)
+    seen = tuple(tracks[other].events for other in group.sees[position])
     step = 0
-    for moment in solution.tracks[position].moments:
+    for moment in tracks[position].moments:
         _grow_to(player, moment)
         if moment.step != step:
             player.observe()

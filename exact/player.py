@@ -15,6 +15,7 @@ from dataclasses import dataclass, field, replace
 import numpy as np
 
 from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
+from thumbwright.exact.evidence.law import Law
 from thumbwright.exact.group import Agent, Group
 from thumbwright.exact.store import Weights
 from thumbwright.exact.walk import NEAR, TIE, Walk, grown
@@ -243,12 +244,12 @@ class Player:
         another had nothing been dropped.
     """
 
-    def __init__(self, group: Group, position: int, reader: Reader) -> None:
+    def __init__(self, group: Group, position: int, reader: Reader, law: Law | None = None) -> None:
         agent = group.agents[position]
         self.prior, self.horizon = group.prior, group.horizon
         self.prior_plus = group.prior_plus
         self.reader = reader
-        self.walk = Walk(agent.evidence, agent.thresholds, agent.observed_by(group.horizon))
+        self.walk = Walk(agent.evidence, agent.thresholds, agent.observed_by(group.horizon), law)
         self._step = 0
         self.shape: tuple[int, ...] = tuple(1 for _ in agent.sees)
         self.track = Track(

@@ -14,6 +14,7 @@ import numpy as np
 from thumbwright.exact.alike import Likeness, each_for_itself
 from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.contract import Contractions
+from thumbwright.exact.evidence.law import Law
 from thumbwright.exact.group import MINUS, PLUS, Group
 from thumbwright.exact.player import Calls, Player, Reader, Track
 from thumbwright.exact.store import shell
@@ -40,6 +41,8 @@ class Stage:
     likeness : Likeness, optional
         Who is worked out for whom; if None, everybody for itself. The readers of agents that are
         worked out together must be alike as well.
+    laws : sequence of Law or None, optional
+        Per agent the law of what it really observes, where that is not what it takes it for.
 
     Attributes
     ----------
@@ -59,13 +62,15 @@ class Stage:
         drop: float = 0.0,
         most_entries: float = math.inf,
         likeness: Likeness | None = None,
+        laws: Sequence[Law | None] | None = None,
     ) -> None:
         self._group, self._drop, self._most = group, drop, most_entries
         self._settles = group.exchange == "settle"
         self._likeness = likeness or each_for_itself(group)
         self.leads = self._likeness.leads
         self.contractions = Contractions(group, self._likeness)
-        own = {i: Player(group, i, readers[i]) for i in self.leads}
+        law = laws or [None] * len(group.agents)
+        own = {i: Player(group, i, readers[i], law[i]) for i in self.leads}
         self.players = [own[lead] for lead in self._likeness.lead]
         self.dropped: FloatArray = np.zeros(2)
         self._sources = {i: group.sources(i) for i in self.leads}

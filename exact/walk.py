@@ -11,6 +11,10 @@ rescaled and the scale kept as a logarithm: nothing underflows, however long the
 
 Where others do not know the agent's thresholds, each possibility is a block of rows of its own
 with its own thresholds.
+
+An agent may be mistaken about its observations. Then the measure and its two masses follow the law
+of what it really observes, and the tally, which is what it believes, the evidence that it takes
+them for (see ``astray``).
 """
 
 from __future__ import annotations
@@ -23,6 +27,7 @@ from numpy.typing import NDArray
 
 from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.evidence.base import Evidence
+from thumbwright.exact.evidence.law import Law, as_believed
 from thumbwright.exact.group import Thresholds
 
 TIE = 1e-9
@@ -49,7 +54,7 @@ class Walk:
     count : ndarray of int, shape (R,)
         Own count S of each row on a ladder; on a lattice of several axes a code of the counts.
     tally : ndarray of float, shape (R,)
-        Sum of the worths of the own observations (nats) of each row.
+        Sum of the worths of the own observations (nats) of each row, as the agent takes them.
     bars : ndarray of float, shape (2, R)
         Thresholds on the belief (nats) that hold for each row, the lower ones first.
     mass : ndarray of float, shape (R, C)
@@ -60,14 +65,20 @@ class Walk:
     """
 
     def __init__(
-        self, evidence: Evidence, thresholds: tuple[tuple[float, Thresholds], ...], horizon: int
+        self,
+        evidence: Evidence,
+        thresholds: tuple[tuple[float, Thresholds], ...],
+        horizon: int,
+        law: Law | None = None,
     ) -> None:
         self._evidence = evidence
-        self._root_mass = np.sqrt(evidence.plus * evidence.minus)
+        self._law = law or as_believed(evidence)
+        self._mistaken = law is not None
+        self._root_mass = np.sqrt(self._law.plus * self._law.minus)
         axes = evidence.alpha.shape[0]
         # On several axes all offsets are 0 or 1, so strides of horizon + 1 never run over.
         self._strides = (horizon + 1) ** np.arange(axes, dtype=np.int64)
-        self._moves: IntArray = evidence.offsets @ self._strides
+        self._moves: IntArray = self._law.offsets @ self._strides
         self._bounds = np.array([[t.minus for _, t in thresholds], [t.plus for _, t in thresholds]])
         blocks = np.arange(len(thresholds), dtype=np.int64)
         self._code: IntArray = blocks * _BLOCK + _BLOCK // 2
@@ -92,17 +103,22 @@ class Walk:
         block, inner = np.divmod(self._code, _BLOCK)
         self.count: IntArray = inner - _BLOCK // 2
         self.bars: FloatArray = self._bounds[:, block]
-        alpha = self._evidence.alpha
-        if len(alpha) == 1:
-            self.tally: FloatArray = alpha[0] * self.count + self._evidence.beta * self.observed
-        else:
-            rest, tally = self.count.copy(), np.full(len(self.count), 0.0)
-            for stride, worth in zip(self._strides[::-1], alpha[::-1], strict=True):
-                taken, rest = np.divmod(rest, stride)
-                tally += taken * worth
-            self.tally = tally + self._evidence.beta * self.observed
+        self.tally: FloatArray = self._valued(self._evidence)
+        real = self._valued(self._law) if self._mistaken else self.tally
         # Row 0 turns the measure into mass given plus, row 1 into mass given minus.
-        self._given: FloatArray = np.exp(_HALVES * self.tally)
+        self._given: FloatArray = np.exp(_HALVES * real)
+
+    def _valued(self, evidence: Evidence | Law) -> FloatArray:
+        """What the own observations of each row are worth as this evidence (nats), shape (R,)."""
+        alpha, steps = evidence.alpha, evidence.beta * self.observed
+        if len(alpha) == 1:
+            ladder: FloatArray = alpha[0] * self.count + steps
+            return ladder
+        rest, tally = self.count.copy(), np.full(len(self.count), 0.0)
+        for stride, worth in zip(self._strides[::-1], alpha[::-1], strict=True):
+            taken, rest = np.divmod(rest, stride)
+            tally += taken * worth
+        return tally + steps
 
     def observe(self) -> FloatArray:
         """Make one private observation.
@@ -114,12 +130,11 @@ class Walk:
             minus), axis 1 the answer that is given; ``-inf`` throughout for ordinary evidence.
         """
         certain = np.full((2, 2, self.mass.shape[1]), -np.inf)
-        proofs = (self._evidence.certain_plus, self._evidence.certain_minus)
-        if any(proofs):
+        proof = self._law.proof
+        if proof.any():
             before = self.log_undecided()
-            for side, proof in enumerate(proofs):
-                if proof:
-                    certain[side, side] = before[side] + np.log(proof)
+            for side, given in np.argwhere(proof):
+                certain[side, given] = before[given] + np.log(proof[side, given])
         if len(self._moves) > _FEW and len(self._code):
             self._move_many()
         else:

@@ -61,6 +61,7 @@ def rule_json(findings: Findings) -> str:
             "alone": figures_record(findings.alone),
         },
         "losses": _losses(findings.costs),
+        "doubts": _doubts(findings),
         "watching_is_worth_something": findings.watching_is_worth,
         "own_count": {
             "is_whole": findings.count_is_whole,
@@ -91,6 +92,10 @@ def _units(findings: Findings) -> dict[str, str]:
         "information_kept": "share of what one best fixed worth leaves to gain",
         "losses": "loss; per_step is loss per step",
         "near_tie_mass": "probability",
+        "doubts": (
+            "figures as below, but against the full calculation under the wrong assumptions; "
+            "benefit_kept: risk saved over alone, as a share of what exact saves where they hold"
+        ),
         **figure_units(),
     }
 
@@ -191,6 +196,25 @@ def _losses(basis: CostBasis | None) -> dict[str, Any] | None:
         "loss_ratio_range": _range(basis.loss_ratio_range),
         "per_step_range": _range(basis.per_step_range),
         "benefit_kept_range": _range(basis.benefit_kept_range),
+    }
+
+
+def _doubts(findings: Findings) -> dict[str, Any]:
+    """Return what the first form's rule costs where the case is not right."""
+    return {
+        "form": next(iter(findings.forms)),
+        "worlds": {
+            one.name: {
+                "says": one.says,
+                "how": one.how,
+                "is_exact": findings.is_exact and one.is_exact,
+                "rule": figures_record(one.rule),
+                "exact": figures_record(one.exact),
+                "alone": figures_record(one.alone),
+            }
+            for one in findings.doubts
+        },
+        "left_out": list(findings.not_doubted),
     }
 
 

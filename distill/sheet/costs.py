@@ -8,6 +8,7 @@ from typing import Any
 from thumbwright.distill.findings import Figures, Findings
 from thumbwright.distill.sheet.card import peg_words, short_act
 from thumbwright.distill.sheet.counted import tally_of
+from thumbwright.distill.sheet.doubts import doubts_front
 from thumbwright.distill.sheet.parts import Card, Grid
 from thumbwright.distill.sheet.voice import Counting, Voice
 from thumbwright.distill.sheet.words import capital, of_hundred, quoted
@@ -67,14 +68,14 @@ def costs(findings: Findings, voice: Voice) -> Grid:
 
 
 def cost_note(findings: Findings, voice: Voice) -> str:
-    """Say where watching is worth nothing, or the card worse than not watching; else ""."""
+    """Say where watching is worth nothing, the card worse than that, or would be; else ""."""
     said = []
     if not findings.watching_is_worth:
         said.append("Here watching is worth next to nothing.")
     name, figures = ways(findings, voice)[0]
     if figures.worse_than(findings.alone):
         said.append(f"{capital(name)} is worse than ignoring everybody.")
-    return " ".join(said)
+    return " ".join(said) or doubts_front(findings)
 
 
 def example(findings: Findings, voice: Voice, counting: Counting, card: Card) -> Grid | None:

@@ -85,7 +85,8 @@ def front_height(sheet: Sheet, with_example: bool, tight: bool = False) -> float
     beside = with_example and sheet.example is not None
     first, room = (0.42, half) if beside else (0.26, PAGE_WIDTH)
     costs = _grid_height(sheet.costs, room, line, first)
-    costs += line if sheet.cost_note else 0.0
+    if sheet.cost_note:
+        costs += line * lines_of(sheet.cost_note, half if beside else PAGE_WIDTH)
     if beside and sheet.example is not None:
         costs = max(costs, _grid_height(sheet.example, half, line))
     foot = 6.0 + 11.5 * lines_of(sheet.foot, PAGE_WIDTH, 9.0)

@@ -11,6 +11,7 @@ from thumbwright.distill.case import Agent, is_crowd
 from thumbwright.distill.findings import Agreed, Figures, Findings, FormResult, ReckonedResult
 from thumbwright.distill.rules import FIRST_ANSWERS, NUMBERS, SHOWN, Row
 from thumbwright.distill.sheet.chart import chart
+from thumbwright.distill.sheet.doubts import doubts_grid, doubts_notes
 from thumbwright.distill.sheet.nested import nested
 from thumbwright.distill.sheet.parts import Grid, Modeller, Nested, Note, Sentence
 from thumbwright.distill.sheet.sizes import sizes_chart
@@ -51,6 +52,8 @@ def modeller(findings: Findings, voice: Voice) -> Modeller:
         figures=_figures(findings),
         figure_notes=_figure_notes(findings),
         losses=_losses(findings),
+        doubts=doubts_grid(findings) if findings.doubts else None,
+        doubts_notes=doubts_notes(findings),
         exactness=_exactness(findings),
         settings=_settings(findings, voice),
         sizes=sizes_chart(findings),

@@ -188,6 +188,8 @@ class Modeller:
     figures: Grid
     figure_notes: tuple[str, ...]
     losses: Grid
+    doubts: Grid | None
+    doubts_notes: tuple[str, ...]
     exactness: tuple[str, ...]
     settings: Grid
     sizes: Chart | None = None

@@ -23,7 +23,7 @@ VALIDATOR = jsonschema.Draft202012Validator(SCHEMA)
 MAY_BE_MISSING = {"ranges", "first_answer", "thresholds"}
 """Keys of a row that stand there only where the rule looks at such a thing."""
 
-OPEN = {"shows", "ranges", "thresholds", "units", "forms"}
+OPEN = {"shows", "ranges", "thresholds", "units", "forms", "worlds"}
 """Tables that have one entry for each of what there is."""
 
 Place = tuple[str | int, ...]
