@@ -6,7 +6,7 @@ from dataclasses import asdict
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from thumbwright.distill import texts
+from thumbwright.distill import check_texts, texts
 from thumbwright.distill.assemble import NO_LIMITS, Limits, assemble, settings_of
 from thumbwright.distill.case import Case
 from thumbwright.distill.crowds import (
@@ -45,10 +45,10 @@ def check(case: Case, limits: Limits = NO_LIMITS) -> str:
     crowd = crowd_of(case, group)
     if crowd is not None:
         engine = engine_of(crowd, case.rule_agent, group, limits)
-        return texts.check_text(case, group, texts.crowd_engine(engine))
+        return check_texts.check_text(case, group, check_texts.crowd_engine(engine))
     with naming_counts(case, group):
         refuse_too_large(group, limits.memory)
-    return texts.check_text(case, group, texts.network_engine(forecast(group)))
+    return check_texts.check_text(case, group, check_texts.network_engine(forecast(group)))
 
 
 def sheet(

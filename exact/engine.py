@@ -24,19 +24,17 @@ from thumbwright.exact.evidence.law import Law
 from thumbwright.exact.forecast import refuse_too_large
 from thumbwright.exact.group import Group
 from thumbwright.exact.player import (
-    Events,
     ExactReader,
-    Moment,
     Player,
     Reader,
     Reading,
     Scene,
-    Track,
     by_value,
     leanings,
     worth,
 )
 from thumbwright.exact.stage import Progress, Stage
+from thumbwright.exact.track import Events, Moment, Track
 
 __all__ = [
     "Events",

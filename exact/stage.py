@@ -16,8 +16,9 @@ from thumbwright.exact.arrays import FloatArray, IntArray
 from thumbwright.exact.contract import Contractions
 from thumbwright.exact.evidence.law import Law
 from thumbwright.exact.group import MINUS, PLUS, Group
-from thumbwright.exact.player import Calls, Player, Reader, Track
+from thumbwright.exact.player import Calls, Player, Reader
 from thumbwright.exact.store import shell
+from thumbwright.exact.track import Track
 
 Progress = Callable[[str, int, int], None]
 
