@@ -120,7 +120,7 @@ def test_against_all_alternatives(
 
 def test_no_value_between_two_classes_acts_in_another_way() -> None:
     # Thresholds beside the ladder, so that the two bars move at different values.
-    pricer = one_way((-2, 4), (-2.3, 3.6), 15, losses=Losses(1.0, 1.0, 0.02))
+    pricer = one_way((-2, 4), (-2.4, 3.7), 15, losses=Losses(1.0, 1.0, 0.02))
     bench = Bench(pricer, ("shown",), "any")
     boxes = (((0, 1),), ((1, 2),), ((2, 3),))
     classes = bench.classes(boxes[1])
