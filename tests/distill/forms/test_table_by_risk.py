@@ -118,8 +118,10 @@ def test_against_all_alternatives(
     assert risk(pricer, distilled(pricer, rows, inputs)) == pytest.approx(least, abs=1e-12)
 
 
-def test_no_value_between_two_classes_acts_in_another_way() -> None:
-    pricer = one_way((-2, 4), (-3, 3), 15, losses=Losses(1.0, 1.0, 0.02, 0.4))
+@pytest.mark.parametrize("observer", [(-2.3, 3.6), (-2.4, 3.7)])
+def test_no_value_between_two_classes_acts_in_another_way(observer: tuple[float, float]) -> None:
+    # Thresholds beside the ladder, so that the two bars move at different values.
+    pricer = one_way((-2, 4), observer, 15, losses=Losses(1.0, 1.0, 0.02))
     bench = Bench(pricer, ("shown",), "any")
     boxes = (((0, 1),), ((1, 2),), ((2, 3),))
     classes = bench.classes(boxes[1])
