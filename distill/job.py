@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Any
 from thumbwright.distill import check_texts, texts
 from thumbwright.distill.assemble import NO_LIMITS, Limits, assemble, settings_of
 from thumbwright.distill.case import Case
+from thumbwright.distill.crowd_record_reading import read_crowd_record
 from thumbwright.distill.crowds import (
     crowd_in,
     crowd_of,
@@ -24,7 +25,8 @@ from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.pricing import pricer_of
 from thumbwright.distill.record_reading import read_record
 from thumbwright.distill.replay import follow
-from thumbwright.distill.replay_rule import refuse_crowd, remarks_on, rule_to_follow
+from thumbwright.distill.replay_crowd import follow_counts
+from thumbwright.distill.replay_rule import remarks_on, rule_to_follow
 from thumbwright.distill.replay_text import replay_record, replay_text as texts_of_replay
 from thumbwright.distill.ruleprice import ALONE_IN_USE, Use, priced
 from thumbwright.distill.signs import signs_of
@@ -192,15 +194,23 @@ def replay(
     """
     group = assemble(case)
     agent = case.rule_agent
-    refuse_crowd(case, group)
     me = group.agents[group.index[agent]]
-    record = read_record(events, case, me.sees, signs_of(case, agent, me.evidence))
+    signs = signs_of(case, agent, me.evidence)
+    crowd = crowd_of(case, group)
+    if crowd is not None:
+        record = read_crowd_record(events, case, crowd, agent, signs)
+        pricer, _ = pricer_of(case, progress, limits)
+        followed, remarks = rule_to_follow(case, pricer, rule, progress)
+        steps, conventions = follow_counts(group, crowd, agent, followed, record)
+        remarks += conventions + remarks_on(group, agent, steps)
+        return replay_record(case, agent, followed, steps, remarks)
+    record = read_record(events, case, me.sees, signs)
     pricer, _ = pricer_of(case, progress, limits)
     assert isinstance(pricer, NetworkPricer)
     followed, remarks = rule_to_follow(case, pricer, rule, progress)
     setting = next(one for one in pricer.settings if one.names == record.names)
     steps = follow(setting.solution, agent, followed, setting.names, record)
-    remarks += remarks_on(setting.solution, agent, steps)
+    remarks += remarks_on(group, agent, steps, setting.solution.dropped_mass)
     return replay_record(case, agent, followed, steps, remarks)
 
 

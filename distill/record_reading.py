@@ -13,6 +13,9 @@ none left out. Columns, in any order:
 - ``ID_round``, only where answers run round within a step, and never needed: the round of the step
   in which that agent answered, 0 being that of its own observation. Blank: not known.
 - ``ID_thresholds``, only where the rule tells thresholds apart. Blank: as in the line before.
+
+Where the rule counts the others, ``plus_shown`` and ``minus_shown`` may stand for all ``ID_shows``;
+see ``crowd_record_reading``.
 """
 
 from __future__ import annotations
@@ -32,7 +35,7 @@ from thumbwright.distill.signs import Sign
 
 STEP, SIGN, SIGN_NATS, ROUND = "step", "sign", "sign_nats", "_round"
 
-_COUNTS = tuple(f"{state}_shown" for state in SHOWN)
+COUNTS = ("plus_shown", "minus_shown")
 _FEW = 12
 """So many names of signs are listed in a message; of more, the first and the last."""
 
@@ -46,15 +49,18 @@ class Line:
     step : int
     sign : Sign
     states : tuple of int
-        Code of what each seen agent shows, in the order of the case.
+        Code of what each seen agent shows, in the order of the case; empty where counted.
     rounds : tuple of (int or None)
         Round in which each seen agent answered; None while undecided, or where not known.
+    counts : tuple of two ints, or None
+        How many show plus and minus, where the record counts them.
     """
 
     step: int
     sign: Sign
     states: tuple[int, ...]
     rounds: tuple[int | None, ...]
+    counts: tuple[int, int] | None = None
 
 
 @dataclass(frozen=True)
@@ -84,14 +90,10 @@ def read_record(
     Faults
         With one message ``FILE:LINE: column: what is wrong (allowed ...)`` for each fault.
     """
-    reader = _Reader(str(path), case, tuple(seen), signs)
-    record = reader.record(reader.text(Path(path)))
-    if reader.faults:
-        raise Faults(reader.faults)
-    return record
+    return Reader(str(path), case, tuple(seen), signs).read()
 
 
-class _Reader:
+class Reader:
     """One pass over one file; gathers faults instead of stopping at the first."""
 
     def __init__(
@@ -106,10 +108,19 @@ class _Reader:
         own = zip((words.shows_nothing, words.shows_plus, words.shows_minus), range(3), strict=True)
         self.states = {**dict(own), **{state: code for code, state in enumerate(SHOWN)}}
 
+    def read(self) -> Record:
+        """The record in the file; raises Faults where there are any."""
+        record = self.record(self.text(Path(self.source)))
+        if self.faults:
+            raise Faults(self.faults)
+        return record
+
     def fault(self, line: int | None, column: str, what: str) -> None:
+        """Note one fault."""
         self.faults.append(fault_line(self.source, line, clean(column), what))
 
     def text(self, path: Path) -> str:
+        """What the file holds; raises Faults where it cannot be read."""
         try:
             content = path.read_bytes()
         except OSError as error:
@@ -124,6 +135,7 @@ class _Reader:
             raise Faults(self.faults) from error
 
     def record(self, text: str) -> Record:
+        """Everything in the text."""
         records = self.records(text)
         first = next(records, None)
         if first is None:
@@ -171,20 +183,28 @@ class _Reader:
         if len(header) == 1 and any(mark in header[0] for mark in ";\t"):
             self.fault(line, "", "columns are separated by commas, not ; or tabs")
             return False
-        needed = [STEP, SIGN if self.signs else SIGN_NATS, *(one + SHOWS for one in self.seen)]
-        needed += [one + THRESHOLDS for one in self.seen] if self.tells else []
-        allowed = needed + ([one + ROUND for one in self.seen] if self.settles else [])
+        needed, allowed = self.columns(header)
         for name in dict.fromkeys(header):
             if header.count(name) > 1:
                 self.fault(line, name, f"column stands {header.count(name)} times")
-            if name in _COUNTS:
-                self.fault(line, name, "this case tells agents apart (give ID_shows for each)")
-            elif name not in allowed:
-                self.fault(line, name, "unknown column" + hint(name, allowed))
+            if name not in allowed:
+                self.fault(line, name, self.why_not(name) or "unknown column" + hint(name, allowed))
         for name in needed:
             if name not in header:
                 self.fault(line, name, "column is missing")
         return len(self.faults) == before
+
+    def columns(self, header: list[str]) -> tuple[list[str], list[str]]:
+        """Columns that must be there, and all that may be."""
+        needed = [STEP, SIGN if self.signs else SIGN_NATS, *(one + SHOWS for one in self.seen)]
+        needed += [one + THRESHOLDS for one in self.seen] if self.tells else []
+        return needed, needed + ([one + ROUND for one in self.seen] if self.settles else [])
+
+    def why_not(self, column: str) -> str | None:
+        """Why a column is none of these, where more can be said than that it is unknown."""
+        if column in (*COUNTS, "undecided_shown"):
+            return "this case tells agents apart (give ID_shows for each)"
+        return None
 
     def step(self, line: int, expected: int, text: str) -> int:
         """The step of a line; where it is not the one that comes next, reading goes on from it."""
@@ -201,6 +221,7 @@ class _Reader:
         return max(said, expected)
 
     def line(self, line: int, step: int, cell: dict[str, str], before: Line | None) -> Line:
+        """One line, what is blank in it filled from the line before."""
         states, rounds = [], []
         for position, agent in enumerate(self.seen):
             old = before.states[position] if before else 0
@@ -211,6 +232,7 @@ class _Reader:
         return Line(step, self.sign(line, cell), tuple(states), tuple(rounds))
 
     def sign(self, line: int, cell: dict[str, str]) -> Sign:
+        """What the agent observed."""
         if not self.signs:
             return self.reading(line, cell[SIGN_NATS])
         text = cell[SIGN]
@@ -236,6 +258,7 @@ class _Reader:
         return Sign(text, number, None)
 
     def state(self, line: int, agent: str, cell: dict[str, str], old: int) -> int:
+        """What a seen agent shows; where that cannot be, what it showed before."""
         column = agent + SHOWS
         text = cell[column]
         if not text:
@@ -273,6 +296,7 @@ class _Reader:
         return number
 
     def thresholds(self, line: int, cell: dict[str, str], names: dict[str, str]) -> None:
+        """Take in whose thresholds are which."""
         if not self.tells:
             return
         for agent in self.seen:
@@ -288,6 +312,7 @@ class _Reader:
                 self.fault(line, column, "is blank" + hint("", self.case.rule.covers))
 
     def whole(self, line: int, column: str, text: str, least: int = 1) -> int | None:
+        """A whole number, or None and a fault."""
         try:
             number = int(text) if text.isascii() and "_" not in text else None
         except ValueError:

@@ -27,16 +27,12 @@ import numpy as np
 
 from thumbwright.distill.playing import view_of
 from thumbwright.distill.record_reading import Line, Record
+from thumbwright.distill.replay_step import WATCH, ExactSays, Judge, RuleSays, Step, listed
 from thumbwright.distill.rules import SHOWN, Rule
 from thumbwright.distill.signs import Own
-from thumbwright.distill.views import NO_ROW, rows_in
 from thumbwright.exact.arrays import FloatArray
 from thumbwright.exact.engine import Moment, Solution
-from thumbwright.exact.group import UNDECIDED, Thresholds
-from thumbwright.exact.walk import TIE
-
-WATCH = "watch"
-"""What somebody does who has not answered."""
+from thumbwright.exact.group import UNDECIDED
 
 
 @dataclass(frozen=True)
@@ -49,71 +45,6 @@ class Told:
     state: int = UNDECIDED
     step: int = 0
     round: int | None = None
-
-
-@dataclass(frozen=True)
-class RuleSays:
-    """What the rule makes of one step.
-
-    Attributes
-    ----------
-    row : int or None
-        Which row held, from 0; None where none did, or once the rule has answered.
-    worth : float or None
-        Its worth (nats), in a rule of worths.
-    does : str or None
-        "watch", "plus" or "minus"; None once it has answered at an earlier step.
-    """
-
-    row: int | None = None
-    worth: float | None = None
-    does: str | None = None
-
-
-@dataclass(frozen=True)
-class ExactSays:
-    """What the exact agent makes of one step.
-
-    Attributes
-    ----------
-    worth, belief : float or None
-        Worth of what was shown, and belief (nats); None without a belief, or once it has answered.
-    does : str or None
-        "watch", "plus" or "minus"; None likewise.
-    """
-
-    worth: float | None = None
-    belief: float | None = None
-    does: str | None = None
-
-
-@dataclass(frozen=True)
-class Step:
-    """One step of a record as followed.
-
-    Attributes
-    ----------
-    step : int
-    sign : str
-    states : tuple of int
-    count : int or None
-        The own count, where there is one.
-    own : float
-        Worth of all own observations so far (nats).
-    rule : RuleSays
-    exact : ExactSays
-    impossible : str or None
-        Why the model gives what is shown no chance, at the step where that begins.
-    """
-
-    step: int
-    sign: str
-    states: tuple[int, ...]
-    count: int | None
-    own: float
-    rule: RuleSays
-    exact: ExactSays
-    impossible: str | None = None
 
 
 def follow(
@@ -153,19 +84,20 @@ class _Walker:
     rule_done: bool = False
     exact_done: bool = False
     own: Own = field(init=False)
+    judge: Judge = field(init=False)
 
     def __post_init__(self) -> None:
         group = self.solution.group
         position = group.index[self.agent]
         me = group.agents[position]
         self.seen = me.sees
-        self.bounds: Thresholds = me.thresholds[0][1]
         self.events = [self.solution.tracks[k].events for k in group.sees[position]]
         moments = self.solution.tracks[position].moments
         self.moments = {step: list(those) for step, those in groupby(moments, lambda m: m.step)}
         self.settles = group.exchange == "settle"
         self.told = tuple(Told() for _ in self.seen)
         self.own = Own(me.evidence)
+        self.judge = Judge(self.own, group.prior, me.thresholds[0][1])
 
     def step(self, line: Line) -> Step:
         """One line of the record, through the rounds of its step."""
@@ -241,29 +173,12 @@ class _Walker:
         ]
 
     def _by_rule(self, moment: Moment, told: tuple[Told, ...]) -> RuleSays:
-        """What the rule says; evidence that settles the question comes before it."""
-        sure = _sure(self.own.tally)
+        """What the rule says."""
         columns = [
             tuple(np.array(x) for x in (one.state, one.step, one.round or 0)) for one in told
         ]
         view = view_of(self.rule.seen, self.names, np.array(moment.step), columns)
-        number = int(rows_in(self.rule, view)[0])
-        if number == NO_ROW:
-            return RuleSays(does=sure or WATCH)
-        row = self.rule.rows[number]
-        if sure:
-            return RuleSays(number, row.value, sure)
-        if row.value is not None:
-            belief = self.solution.group.prior + self.own.tally + row.value
-            return RuleSays(number, row.value, self._answer(belief))
-        count = self.own.count
-        if count is None:
-            raise ValueError("a rule of bars needs an own count")
-        if row.plus_at is not None and count >= row.plus_at:
-            return RuleSays(number, None, "plus")
-        if row.minus_at is not None and count <= row.minus_at:
-            return RuleSays(number, None, "minus")
-        return RuleSays(number, None, WATCH)
+        return self.judge.by_rule(self.rule, view)
 
     def _exactly(self, moment: Moment, told: tuple[Told, ...]) -> tuple[ExactSays, str | None]:
         """Belief and act of the exact agent, or why it has none."""
@@ -274,21 +189,7 @@ class _Walker:
         chance = _log_chance(moment, placed)
         if not np.isfinite(chance).any():
             return ExactSays(), self._why_impossible(moment, told)
-        worth = float(chance[0] - chance[1])
-        own = self.own.tally
-        if not np.isfinite(worth) and not np.isfinite(own) and worth != own:
-            return (
-                ExactSays(),
-                "its own observation proves one answer and what it is shown the other",
-            )
-        belief = self.solution.group.prior + own + worth
-        return ExactSays(worth, belief, _sure(own) or self._answer(belief)), None
-
-    def _answer(self, belief: float) -> str:
-        """What an agent with this belief (nats) does."""
-        if belief >= self.bounds.plus - TIE:
-            return "plus"
-        return "minus" if belief <= self.bounds.minus + TIE else WATCH
+        return self.judge.exactly(float(chance[0] - chance[1]))
 
     def _why_impossible(self, moment: Moment, told: tuple[Told, ...]) -> str:
         """Name what the model never lets happen, as narrowly as it can be."""
@@ -332,7 +233,7 @@ class _Walker:
         if not steps:
             when = f"; it never answers {SHOWN[told.state]} at all"
         else:
-            when = f"; it can at {_listed(steps)}"
+            when = f"; it can at {listed(steps)}"
         if told.step in steps:
             rounds = sorted(
                 {
@@ -353,23 +254,3 @@ def _log_chance(moment: Moment, placed: Sequence[Sequence[int]]) -> FloatArray:
     each = np.stack([np.ravel(side[where]) for side in moment.log_shown])
     total: FloatArray = np.logaddexp.reduce(each, axis=1)
     return total
-
-
-def _sure(own: float) -> str | None:
-    """The answer that the agent's own evidence proves, if it proves one."""
-    return None if np.isfinite(own) else "plus" if own > 0 else "minus"
-
-
-def _listed(steps: Sequence[int]) -> str:
-    """Steps in words, runs drawn together: "steps 2, 4 and 6 to 40"."""
-    runs: list[list[int]] = []
-    for step in steps:
-        if runs and step == runs[-1][-1] + 1:
-            runs[-1].append(step)
-        else:
-            runs.append([step])
-    said = [f"{run[0]} to {run[-1]}" if len(run) > 2 else ", ".join(map(str, run)) for run in runs]
-    if len(said) > 6:
-        said = [*said[:5], f"more up to {steps[-1]}"]
-    joined = ", ".join(said[:-1]) + (" and " if len(said) > 1 else "") + said[-1]
-    return ("step " if len(steps) == 1 else "steps ") + joined

@@ -6,25 +6,15 @@ from collections.abc import Sequence
 
 from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
-from thumbwright.distill.crowds import crowd_of
 from thumbwright.distill.faults import Faults
 from thumbwright.distill.forms import MODULES, Wanted, form
-from thumbwright.distill.replay import WATCH, Step
+from thumbwright.distill.replay_step import WATCH, Step
 from thumbwright.distill.ruleprice import handed_in
 from thumbwright.distill.rules import Rule
-from thumbwright.exact.engine import Progress, Solution
+from thumbwright.exact.engine import Progress
 from thumbwright.exact.errors import ModelError
 from thumbwright.exact.evidence.base import Evidence
 from thumbwright.exact.group import Group
-
-
-def refuse_crowd(case: Case, group: Group) -> None:
-    """Raise ModelError where the rule counts the others instead of telling them apart."""
-    if crowd_of(case, group) is not None:
-        raise ModelError(
-            "a record is followed by who showed what and when, but the rule of this case counts "
-            'the others; give inputs = ["step", "shown"], which tells them apart'
-        )
 
 
 def rule_to_follow(
@@ -76,9 +66,13 @@ def _has_count(evidence: Evidence) -> bool:
     return evidence.on_ladder and evidence.split is None
 
 
-def remarks_on(solution: Solution, agent: str, steps: Sequence[Step]) -> list[str]:
-    """What in a followed record rests on a convention or is not exact."""
-    group = solution.group
+def remarks_on(
+    group: Group, agent: str, steps: Sequence[Step], dropped_mass: float = 0.0
+) -> list[str]:
+    """What in a followed record rests on a convention or is not exact.
+
+    ``dropped_mass`` is the probability of what was dropped from the exact beliefs on request.
+    """
     position = group.index[agent]
     said = []
     ended = {one.step for one in steps if one.rule.does not in (WATCH, None)}
@@ -93,9 +87,9 @@ def remarks_on(solution: Solution, agent: str, steps: Sequence[Step]) -> list[st
             "the worth of what is shown rests on evidence split onto a ladder with steps of "
             f"{splits[0].step:.4g} nats; the agent's own observations are taken as recorded"
         )
-    if solution.dropped_mass > 0:
+    if dropped_mass > 0:
         said.append(
-            f"display events of probability {solution.dropped_mass:.3g} in all were dropped on "
+            f"display events of probability {dropped_mass:.3g} in all were dropped on "
             "request: what is called impossible may be one of them"
         )
     return said

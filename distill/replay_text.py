@@ -10,7 +10,8 @@ from thumbwright.distill.case import Case
 from thumbwright.distill.cautions import cautions
 from thumbwright.distill.columns import columns
 from thumbwright.distill.decimals import json_number
-from thumbwright.distill.replay import WATCH, Step
+from thumbwright.distill.record_reading import COUNTS
+from thumbwright.distill.replay_step import WATCH, Step
 from thumbwright.distill.rules import SHOWN, Rule
 
 
@@ -26,7 +27,7 @@ def replay_record(
             {
                 "step": one.step,
                 "sign": one.sign,
-                "shows": {a: SHOWN[state] for a, state in zip(rule.seen, one.states, strict=True)},
+                **_shown(rule, one),
                 "own_count": one.count,
                 "own_nats": json_number(one.own),
                 "rule": {
@@ -61,6 +62,13 @@ def replay_record(
     }
 
 
+def _shown(rule: Rule, one: Step) -> dict[str, Any]:
+    """What is shown at a step: by whom, or by how many."""
+    if one.shown is not None:
+        return dict(zip(COUNTS, one.shown, strict=True))
+    return {"shows": {a: SHOWN[state] for a, state in zip(rule.seen, one.states, strict=True)}}
+
+
 def probability(belief: float | None) -> float | None:
     """Probability of plus at a belief (nats)."""
     if belief is None:
@@ -80,12 +88,13 @@ def _answer(entries: Sequence[dict[str, Any]], who: str) -> dict[str, Any] | Non
 
 def replay_text(case: Case, found: dict[str, Any]) -> str:
     """A followed record as a table, and what came of it in sentences."""
-    question, seen = case.question, list(found["steps"][0]["shows"])
+    question, first = case.question, found["steps"][0]
+    seen = [f"{agent} shows" for agent in first.get("shows", ())] or ["plus shown", "minus shown"]
     counted = found["steps"][0]["own_count"] is not None
     head = [
         "step",
         "sign",
-        *(f"{agent} shows" for agent in seen),
+        *seen,
         "own count" if counted else "own nats",
         "row",
         "rule",
@@ -100,7 +109,7 @@ def replay_text(case: Case, found: dict[str, Any]) -> str:
             [
                 str(one["step"]),
                 one["sign"],
-                *(one["shows"][agent] for agent in seen),
+                *(one["shows"].values() if "shows" in one else (str(one[n]) for n in COUNTS)),
                 own if isinstance(own, str) else f"{own:d}" if isinstance(own, int) else _nats(own),
                 _row(one["rule"]),
                 one["rule"]["does"] or "",
@@ -110,12 +119,13 @@ def replay_text(case: Case, found: dict[str, Any]) -> str:
             ]
         )
     end = len(seen) + 2
+    numbers = () if "shows" in first else (2, 3)
     lines = [
         f"{case.title}: record of {case.agents[found['agent']].name} ({found['agent']}), "
         f"rule {found['rule']}",
         f"plus: “{question.plus}”; minus: “{question.minus}”",
         "",
-        *columns(rows, right=(0, end, end + 1, end + 3, end + 4)),
+        *columns(rows, right=(0, *numbers, end, end + 1, end + 3, end + 4)),
         "",
         f"The rule {_ending(found['rule_answer'], found['steps'][-1]['step'])}.",
         _exact_ending(found),

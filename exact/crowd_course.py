@@ -285,7 +285,7 @@ class Enumerated(Course):
     def _weigh(
         self,
         log_share: FloatArray,
-        n: int,
+        n: int | IntArray,
         at: IntArray,
         weight: FloatArray,
         laid: tuple[IntArray, IntArray, IntArray],

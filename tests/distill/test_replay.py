@@ -227,21 +227,6 @@ def test_files_with_faults_end_with_status_2(run: Run) -> None:
     ]
 
 
-def test_a_rule_that_counts_is_refused_in_plain_words(run: Run, tmp_path: Path) -> None:
-    (tmp_path / "crowd.toml").write_text(
-        'title = "Crowd"\nquestion = { plus = "yes", minus = "no", stakes = "none" }\n'
-        'evidence = { kind = "coin", p = 0.6 }\ntime = { horizon = 5 }\n'
-        'thresholds.low = { plus = 2, minus = -2, unit = "observations" }\n'
-        'network = { shape = "crowd", size = 5, thresholds = "low" }\n'
-        'rule = { agent = "any", inputs = ["step", "plus_shown", "minus_shown"] }\n',
-        "utf-8",
-    )
-    status, out, err = run("crowd.toml", "step,sign,plus_shown,minus_shown\n1,plus,0,0\n")
-    assert (status, out) == (2, "")
-    assert "counts the others" in err
-    assert 'inputs = ["step", "shown"]' in err
-
-
 def test_the_table_on_the_terminal(run: Run) -> None:
     status, out, _ = run("frost-watch", QUIET)
     assert status == 0

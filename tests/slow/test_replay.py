@@ -14,7 +14,8 @@ from tests.exact.comparing import COIN, built
 from tests.slow import group as slow
 from tests.slow.enumerate import Enumeration, enumerate_group
 from thumbwright.distill.record_reading import Line, Record
-from thumbwright.distill.replay import WATCH, Step, follow
+from thumbwright.distill.replay import follow
+from thumbwright.distill.replay_step import WATCH, Step
 from thumbwright.distill.rules import SHOWN, Row, Rule
 from thumbwright.distill.signs import Sign
 from thumbwright.exact.engine import Solution, solve
