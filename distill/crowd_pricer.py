@@ -2,12 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
 
-from thumbwright.distill.case import CROWD
 from thumbwright.distill.costs import Inexact, Pricer
 from thumbwright.distill.crowd_situations import Counted, CrowdSituations
 from thumbwright.distill.crowds import ENUMERATED, HISTORIES
@@ -20,8 +19,10 @@ from thumbwright.distill.tallies import PARTS, Sampled, Tally, prior_pair
 from thumbwright.exact.agreement import crowd_agreement
 from thumbwright.exact.arrays import FloatArray
 from thumbwright.exact.crowd import (
+    Crowd,
     CrowdPolicy,
     InPublic,
+    Kind,
     Shown,
     TooMany,
     adopt_crowd,
@@ -29,7 +30,6 @@ from thumbwright.exact.crowd import (
     exact_member,
     sample_shown,
 )
-from thumbwright.exact.errors import ModelError
 from thumbwright.exact.group import Group
 from thumbwright.exact.play import Act
 from thumbwright.exact.stopping import Cone, Losses
@@ -108,47 +108,51 @@ class CrowdPricer(Pricer):
     def together_tally(self, rule: Rule, users: Sequence[str], others: Rule | None = None) -> Tally:
         """How a rule turns out for its agent where all ``users`` go by it.
 
-        Raises
-        ------
-        ModelError
-            Where some go by a rule and the rest by exact play that takes everyone for exact: in a
-            crowd that is worked out for one member only.
+        Where all members go by rules, all know; else the exact ones take everybody for exact, and
+        may be shown what their model calls impossible.
         """
-        if tuple(users) == (self.agent,):
-            shown = self.shown if others is None else self.among(others)
-            return _played(shown, self._policy(rule))[0]
-        if others is None and set(users) == set(self.shown.crowd.members):
-            return _played(self.among(rule), self._policy(rule))[0]
-        raise ModelError(
-            "in a crowd a rule is priced for one member that uses it, for one among members that "
-            "use another, or for all; for any set of users make the group smaller than "
-            f"{CROWD}, or let its rule tell the others apart"
-        )
+        if tuple(users) == (self.agent,) and others is None:
+            return self.rule_tally(rule)
+        goes_by = dict.fromkeys(users, rule)
+        if others is not None:
+            goes_by |= {key: others for key in self.users(others) if key not in goes_by}
+        return _played(self._shown_where(goes_by), self._policy(rule))[0]
 
     def among(self, rule: Rule) -> Shown:
-        """What a member is shown where all others go by a rule, and all know.
+        """What a member is shown where all who can go by a rule; and know, if that is everybody."""
+        return self._shown_where(dict.fromkeys(self.users(rule), rule))
+
+    def _shown_where(self, goes_by: Mapping[str, Rule]) -> Shown:
+        """What the member is shown where these go by rules, and the rest play exactly.
 
         There may be too many histories to enumerate even if exact play has few enough; then they
         are sampled.
-
-        Raises ModelError where not all can go by it.
         """
         shown = self.shown
-        strangers = set(shown.crowd.members) - set(self.users(rule))
-        if strangers:
-            raise ModelError(
-                f"not everybody in this crowd can use the rule: {min(strangers)} cannot, as its "
-                "own count, its thresholds or its timetable are others"
-            )
-        policies = [self._policy(rule)] * len(shown.crowd.kinds)
-        given = (shown.crowd, shown.kind, shown.prior, shown.horizon, shown.exchange)
+        kinds: list[Kind] = []
+        policies: list[CrowdPolicy | None] = []
+        sorts: list[int] = []
+        for sort, kind in enumerate(shown.crowd.kinds):
+            by_rule: dict[int, list[str]] = {}
+            for member in kind.members:
+                by_rule.setdefault(id(goes_by.get(member)), []).append(member)
+            for members in by_rule.values():
+                rule = goes_by.get(members[0])
+                kinds.append(Kind(kind.evidence, kind.thresholds, tuple(members), kind.looks))
+                policies.append(None if rule is None else self._policy(rule))
+                sorts.append(sort)
+        held = next(k for k, kind in enumerate(kinds) if self.agent in kind.members)
+        given = (Crowd(tuple(kinds)), held, shown.prior, shown.horizon, shown.exchange)
+        known = None if all(policy is not None for policy in policies) else sorts
         if shown.weight is None:
             try:
-                return enumerate_shown(*given, drop=self.drop, most=ENUMERATED, policies=policies)
+                return enumerate_shown(
+                    *given, drop=self.drop, most=ENUMERATED, policies=policies, sorts=known
+                )
             except TooMany:
-                return sample_shown(*given, HISTORIES, self.seed, policies=policies)
-        histories = shown.weight.shape[1]
-        return sample_shown(*given, histories, self.seed, policies=policies)
+                pass
+        histories = HISTORIES if shown.weight is None else shown.weight.shape[1]
+        return sample_shown(*given, histories, self.seed, policies=policies, sorts=known)
 
     def situations_among(self, rule: Rule) -> CrowdSituations:
         """Situations of the rule's agent where all go by the rule and all know."""
@@ -232,7 +236,7 @@ def _played(shown: Shown, policy: CrowdPolicy, rows: int = 0) -> tuple[Tally, tu
 
     tally = Tally(
         **{name: mean(x) for name, x in parts.items()},
-        off_model=float(prior @ mean(found.off_model)),
+        off_model=float(prior @ mean(found.off_model) + prior @ np.array(shown.odd)),
         sampled=None if weights is None else Sampled(**parts, weights=weights),
     )
     uses = () if found.usage is None else found.usage

@@ -105,6 +105,8 @@ class Histories:
         self._lasting = lasting and held is not None
         self._policies = [None] * len(crowd.kinds) if policies is None else [*policies]
         self.by_policies = all(policy is not None for policy in self._policies)
+        # Who reads what is shown by a model.
+        self.reads: BoolArray = np.full(len(crowd.kinds), not self.by_policies)
         self._near = max(NEAR, _ROUNDING * crowd.size)
         kinds, size = len(crowd.kinds), len(labels)
         self._walks = [
@@ -190,6 +192,12 @@ class Histories:
             self.log_left[k][:, columns] = divided[2]
         committing = np.isfinite(log_share[:, :2]).any(axis=(1, 2)) & undecided
         return Choice(columns, log_share, ratio, committing.any(axis=0) & able)
+
+    def allowed(self, choice: Choice, kind: int) -> BoolArray:
+        """Whether others expect a member to say plus, to say minus now, shape (2, A)."""
+        if self.by_policies:
+            return np.ones((2, len(choice.columns)), dtype=bool)
+        return np.asarray(np.isfinite(choice.log_share[kind, :2]).any(axis=1))
 
     def _acts(self, columns: IntArray, round_: int) -> list[Act | None]:
         """What the policies of kinds make of the chosen histories."""
