@@ -52,7 +52,7 @@ __all__ = [
     "Words",
 ]
 
-Form = Literal["lines", "table", "table-by-risk", "tree"]
+Form = Literal["lines", "table", "table-by-risk", "table-for-all", "tree", "shifts", "formula"]
 Input = Literal[
     "step",
     "shown",

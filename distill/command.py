@@ -250,6 +250,35 @@ def price(
 
 @verbs.command()
 @CASE
+@click.argument("events", metavar="EVENTS", type=click.Path(path_type=Path))
+@click.option(
+    "--rule",
+    metavar="FILE",
+    help="A rule in a CSV file, as for price; left out: the first form that the case distils.",
+)
+@limited
+@JSON
+def replay(case: str, events: Path, rule: str | None, limits: Limits, as_json: bool) -> None:
+    """Follow a record: what the rule says, and what the exact agent believes and does.
+
+    EVENTS is a CSV file with a line for each step: step (1, 2, ...); sign, what the rule's agent
+    itself observed (or sign_nats, its worth, for readings on a scale); and for each agent ID that
+    it sees ID_shows: undecided, plus or minus, as seen when deciding. Under exchange "settle" that
+    is at the end of the step, and ID_round may say in which round the answer came. What the model
+    calls impossible is named.
+    """
+    from thumbwright.distill import job
+    from thumbwright.distill.progress import progress_on_terminal
+    from thumbwright.distill.reading import read_case
+
+    read = read_case(case)
+    with progress_on_terminal() as progress:
+        found = job.replay(read, events, rule, progress, limits)
+    _show(_as_json(found) if as_json else job.replay_text(read, found))
+
+
+@verbs.command()
+@CASE
 @limited
 @JSON
 def sizes(case: str, limits: Limits, as_json: bool) -> None:

@@ -12,6 +12,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 from thumbwright.distill.findings import Agreed, CostBasis, Figures, RowUse
+from thumbwright.distill.reckoned import Way
 from thumbwright.distill.rules import Rule
 from thumbwright.distill.situations import Weighed, values_of
 from thumbwright.distill.tallies import (
@@ -114,6 +115,15 @@ class Pricer(ABC):
         """How a rule turns out and how often each of its rows is in force and decides."""
 
     @abstractmethod
+    def way_tally(self, way: Way, whole: bool = True) -> Tally:
+        """How any function of a view turns out; ``whole`` as for :meth:`rule_tally`."""
+
+    def price(self, way: Rule | Way) -> Figures:
+        """Figures of a rule, or of any function of a view (see ``reckoned``)."""
+        found = self.rule_tally(way) if isinstance(way, Rule) else self.way_tally(way)
+        return self.figures(found)
+
+    @abstractmethod
     def plain_count_tally(self) -> Tally:
         """How counting commitments at face value, silence as nothing, turns out."""
 
@@ -133,6 +143,18 @@ class Pricer(ABC):
         ModelError
             Where this cannot be worked out for this group.
         """
+
+    @abstractmethod
+    def situations_among(self, rule: Rule) -> Weighed:
+        """Situations of the rule's agent where all who can go by the rule and all know.
+
+        Their weights and worths are those of what then happens. Raises ModelError as
+        :meth:`together_tally`.
+        """
+
+    @abstractmethod
+    def with_situations(self, situations: Weighed) -> Pricer:
+        """The same pricer over other situations, to distil from."""
 
     @abstractmethod
     def agreement(self, rule: Rule) -> Agreed:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -13,7 +13,9 @@ from thumbwright.distill.crowd_situations import Counted, CrowdSituations
 from thumbwright.distill.crowds import ENUMERATED, HISTORIES
 from thumbwright.distill.findings import Agreed, RowUse
 from thumbwright.distill.playing import acts
+from thumbwright.distill.reckoned import Way, act_of
 from thumbwright.distill.rules import Rule
+from thumbwright.distill.situations import Weighed
 from thumbwright.distill.tallies import PARTS, Sampled, Tally, prior_pair
 from thumbwright.exact.agreement import crowd_agreement
 from thumbwright.exact.arrays import FloatArray
@@ -94,6 +96,11 @@ class CrowdPricer(Pricer):
         found, uses = _played(self.shown, self._policy(rule), len(rule.rows))
         return found, uses
 
+    def way_tally(self, way: Way, whole: bool = True) -> Tally:
+        """How any function of a view turns out; see :meth:`rule_tally` for ``whole``."""
+        others = self.shown.crowd.size - 1
+        return _played(self.shown, lambda showing: _whole(way, Counted.of(showing, others)))[0]
+
     def plain_count_tally(self) -> Tally:
         """How counting commitments at face value, silence as nothing, turns out."""
         return _played(self.shown, self._plain_count)[0]
@@ -143,6 +150,15 @@ class CrowdPricer(Pricer):
         histories = shown.weight.shape[1]
         return sample_shown(*given, histories, self.seed, policies=policies)
 
+    def situations_among(self, rule: Rule) -> CrowdSituations:
+        """Situations of the rule's agent where all go by the rule and all know."""
+        return CrowdSituations.of(self.among(rule))
+
+    def with_situations(self, situations: Weighed) -> CrowdPricer:
+        """The same pricer over other situations, to distil from."""
+        assert isinstance(situations, CrowdSituations)
+        return replace(self, situations=situations)
+
     def agreement(self, rule: Rule) -> Agreed:
         """How a rule compares with exact play on the same observations."""
         found = crowd_agreement(self.shown, self._policy(rule))
@@ -179,6 +195,15 @@ class CrowdPricer(Pricer):
             down = sum(share * bound.minus for share, bound in kind.thresholds) - self.shown.prior
             worth = worth + plus * up + minus * down
         return Act(worth)
+
+
+def _whole(way: Way, view: Counted) -> Act:
+    """What a way of playing says, one entry for each situation."""
+    said, shape = act_of(way(view)), view.step.shape
+    value = np.broadcast_to(np.asarray(said.value, dtype=float), shape)
+    if said.minus_at is None or said.plus_at is None:
+        return Act(value)
+    return Act(value, np.broadcast_to(said.minus_at, shape), np.broadcast_to(said.plus_at, shape))
 
 
 def _alone(_seen: InPublic) -> Act:

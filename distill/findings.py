@@ -5,10 +5,11 @@ Built once by ``distill.job``; frozen; no export computes a figure of its own.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Any
 
 from thumbwright.distill.case import Case
+from thumbwright.distill.reckoned import Reckoned
 from thumbwright.distill.rules import Row, Rule
 
 
@@ -102,6 +103,16 @@ class FormResult:
     agreed: Agreed | None = None
     everybody: Figures | None = None
     sizes: tuple[Size, ...] = ()
+
+
+@dataclass(frozen=True)
+class ReckonedResult:
+    """A rule that is reckoned and not looked up in rows, with its price."""
+
+    rule: Reckoned
+    figures: Figures
+    information_kept: float | None
+    notes: tuple[str, ...]
 
 
 @dataclass(frozen=True)
@@ -206,9 +217,17 @@ class Findings:
     caveats: tuple[str, ...]
     near_tie_mass: float
     example: tuple[dict[str, Any], ...]
+    reckoned: dict[str, ReckonedResult] = field(default_factory=dict)
 
     def _repr_html_(self) -> str:
         """Tables and the chart, for notebooks."""
         from thumbwright.distill.sheet.notebook import findings_html
 
         return findings_html(self)
+
+    @property
+    def worse_than_alone(self) -> tuple[str, ...]:
+        """Names of the forms whose rule has a larger risk than ignoring everybody."""
+        figures = {name: one.figures for name, one in self.forms.items()}
+        figures |= {name: one.figures for name, one in self.reckoned.items()}
+        return tuple(name for name, one in figures.items() if one.worse_than(self.alone))

@@ -16,8 +16,14 @@ from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.crowds import HISTORIES
 from thumbwright.distill.example import example
-from thumbwright.distill.findings import Figures, Findings, FormResult, WorthCurve
-from thumbwright.distill.forms import MODULES, Wanted
+from thumbwright.distill.findings import (
+    Figures,
+    Findings,
+    FormResult,
+    ReckonedResult,
+    WorthCurve,
+)
+from thumbwright.distill.forms import MODULES, Distilled, Wanted
 from thumbwright.distill.forms.making import make, wanted_of
 from thumbwright.distill.forms.runs import alone_rows
 from thumbwright.distill.network_pricer import NetworkPricer
@@ -39,17 +45,17 @@ def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIM
     """Everything that is printed about the rule's agent of a case."""
     pricer, missing = pricer_of(case, progress, limits)
     wanted = wanted_of(case, pricer)
-    made, left_out = _forms(pricer, case, wanted, progress)
+    made, reckoned, left_out = _forms(pricer, case, wanted, progress)
     forms = {name: one for name, (one, _) in made.items()}
     main, main_tally = next(iter(made.values()))
     exact = pricer.figures(pricer.exact_tally)
     plain = pricer.figures(pricer.plain_count_tally())
     alone = pricer.figures(pricer.alone_tally)
     evidence = _evidence(pricer)
-    figures = [*(f.figures for f in forms.values()), plain, alone]
+    figures = [f.figures for f in forms.values()] + [f.figures for f in reckoned.values()]
+    figures += [plain, alone]
     figures += [f.everybody for f in forms.values() if f.everybody is not None]
-    caveats = _caveats(pricer, figures, missing)
-    caveats = (*caveats, *left_out)
+    caveats = (*_caveats(pricer, figures, missing), *left_out)
     return Findings(
         case=case,
         digest=case.digest,
@@ -76,44 +82,52 @@ def gather(case: Case, progress: Progress | None = None, limits: Limits = NO_LIM
         caveats=caveats,
         near_tie_mass=pricer.inexact().near_tie_mass,
         example=example(pricer, main.rule) if isinstance(pricer, NetworkPricer) else (),
+        reckoned=reckoned,
     )
 
 
 def _forms(
     pricer: Pricer, case: Case, wanted: Wanted, progress: Progress | None
-) -> tuple[dict[str, tuple[FormResult, Tally]], tuple[str, ...]]:
+) -> tuple[dict[str, tuple[FormResult, Tally]], dict[str, ReckonedResult], tuple[str, ...]]:
     """Every form asked for that this case can have; sentences on those it cannot.
 
-    Raises ModelError where it can have none.
+    Raises ModelError where it can have none of rows.
     """
     forms: dict[str, tuple[FormResult, Tally]] = {}
+    reckoned: dict[str, ReckonedResult] = {}
     refusals: list[ModelError] = []
     for name in MODULES:
         if name in case.rule.forms:
             try:
-                forms[name] = _form_result(pricer, name, wanted, progress)
+                asked = replace(wanted, every_size=come_free(name, pricer, wanted))
+                made = make(name, pricer, asked, progress)
             except ModelError as refusal:
                 refusals.append(refusal)
+                continue
+            if isinstance(made.rule, Rule):
+                forms[name] = _form_result(pricer, made.rule, made, progress)
+            else:
+                figures = pricer.price(made.rule)
+                kept = made.information_kept
+                reckoned[name] = ReckonedResult(made.rule, figures, kept, made.notes)
     if not forms:
         raise refusals[0]
-    return forms, tuple(f"A form is left out: {refusal}." for refusal in refusals)
+    return forms, reckoned, tuple(f"A form is left out: {refusal}." for refusal in refusals)
 
 
 def _form_result(
-    pricer: Pricer, name: str, wanted: Wanted, progress: Progress | None
+    pricer: Pricer, rule: Rule, made: Distilled, progress: Progress | None
 ) -> tuple[FormResult, Tally]:
-    wanted = replace(wanted, every_size=come_free(name, pricer, wanted))
-    made = make(name, pricer, wanted, progress)
-    found, uses = pricer.rule_uses(made.rule)
+    found, uses = pricer.rule_uses(rule)
     result = FormResult(
-        made.rule,
+        rule,
         pricer.figures(found),
         uses,
         made.information_kept,
         made.information_ceiling,
         made.notes,
-        pricer.agreement(made.rule),
-        _everybody(pricer, made.rule, progress),
+        pricer.agreement(rule),
+        _everybody(pricer, rule, progress),
         priced_sizes(pricer, made.sizes),
     )
     return result, found

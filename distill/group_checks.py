@@ -18,6 +18,11 @@ Found = Iterator[tuple[Key, str]]
 ANY = "any"
 UNKNOWN = "unknown"
 SHARE_TOLERANCE = 1e-9
+RECKONED = ("shifts", "formula")
+"""Forms that have no rows and stand beside one that has."""
+
+WITH_ROWS = ("lines", "table", "table-by-risk", "tree")
+
 TIMETABLE = ("first_step", "looks_every", "looks_per_step")
 """Keys of an agent that say when it observes."""
 
@@ -262,6 +267,13 @@ def lists_of_rule(plain: Plain) -> Found:
             if name in met:
                 yield ("rule", key, place), f"{quoted(name)} is listed twice; once is enough"
             met.add(name)
+    forms = {name for _, name in plain.texts("rule", "forms") or []}
+    if forms and forms <= set(RECKONED):
+        yield (
+            ("rule", "forms"),
+            f"{' and '.join(sorted(forms))} have no rows, which the card and rule.csv are made of; "
+            f'add a form of rows, such as "table" (rows: {", ".join(WITH_ROWS)})',
+        )
 
 
 def covered(plain: Plain, looks_at: list[str], seen: list[str]) -> Found:

@@ -20,8 +20,14 @@ from thumbwright.distill.crowds import (
 from thumbwright.distill.ends import ends_of_crowd, ends_of_network
 from thumbwright.distill.exports import render_all
 from thumbwright.distill.gather import gather
+from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.pricing import pricer_of
+from thumbwright.distill.record_reading import read_record
+from thumbwright.distill.replay import follow
+from thumbwright.distill.replay_rule import refuse_crowd, remarks_on, rule_to_follow
+from thumbwright.distill.replay_text import replay_record, replay_text as texts_of_replay
 from thumbwright.distill.ruleprice import ALONE_IN_USE, Use, priced
+from thumbwright.distill.signs import signs_of
 from thumbwright.distill.writing import write_files
 from thumbwright.exact.engine import Progress, solve
 from thumbwright.exact.forecast import forecast, refuse_too_large
@@ -169,3 +175,35 @@ def sizes_text(case: Case, found: dict[str, Any]) -> str:
 def price_text(found: dict[str, Any]) -> str:
     """A price as lines to read."""
     return texts.price_text(found)
+
+
+def replay(
+    case: Case,
+    events: Path,
+    rule: str | None = None,
+    progress: Progress | None = None,
+    limits: Limits = NO_LIMITS,
+) -> dict[str, Any]:
+    """What a rule, and the exact agent, make of a record; ``rule`` is the path of a CSV file.
+
+    Without one the rule is the one that the case distils: the first of its forms.
+
+    Raises Faults for what is wrong in the files, ModelError where a record cannot be followed.
+    """
+    group = assemble(case)
+    agent = case.rule_agent
+    refuse_crowd(case, group)
+    me = group.agents[group.index[agent]]
+    record = read_record(events, case, me.sees, signs_of(case, agent, me.evidence))
+    pricer, _ = pricer_of(case, progress, limits)
+    assert isinstance(pricer, NetworkPricer)
+    followed, remarks = rule_to_follow(case, pricer, rule, progress)
+    setting = next(one for one in pricer.settings if one.names == record.names)
+    steps = follow(setting.solution, agent, followed, setting.names, record)
+    remarks += remarks_on(setting.solution, agent, steps)
+    return replay_record(case, agent, followed, steps, remarks)
+
+
+def replay_text(case: Case, found: dict[str, Any]) -> str:
+    """A followed record as lines to read."""
+    return texts_of_replay(case, found)

@@ -3,19 +3,20 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from thumbwright.distill.assemble import Setting
 from thumbwright.distill.costs import Inexact, Pricer
 from thumbwright.distill.findings import Agreed, RowUse
-from thumbwright.distill.playing import alone_policy, plain_count_policy, rule_policy
+from thumbwright.distill.playing import alone_policy, plain_count_policy, rule_policy, way_policy
+from thumbwright.distill.reckoned import Way
 from thumbwright.distill.rules import Rule
-from thumbwright.distill.situations import Situations, situations_of
+from thumbwright.distill.situations import Situations, Weighed, situations_of
 from thumbwright.distill.tallies import Tally, average, prior_pair, tally
 from thumbwright.distill.users import in_the_hands_of
-from thumbwright.exact.adopters import adopt_together
+from thumbwright.exact.adopters import Adopters, adopt_together
 from thumbwright.exact.agreement import agreement
 from thumbwright.exact.arrays import FloatArray
 from thumbwright.exact.group import Group
@@ -98,6 +99,10 @@ class NetworkPricer(Pricer):
         assert usage is not None
         return found, tuple(RowUse(float(steps), float(calls)) for steps, calls in usage)
 
+    def way_tally(self, way: Way, whole: bool = True) -> Tally:
+        """How any function of a view turns out; ``whole`` as for :meth:`play`."""
+        return self.play(lambda s: way_policy(way, self.seen, s.names), whole=whole)[0]
+
     def plain_count_tally(self) -> Tally:
         """How counting commitments at face value, silence as nothing, turns out."""
         return self.play(lambda s: plain_count_policy(s.solution.group, self.agent))[0]
@@ -110,6 +115,30 @@ class NetworkPricer(Pricer):
         self, rule: Rule, users: Sequence[str], others: Rule | None = None
     ) -> dict[str, Tally]:
         """How everybody fares, by id, where all ``users`` go by a rule; see ``together_tally``."""
+        parts = self._played_together(rule, users, others)
+        return {
+            agent.id: average([(w, tally(p.tracks[k], p.off_model)) for w, p in parts])
+            for k, agent in enumerate(self.group.agents)
+        }
+
+    def situations_among(self, rule: Rule) -> Situations:
+        """Situations of the rule's agent where all who can go by the rule and all know."""
+        played = self._played_together(rule, self.users(rule), None)
+        settings = tuple(
+            replace(setting, solution=replace(setting.solution, tracks=one.tracks))
+            for setting, (_, one) in zip(self.settings, played, strict=True)
+        )
+        return situations_of(settings, self.agent)
+
+    def with_situations(self, situations: Weighed) -> NetworkPricer:
+        """The same pricer over other situations, to distil from."""
+        assert isinstance(situations, Situations)
+        return replace(self, situations=situations)
+
+    def _played_together(
+        self, rule: Rule, users: Sequence[str], others: Rule | None
+    ) -> list[tuple[float, Adopters]]:
+        """The play of each setting, with its share."""
         group, parts = self.group, []
         theirs = [] if others is None else [u for u in self.users(others) if u not in users]
         used = [(rule, agent) for agent in users]
@@ -126,10 +155,7 @@ class NetworkPricer(Pricer):
                 for one, agent in used
             }
             parts.append((setting.weight, adopt_together(setting.solution, policies)))
-        return {
-            agent.id: average([(w, tally(p.tracks[k], p.off_model)) for w, p in parts])
-            for k, agent in enumerate(group.agents)
-        }
+        return parts
 
     def agreement(self, rule: Rule) -> Agreed:
         """How a rule compares with exact play on the same observations."""

@@ -13,6 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from thumbwright.distill.reckoned import Way, act_of
 from thumbwright.distill.rules import SHOWN, Row, Rule
 from thumbwright.distill.views import NO_ROW, Named, View, rows_in
 from thumbwright.exact.arrays import FloatArray, IntArray
@@ -112,16 +113,29 @@ class _Sheet:
         return Act(self._value[row], self._low[row], self._high[row], row)
 
 
+def way_policy(way: Way, seen: Sequence[str], names: Mapping[str, str]) -> Policy:
+    """Any function of a view as a policy of an agent that sees these."""
+    return lambda situation: act_of(way(_view(seen, names, situation)))
+
+
+def _view(seen: Sequence[str], names: Mapping[str, str], situation: Situation) -> Named:
+    told = zip(situation.states, situation.shown_steps, situation.shown_rounds, strict=True)
+    return view_of(seen, names, np.array(situation.step), tuple(told))
+
+
 def view_of(
-    rule: Rule, names: Mapping[str, str], step: IntArray, told: Sequence[Sequence[IntArray]]
+    seen: Sequence[str],
+    names: Mapping[str, str],
+    step: IntArray,
+    told: Sequence[Sequence[IntArray]],
 ) -> Named:
     """A view of agents that are told apart.
 
-    ``told`` has, per seen agent in the rule's order, the codes of what it shows and the steps and
-    rounds of its answers.
+    ``told`` has, per seen agent in this order, the codes of what it shows and the steps and rounds
+    of its answers.
     """
     states, steps, rounds = (
-        {agent: one[k] for agent, one in zip(rule.seen, told, strict=True)} for k in range(3)
+        {agent: one[k] for agent, one in zip(seen, told, strict=True)} for k in range(3)
     )
     return Named(step, states, steps, rounds, names)
 
@@ -135,9 +149,7 @@ def _looked_up(
         return lambda situation: grid[situation.step][situation.states]
 
     def read(situation: Situation) -> IntArray:
-        told = zip(situation.states, situation.shown_steps, situation.shown_rounds, strict=True)
-        view = view_of(rule, names, np.array(situation.step), tuple(told))
-        return rows_in(rule, view)[0]
+        return rows_in(rule, _view(rule.seen, names, situation))[0]
 
     return read
 

@@ -8,6 +8,7 @@ from thumbwright.distill.costs import Pricer
 from thumbwright.distill.crowd_pricer import CrowdPricer
 from thumbwright.distill.crowds import crowd_of, naming_counts, play_of, shown_of
 from thumbwright.distill.network_pricer import NetworkPricer
+from thumbwright.distill.reading import read_case
 from thumbwright.exact.engine import Progress
 from thumbwright.exact.errors import ModelError
 from thumbwright.exact.group import Agent, Group
@@ -17,6 +18,19 @@ NO_COSTS = (
     "No costs are stated, and none make the thresholds best for an agent alone; rules are compared "
     "by wrong answers only."
 )
+
+
+def pricer_for(name_or_path: str) -> Pricer:
+    """The pricer of a case file or starter, to price any rule or function of a view by.
+
+    Raises
+    ------
+    Faults
+        Where the case has any.
+    ModelError
+        As for :func:`pricer_of`.
+    """
+    return pricer_of(read_case(name_or_path))[0]
 
 
 def pricer_of(

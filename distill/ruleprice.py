@@ -79,12 +79,7 @@ def priced(case: Case, pricer: Pricer, rule: str, use: Use = ALONE_IN_USE) -> di
             raise Faults([f"{rule}: only a rule from a file can be in several hands"])
         tally = others[rule]
     else:
-        read = _read(case, pricer, rule)
-        faults = _gaps_and_overlaps(pricer, read, rule)
-        if faults:
-            raise Faults(faults)
-        if read.has_bars:
-            remarks += _refused_bars(pricer, rule)
+        read, remarks = handed_in(case, pricer, rule)
         tally, uses = pricer.rule_uses(read)
         rows_here = pricer.situations.rows_of(read)
         for number, (row, in_force) in enumerate(zip(read.rows, uses, strict=True)):
@@ -107,6 +102,19 @@ def priced(case: Case, pricer: Pricer, rule: str, use: Use = ALONE_IN_USE) -> di
         "basis": pricer.basis(tally),
         **more,
     }
+
+
+def handed_in(case: Case, pricer: Pricer, path: str) -> tuple[Rule, list[str]]:
+    """Read a rule that must be whole, with remarks on what it is.
+
+    Raises Faults where the file cannot be read as a rule of this case, or its rows leave gaps or
+    overlap.
+    """
+    read = _read(case, pricer, path)
+    faults = _gaps_and_overlaps(pricer, read, path)
+    if faults:
+        raise Faults(faults)
+    return read, _refused_bars(pricer, path) if read.has_bars else []
 
 
 def _in_use(case: Case, pricer: Pricer, rule: Rule, use: Use) -> tuple[Tally, dict[str, Any]]:

@@ -23,6 +23,7 @@ from thumbwright.distill.forms.boxes import gain
 from thumbwright.distill.rules import SHOWN, Rule
 from thumbwright.distill.views import Named, View, rows_in
 from thumbwright.exact.arrays import FloatArray, IntArray, sums
+from thumbwright.exact.player import worth
 
 
 class Weighed(ABC):
@@ -210,7 +211,7 @@ def situations_of(settings: Sequence[Setting], agent: str) -> Situations:
                 *columns_seen,
                 setting.weight * omega * shown[0],
                 setting.weight * omega * shown[1],
-                moment.value[possible].ravel(),
+                worth(moment.log_shown)[possible].ravel(),
             )
             for column, entry in zip(columns, entries, strict=True):
                 column.append(entry)

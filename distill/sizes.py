@@ -16,6 +16,8 @@ from thumbwright.distill.forms.enough import Enough
 from thumbwright.distill.forms.making import make, wanted_of, without_limits
 from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.pricing import pricer_of
+from thumbwright.distill.rules import Rule
+from thumbwright.distill.shifts import Shifts
 from thumbwright.distill.tallies import Tally
 from thumbwright.exact.engine import Progress
 from thumbwright.exact.errors import ModelError
@@ -102,8 +104,8 @@ def _fill(
             for number, made in enumerate(_by_size(name, pricer, wanted, progress)):
                 if progress:
                     progress(f"sizes, {name}", min(number + 1, wanted.rows), wanted.rows)
-                tally = pricer.rule_tally(made.rule)
-                size = Size(len(made.rule.rows), pricer.figures(tally), made.information_kept)
+                tally = _tally(pricer, made)
+                size = Size(_rows(made), pricer.figures(tally), made.information_kept)
                 one = _Priced(size, tally, None if enough is None else enough(tally))
                 other = here.get(size.rows)
                 # A search may come to as many rows twice.
@@ -112,6 +114,19 @@ def _fill(
         except ModelError as refusal:
             left_out[name] = str(refusal)
             del found[name]
+
+
+def _tally(pricer: Pricer, made: Distilled) -> Tally:
+    rule = made.rule
+    return pricer.rule_tally(rule) if isinstance(rule, Rule) else pricer.way_tally(rule)
+
+
+def _rows(made: Distilled) -> int:
+    """Rows of a rule, lines of shifts, numbers of a formula."""
+    rule = made.rule
+    if isinstance(rule, Rule):
+        return len(rule.rows)
+    return rule.rows if isinstance(rule, Shifts) else len(rule.parameters)
 
 
 def _by_size(
@@ -125,7 +140,7 @@ def _by_size(
         return
     made = make(name, pricer, replace(plain, every_size=True, polish=False), progress)
     for rule, kept in sorted(made.sizes, key=lambda one: len(one[0].rows)) or [
-        (made.rule, made.information_kept)
+        (made.in_rows, made.information_kept)
     ]:
         one = Distilled(rule, kept, None, ())
         if wanted.polish:

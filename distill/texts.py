@@ -180,15 +180,17 @@ def sheet_text(findings: Findings, written: Sequence[Path]) -> str:
             (f"{name}, {len(form.rule.rows)} rows", form.figures)
             for name, form in findings.forms.items()
         ),
+        *(
+            (f"{name}, {len(one.rule.parameters)} numbers", one.figures)
+            for name, one in findings.reckoned.items()
+        ),
         ("full calculation", findings.exact),
         ("undecided neighbours ignored", findings.plain_count),
         ("everybody ignored", findings.alone),
     ]
     lines += figures_table(named, case.question.plus, case.question.minus)
     lines += [
-        f"The {name} is worse than ignoring the neighbours."
-        for name, form in findings.forms.items()
-        if form.figures.worse_than(findings.alone)
+        f"The {name} is worse than ignoring the neighbours." for name in findings.worse_than_alone
     ]
     if not findings.watching_is_worth:
         lines.append("Watching is worth nothing here.")

@@ -54,6 +54,7 @@ def rule_json(findings: Findings) -> str:
         "seen": list(findings.seen),
         "units": _units(findings),
         "forms": {name: _form(result, findings) for name, result in findings.forms.items()},
+        **_reckoned(findings),
         "costs": {
             "exact": figures_record(findings.exact),
             "plain_count": figures_record(findings.plain_count),
@@ -112,6 +113,24 @@ def _form(result: FormResult, findings: Findings) -> dict[str, Any]:
         "agreement": _agreement(result.agreed),
         "notes": list(result.notes),
     }
+
+
+def _reckoned(findings: Findings) -> dict[str, Any]:
+    """Return the forms that have no rows, where there are any: numbers, and what they mean."""
+    if not findings.reckoned:
+        return {}
+    forms = {
+        name: {
+            "nats_per_unit": json_number(one.rule.unit),
+            "numbers": {key: json_number(value) for key, value in one.rule.parameters.items()},
+            "sentences": list(one.rule.sentences()),
+            "information_kept": json_figure(one.information_kept),
+            "costs": figures_record(one.figures),
+            "notes": list(one.notes),
+        }
+        for name, one in findings.reckoned.items()
+    }
+    return {"reckoned": forms}
 
 
 def _agreement(agreed: Agreed | None) -> dict[str, Any] | None:

@@ -4,9 +4,9 @@ A form module has ``NAME`` and
 
     distil(pricer: Pricer, wanted: Wanted, progress) -> Distilled
 
-It makes a rule of at most ``wanted.rows`` rows from the exact situations in ``pricer`` and says in
-plain sentences how it was chosen. It prices candidates through the pricer and computes no
-probabilities of its own. To add a form, write the module and name it in :data:`MODULES`.
+It makes a rule of at most ``wanted.rows`` rows, or numbers, from the exact situations in ``pricer``
+and says in plain sentences how it was chosen. It prices candidates through the pricer and computes
+no probabilities of its own. To add a form, write the module and name it in :data:`MODULES`.
 """
 
 from __future__ import annotations
@@ -15,9 +15,10 @@ from dataclasses import dataclass
 from importlib import import_module
 from types import ModuleType
 
+from thumbwright.distill.reckoned import Reckoned
 from thumbwright.distill.rules import Rule
 
-MODULES = ("lines", "table", "table-by-risk", "tree")
+MODULES = ("lines", "table", "table-by-risk", "table-for-all", "tree", "shifts", "formula")
 """The forms of this package, in the order in which they are printed; a hyphen in a name is an
 underscore in that of its module."""
 
@@ -68,11 +69,17 @@ class Distilled:
     ``sizes`` are the rules of every number of rows, where they were asked for and come with it.
     """
 
-    rule: Rule
+    rule: Rule | Reckoned
     information_kept: float | None
     information_ceiling: float | None
     notes: tuple[str, ...]
     sizes: tuple[Sized, ...] = ()
+
+    @property
+    def in_rows(self) -> Rule:
+        """The rule of a form that makes rows."""
+        assert isinstance(self.rule, Rule), "this form is reckoned and has no rows"
+        return self.rule
 
 
 def form(name: str) -> ModuleType:

@@ -14,19 +14,13 @@ import numpy as np
 
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms.axes import grid_axes
-from thumbwright.distill.forms.batch import MOST_AT_ONCE, one_of
 from thumbwright.distill.forms.boxes import Box
+from thumbwright.distill.forms.cells import Cells
 from thumbwright.distill.forms.choosing import inside, valued_row
-from thumbwright.distill.forms.runs import count_range, exact_bars
-from thumbwright.distill.network_pricer import NetworkPricer
+from thumbwright.distill.forms.runs import count_range
 from thumbwright.distill.rules import Rule
-from thumbwright.distill.situations import Situations
-from thumbwright.distill.tallies import Tally, average
-from thumbwright.exact.arrays import FloatArray, IntArray
-from thumbwright.exact.many import Bars, fits, play_many
-
-ON_A_GRID = ("step", "shown", "thresholds")
-"""Inputs that leave a rule a grid of steps and shown states."""
+from thumbwright.distill.tallies import Tally
+from thumbwright.exact.arrays import FloatArray
 
 EVENLY = 25
 """So many values are tried for a box where there are no action classes."""
@@ -52,21 +46,12 @@ class Bench:
         self.axes = grid_axes(pricer, inputs)
         self.priced = 0
         self._position = pricer.group.index[pricer.agent]
-        alpha = pricer.group.agents[self._position].evidence.alpha
-        self._network = pricer if isinstance(pricer, NetworkPricer) else None
-        self.together = (
-            self._network is not None
-            and all(name in ON_A_GRID for name in inputs)
-            and all(fits(s.solution, self._position) for s in self._network.settings)
-            and bool(alpha[0] > 0)
-        )
-        if self._network is not None and self.together:
-            every = _every_cell(self._network)
-            axes = grid_axes(replace(self._network, situations=every), inputs)
+        self._cells = Cells.of(pricer, inputs)
+        self.together = self._cells is not None
+        if self._cells is not None:
+            axes = self._cells.axes(inputs)
             shape = tuple(axis.cells for axis in axes)
-            flat = np.ravel_multi_index(tuple(axis.where for axis in axes), shape)
-            self._cell = flat.reshape(len(self._network.settings), pricer.group.horizon, 3)
-            self._step = every.step.reshape(self._cell.shape)[0]
+            self._cell = np.ravel_multi_index(tuple(axis.where for axis in axes), shape)
 
     def rule(self, valued: Valued) -> Rule:
         """The boxes as rows, in their order."""
@@ -78,39 +63,21 @@ class Bench:
     def tallies(self, candidates: Sequence[Valued]) -> list[Tally]:
         """How each turns out."""
         self.priced += len(candidates)
-        if self._network is None or not self.together:
+        cells = self._cells
+        if cells is None:
             return [self.pricer.rule_tally(self.rule(one), whole=False) for one in candidates]
-        found: list[Tally] = []
-        for start in range(0, len(candidates), MOST_AT_ONCE):
-            part = candidates[start : start + MOST_AT_ONCE]
-            values = np.stack([self._on_cells(one) for one in part])
-            played = [
-                (s.weight, play_many(s.solution, self._position, self._bars(values[:, cell])))
-                for s, cell in zip(self._network.settings, self._cell, strict=True)
-            ]
-            found += [
-                average([(weight, one_of(many, i)) for weight, many in played])
-                for i in range(len(part))
-            ]
-        return found
+        values = (self._on_grid(one)[self._cell].reshape(cells.shape) for one in candidates)
+        return cells.tallies([cells.of_values(value) for value in values])
 
     def risks(self, candidates: Sequence[Valued]) -> list[float]:
         """What a search minimises, for each."""
         return [self.pricer.objective(found) for found in self.tallies(candidates)]
 
-    def _on_cells(self, valued: Valued) -> FloatArray:
+    def _on_grid(self, valued: Valued) -> FloatArray:
         grid = np.zeros(tuple(axis.cells for axis in self.axes))
         for box, value in zip(valued.boxes, valued.values, strict=True):
             grid[tuple(slice(start, stop) for start, stop in box)] = value
         return grid.ravel()
-
-    def _bars(self, values: FloatArray) -> Bars:
-        """Bars from values of shape (B, T, 3)."""
-        step: IntArray = np.broadcast_to(self._step, values.shape)
-        low, high = exact_bars(self.pricer, values, step)
-        # Entry 0 of the steps is unused.
-        low, high = (np.concatenate([bar[:, :1], bar], axis=1) for bar in (low, high))
-        return Bars(low, high, values[:, -1])
 
     def classes(self, box: Box) -> FloatArray:
         """Values worth trying for a box (nats), ascending, within the exact worths it covers."""
@@ -148,24 +115,3 @@ class Bench:
 
 def _count(low: float, high: float, start: FloatArray, unit: float) -> int:
     return int(np.ceil((high - low + start.max() - start.min()) / unit)) + 2
-
-
-def _every_cell(pricer: NetworkPricer) -> Situations:
-    """Every setting, step and shown state of the one seen agent, as situations without mass."""
-    shape = (len(pricer.settings), pricer.group.horizon, 3)
-    setting, step, state = (index.ravel() for index in np.indices(shape))
-    nothing = np.zeros(len(step))
-    never = np.zeros((len(step), 1), dtype=np.int64)
-    return Situations(
-        pricer.situations.names,
-        pricer.seen,
-        setting,
-        step + 1,
-        np.zeros_like(step),
-        state[:, None],
-        never,
-        never,
-        nothing,
-        nothing,
-        nothing,
-    )

@@ -2,16 +2,17 @@
 
 from __future__ import annotations
 
+import re
 from collections import Counter
 from collections.abc import Callable
 from typing import Any
 
 from thumbwright.distill.case import Agent, is_crowd
-from thumbwright.distill.findings import Agreed, Figures, Findings, FormResult
+from thumbwright.distill.findings import Agreed, Figures, Findings, FormResult, ReckonedResult
 from thumbwright.distill.rules import FIRST_ANSWERS, NUMBERS, SHOWN, Row
 from thumbwright.distill.sheet.chart import chart
 from thumbwright.distill.sheet.nested import nested
-from thumbwright.distill.sheet.parts import Grid, Modeller, Note
+from thumbwright.distill.sheet.parts import Grid, Modeller, Nested, Note, Sentence
 from thumbwright.distill.sheet.sizes import sizes_chart
 from thumbwright.distill.sheet.voice import Voice, own_evidence
 from thumbwright.distill.sheet.words import clean, five, listing, range_words, signed
@@ -20,7 +21,10 @@ FORM_TITLES = {
     "lines": "The lines: bars on the own count",
     "table": "The table: values in place of what others show",
     "table-by-risk": "The table by risk: boxes and values chosen for least risk",
+    "table-for-all": "The table for all: values that are right where everybody uses it",
     "tree": "The tree: values found by one cut after another",
+    "shifts": "The shifts: bars, and by how many boxes what is shown moves them",
+    "formula": "The formula: worth reckoned from few numbers",
 }
 
 IN_SENTENCES = ("tree",)
@@ -41,10 +45,9 @@ def modeller(findings: Findings, voice: Voice) -> Modeller:
             nested(FORM_TITLES[name], result, findings, voice)
             for name, result in _forms(findings)
             if name in IN_SENTENCES
-        ),
-        rule_notes=tuple(
-            Note(f"{name}:", " ".join(_rule_notes(result))) for name, result in _forms(findings)
-        ),
+        )
+        + tuple(_reckoned(name, one) for name, one in findings.reckoned.items()),
+        rule_notes=_notes(findings),
         figures=_figures(findings),
         figure_notes=_figure_notes(findings),
         losses=_losses(findings),
@@ -122,12 +125,25 @@ def _bar(bar: int | None) -> str:
     return "never" if bar is None else signed(bar)
 
 
-def _rule_notes(result: FormResult) -> list[str]:
+def _reckoned(name: str, result: ReckonedResult) -> Nested:
+    """Say a rule without rows, one sentence after the other."""
+    texts = (re.sub(r"(?<!\w)-(?=\d)", "−", text) for text in result.rule.sentences())
+    said = tuple(Sentence(clean(text), ()) for text in texts)
+    return Nested(FORM_TITLES.get(name, f"The form {name}"), said)
+
+
+def _notes(findings: Findings) -> tuple[Note, ...]:
+    results: list[tuple[str, FormResult | ReckonedResult]] = list(_forms(findings))
+    results += findings.reckoned.items()
+    return tuple(Note(f"{name}:", " ".join(_rule_notes(result))) for name, result in results)
+
+
+def _rule_notes(result: FormResult | ReckonedResult) -> list[str]:
     said = []
     if result.information_kept is not None:
         kept = five(result.information_kept)
         said.append(f"Information kept {kept} (share of the log-loss gain).")
-    if result.information_ceiling is not None:
+    if isinstance(result, FormResult) and result.information_ceiling is not None:
         count = len(result.rule.rows)
         said.append(
             f"Ceiling over any {count} groups of situations: {five(result.information_ceiling)}."
@@ -142,6 +158,7 @@ def _figures(findings: Findings) -> Grid:
         ("exact", findings.exact),
         *((name, result.figures) for name, result in forms),
         *((f"{n}, all use it", r.everybody) for n, r in forms if r.everybody is not None),
+        *((name, result.figures) for name, result in findings.reckoned.items()),
         ("plain count", findings.plain_count),
         ("alone", findings.alone),
     ]
@@ -203,8 +220,7 @@ def _figure_notes(findings: Findings) -> tuple[str, ...]:
     said += [
         f"The {name} is worse than ignoring the neighbours: its risk is larger than that of an"
         " agent alone."
-        for name, result in _forms(findings)
-        if result.figures.worse_than(findings.alone)
+        for name in findings.worse_than_alone
     ]
     if not findings.watching_is_worth:
         said.append(

@@ -161,7 +161,7 @@ WRONG = {
         '"table"]',
         '"web"]',
         '"web"]',
-        "(allowed lines, table, table-by-risk, tree)",
+        "(allowed lines, table, table-by-risk, table-for-all, tree, shifts, formula)",
     ),
     "form twice": ('"table"]', '"lines"]', '"lines"]', "listed twice"),
     "no forms": (

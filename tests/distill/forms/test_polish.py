@@ -345,3 +345,13 @@ def test_a_tree_stays_a_tree() -> None:
         made_of = [one.boxes for one in moves.moves(moves.start)]
         orders[name] = {in_order_of_cuts(boxes) for boxes in made_of}
     assert orders == {"tree": {True}, "table": {True, False}}
+
+
+def test_a_table_for_all_is_left_as_it_is() -> None:
+    """It is right where all use it; the price of a single user would spoil it."""
+    pricer = one_way((-2, 4), (-3, 3), 8)
+    good: Distilled = form("table").distil(pricer, Wanted(3, SHOWN))
+    bad = replace(good, rule=replace(spoilt(good.in_rows), form="table-for-all"))
+    kept = polished(pricer, Wanted(3, SHOWN), bad)
+    assert kept.rule == bad.rule
+    assert kept.notes[-1].startswith("Not polished")

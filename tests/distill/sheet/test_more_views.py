@@ -65,7 +65,8 @@ def test_a_number_that_is_always_reached_is_any() -> None:
         agent="second",
         seen=("first",),
     )
-    made = sheet(replace(sample, forms={"lines": samples.priced(rule, sample.exact)}))
+    forms = {"lines": samples.priced(rule, sample.exact)}
+    made = sheet(replace(sample, forms=forms, example=()))
     assert made.card.blocks[1].rows == (("to 120", "never", "any"),)
     assert made.lookup.data["rows"][2]["then"] == (
         "Accept the lot: never; reject the lot: whatever your number."
