@@ -39,9 +39,7 @@ def sheet_text(findings: Findings, written: Sequence[Path]) -> str:
     ]
     lines += figures_table(named, case.question.plus, case.question.minus)
     lines += [
-        f"The {name} is worse than ignoring the neighbours."
-        for name, form in findings.forms.items()
-        if form.figures.worse_than(findings.alone)
+        f"The {name} is worse than ignoring the neighbours." for name in findings.worse_than_alone
     ]
     if not findings.watching_is_worth:
         lines.append("Watching is worth nothing here.")
