@@ -76,11 +76,11 @@ class CrowdPricer(Pricer):
         drop: float = 0.0,
     ) -> CrowdPricer:
         """Play exactly and alone once; everything else is held against these."""
-        exact, _ = _played(shown, exact_member)
-        alone, _ = _played(shown, _alone)
+        exact, _ = played(shown, exact_member)
+        alone, _ = played(shown, nobody_seen)
         situations = CrowdSituations.of(shown)
-        played = (situations, losses, cone, exact, alone, shown)
-        return cls(agent, *played, group, near_tie_mass, seed, drop)
+        parts = (situations, losses, cone, exact, alone, shown)
+        return cls(agent, *parts, group, near_tie_mass, seed, drop)
 
     @property
     def group(self) -> Group:
@@ -89,21 +89,21 @@ class CrowdPricer(Pricer):
 
     def rule_tally(self, rule: Rule, whole: bool = True) -> Tally:
         """How a rule turns out; it is always counted how often others are shown odd answers."""
-        return _played(self.shown, self._policy(rule))[0]
+        return played(self.shown, self.policy(rule))[0]
 
     def rule_uses(self, rule: Rule) -> tuple[Tally, tuple[RowUse, ...]]:
         """How a rule turns out and how often each of its rows is in force and decides."""
-        found, uses = _played(self.shown, self._policy(rule), len(rule.rows))
+        found, uses = played(self.shown, self.policy(rule), len(rule.rows))
         return found, uses
 
     def way_tally(self, way: Way, whole: bool = True) -> Tally:
         """How any function of a view turns out; see :meth:`rule_tally` for ``whole``."""
         others = self.shown.crowd.size - 1
-        return _played(self.shown, lambda showing: _whole(way, Counted.of(showing, others)))[0]
+        return played(self.shown, lambda showing: _whole(way, Counted.of(showing, others)))[0]
 
     def plain_count_tally(self) -> Tally:
         """How counting commitments at face value, silence as nothing, turns out."""
-        return _played(self.shown, self._plain_count)[0]
+        return played(self.shown, self._plain_count)[0]
 
     def together_tally(self, rule: Rule, users: Sequence[str], others: Rule | None = None) -> Tally:
         """How a rule turns out for its agent where all ``users`` go by it.
@@ -116,14 +116,16 @@ class CrowdPricer(Pricer):
         goes_by = dict.fromkeys(users, rule)
         if others is not None:
             goes_by |= {key: others for key in self.users(others) if key not in goes_by}
-        return _played(self._shown_where(goes_by), self._policy(rule))[0]
+        return played(self._shown_where(goes_by), self.policy(rule))[0]
 
     def among(self, rule: Rule) -> Shown:
-        """What a member is shown where all who can go by a rule; and know, if that is everybody."""
-        return self._shown_where(dict.fromkeys(self.users(rule), rule))
+        """What a member is shown where all who can go by a rule and all know."""
+        return self._shown_where(dict.fromkeys(self.users(rule), rule), aware=True)
 
-    def _shown_where(self, goes_by: Mapping[str, Rule]) -> Shown:
+    def _shown_where(self, goes_by: Mapping[str, Rule], aware: bool = False) -> Shown:
         """What the member is shown where these go by rules, and the rest play exactly.
+
+        If ``aware`` these know who goes by what; else they take everybody for exact.
 
         There may be too many histories to enumerate even if exact play has few enough; then they
         are sampled.
@@ -139,11 +141,11 @@ class CrowdPricer(Pricer):
             for members in by_rule.values():
                 rule = goes_by.get(members[0])
                 kinds.append(Kind(kind.evidence, kind.thresholds, tuple(members), kind.looks))
-                policies.append(None if rule is None else self._policy(rule))
+                policies.append(None if rule is None else self.policy(rule))
                 sorts.append(sort)
         held = next(k for k, kind in enumerate(kinds) if self.agent in kind.members)
         given = (Crowd(tuple(kinds)), held, shown.prior, shown.horizon, shown.exchange)
-        known = None if all(policy is not None for policy in policies) else sorts
+        known = None if aware or all(policy is not None for policy in policies) else sorts
         if shown.weight is None:
             try:
                 return enumerate_shown(
@@ -165,7 +167,7 @@ class CrowdPricer(Pricer):
 
     def agreement(self, rule: Rule) -> Agreed:
         """How a rule compares with exact play on the same observations."""
-        found = crowd_agreement(self.shown, self._policy(rule))
+        found = crowd_agreement(self.shown, self.policy(rule))
         prior, weights = prior_pair(self.prior_plus), self.shown.weights
         parts = {name: getattr(found, name) for name in ("same", "opposite", "steps_apart")}
         if weights is None:
@@ -188,7 +190,8 @@ class CrowdPricer(Pricer):
             sampled=(histories, self.seed) if shown.sampled else None,
         )
 
-    def _policy(self, rule: Rule) -> CrowdPolicy:
+    def policy(self, rule: Rule) -> CrowdPolicy:
+        """A rule as a policy of members of this crowd."""
         values, others = self.row_values(rule), self.shown.crowd.size - 1
         return lambda seen: acts(rule, Counted.of(seen, others), values)
 
@@ -210,12 +213,12 @@ def _whole(way: Way, view: Counted) -> Act:
     return Act(value, np.broadcast_to(said.minus_at, shape), np.broadcast_to(said.plus_at, shape))
 
 
-def _alone(_seen: InPublic) -> Act:
+def nobody_seen(_seen: InPublic) -> Act:
     """Nobody is looked at."""
     return Act(np.zeros(()))
 
 
-def _played(shown: Shown, policy: CrowdPolicy, rows: int = 0) -> tuple[Tally, tuple[RowUse, ...]]:
+def played(shown: Shown, policy: CrowdPolicy, rows: int = 0) -> tuple[Tally, tuple[RowUse, ...]]:
     """A member's tally with a policy, and the use of each of its rows."""
     found = adopt_crowd(shown, policy, rows)
     half = found.leaning[2] / 2.0

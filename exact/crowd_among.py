@@ -1,4 +1,7 @@
-"""A crowd in which some go by policies and the others play exactly, taking everybody for exact.
+"""A crowd that is not what its exact members take it for.
+
+Some go by policies while the others play exactly and take everybody for exact; or observations are
+not what everybody takes them for.
 
 What happens has its actual weights; what the exact members make of it has those of their model, in
 which everybody is exact. So there are two walks for each sort of members: the actual one, cut by
@@ -22,6 +25,7 @@ from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.crowd_kinds import Crowd
 from thumbwright.exact.crowd_play import Choice, Histories, times
 from thumbwright.exact.crowd_policy import CrowdPolicy, reached
+from thumbwright.exact.evidence.law import Law
 from thumbwright.exact.play import Act
 from thumbwright.exact.walk import Walk
 
@@ -37,6 +41,8 @@ class Among(Histories):
         Per kind; None is exact play that takes everybody for exact.
     sorts : sequence of int
         Per kind a number; kinds of one number are alike but for what they go by.
+    laws : sequence of (Law or None), optional
+        Per kind what its observations are really like; the exact members do not know.
     prior, horizon, labels, held, lasting
         As for :class:`Histories`.
     """
@@ -51,8 +57,9 @@ class Among(Histories):
         lasting: bool = False,
         policies: Sequence[CrowdPolicy | None] = (),
         sorts: Sequence[int] = (),
+        laws: Sequence[Law | None] | None = None,
     ) -> None:
-        super().__init__(crowd, prior, horizon, labels, held, lasting, policies)
+        super().__init__(crowd, prior, horizon, labels, held, lasting, policies, laws)
         self._sorts = np.array(sorts, dtype=np.int64)
         self.reads = np.array([policy is None for policy in policies])
         leads = [list(sorts).index(sort) for sort in range(max(sorts) + 1)]
@@ -116,6 +123,11 @@ class Among(Histories):
         self._cut_model(columns)
         committing = np.isfinite(log_share[:, :2]).any(axis=(1, 2)) & undecided
         return Choice(columns, log_share, ratio, committing.any(axis=0))
+
+    def worth(self, kind: int, columns: IntArray) -> FloatArray:
+        """What a member takes what it has been shown to be worth (nats), shape (A,)."""
+        self._renew_levels(columns)
+        return np.asarray(self._level[self._sorts[kind], columns])
 
     def allowed(self, choice: Choice, kind: int) -> BoolArray:
         """Whether the model allows a member to say plus, to say minus now, shape (2, A)."""

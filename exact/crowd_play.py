@@ -29,6 +29,7 @@ from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.crowd_kinds import Crowd
 from thumbwright.exact.crowd_policy import CrowdPolicy, InPublic, reached, value_of
 from thumbwright.exact.crowd_record import Record
+from thumbwright.exact.evidence.law import Law
 from thumbwright.exact.play import Act
 from thumbwright.exact.player import leanings
 from thumbwright.exact.walk import NEAR, TIE, Walk
@@ -81,6 +82,8 @@ class Histories:
     policies : sequence of (callable or None), optional
         Per kind what its members go by, ``policy(in_public) -> act``; None is exact play. All know
         what all go by, so exact members reason by what the others do.
+    laws : sequence of (Law or None), optional
+        Per kind what its observations are really like; None is what they are taken for.
 
     Attributes
     ----------
@@ -99,6 +102,7 @@ class Histories:
         held: int | None = None,
         lasting: bool = False,
         policies: Sequence[CrowdPolicy | None] | None = None,
+        laws: Sequence[Law | None] | None = None,
     ) -> None:
         self._agents = [kind.agent for kind in crowd.kinds]
         self._prior, self.horizon, self.held = prior, horizon, held
@@ -110,8 +114,8 @@ class Histories:
         self._near = max(NEAR, _ROUNDING * crowd.size)
         kinds, size = len(crowd.kinds), len(labels)
         self._walks = [
-            Walk(agent.evidence, agent.thresholds, agent.observed_by(horizon))
-            for agent in self._agents
+            Walk(agent.evidence, agent.thresholds, agent.observed_by(horizon), law)
+            for agent, law in zip(self._agents, laws or [None] * kinds, strict=True)
         ]
         for walk in self._walks:
             walk.mass = np.repeat(walk.mass, size, axis=1)

@@ -34,6 +34,7 @@ from thumbwright.exact.crowd_play import Choice, Histories
 from thumbwright.exact.crowd_policy import CrowdPolicy, InPublic
 from thumbwright.exact.crowd_record import Record
 from thumbwright.exact.errors import ModelError
+from thumbwright.exact.evidence.law import Law
 
 Policies = Sequence[CrowdPolicy | None] | None
 
@@ -90,6 +91,8 @@ class Shown:
     odd : tuple of two floats
         Expected number of times that exact members, still undecided, were shown an answer of
         another that their model calls impossible just then; given plus and given minus.
+    law : Law or None
+        What the member's own observations are really like; None is what it takes them for.
     """
 
     crowd: Crowd
@@ -102,6 +105,7 @@ class Shown:
     half: BoolArray | None
     dropped: tuple[float, float]
     odd: tuple[float, float] = (0.0, 0.0)
+    law: Law | None = None
 
     @property
     def member(self) -> Kind:
@@ -134,6 +138,7 @@ def enumerate_shown(
     most: int = MOST,
     policies: Policies = None,
     sorts: Sequence[int] | None = None,
+    laws: Sequence[Law | None] | None = None,
 ) -> Shown:
     """Everything that a member of one kind may be shown.
 
@@ -148,7 +153,10 @@ def enumerate_shown(
     policies : sequence, optional
         As for ``Histories``: what each kind goes by, and all know.
     sorts : sequence of int, optional
-        If given, nobody knows: exact members take everybody for exact, as in ``Among``.
+        If given, nobody knows: exact members take everybody for exact, as in ``Among``, and the
+        worth of a history is what they take it to be.
+    laws : sequence of (Law or None), optional
+        As for ``Among``, with ``sorts``: what observations are really like.
 
     Raises
     ------
@@ -158,7 +166,7 @@ def enumerate_shown(
     _check(crowd, kind, prior, horizon, exchange)
     course, tree = Enumerated(crowd.size, drop, most), _Tree(kind, most)
     labels = np.zeros(1, dtype=np.int64)
-    histories = _histories(crowd, prior, horizon, labels, kind, policies, sorts)
+    histories = _histories(crowd, prior, horizon, labels, kind, policies, sorts, laws)
     record = tree.grow(histories, course, exchange)
     odd = (np.exp(record.log_weight) * record.odd).sum(axis=1)
     return Shown(
@@ -172,6 +180,7 @@ def enumerate_shown(
         half=None,
         dropped=_two(course.dropped),
         odd=_two(odd),
+        law=laws[kind] if laws else None,
     )
 
 
@@ -185,6 +194,7 @@ def sample_shown(
     seed: int,
     policies: Policies = None,
     sorts: Sequence[int] | None = None,
+    laws: Sequence[Law | None] | None = None,
 ) -> Shown:
     """What a member of one kind is shown along sampled public histories, half given each answer.
 
@@ -197,7 +207,10 @@ def sample_shown(
     policies : sequence, optional
         As for ``Histories``: what each kind goes by, and all know.
     sorts : sequence of int, optional
-        If given, nobody knows: exact members take everybody for exact, as in ``Among``.
+        If given, nobody knows: exact members take everybody for exact, as in ``Among``, and the
+        worth of a history is what they take it to be.
+    laws : sequence of (Law or None), optional
+        As for ``Among``, with ``sorts``: what observations are really like.
 
     Raises
     ------
@@ -209,7 +222,7 @@ def sample_shown(
     course, parts, records = Sampled(np.random.default_rng(seed), half), [], []
     for labels in blocks(histories):
         tree = _Tree(kind, None)
-        batch = _histories(crowd, prior, horizon, labels, kind, policies, sorts)
+        batch = _histories(crowd, prior, horizon, labels, kind, policies, sorts, laws)
         records.append(tree.grow(batch, course, exchange))
         parts.append(tuple(tree.showings))
     record = Record.join(records)
@@ -226,6 +239,7 @@ def sample_shown(
         half=drawn_plus,
         dropped=(0.0, 0.0),
         odd=_two(Weights(weight, drawn_plus).mean(record.odd)[0]),
+        law=laws[kind] if laws else None,
     )
 
 
@@ -247,11 +261,12 @@ def _histories(
     kind: int,
     policies: Policies,
     sorts: Sequence[int] | None,
+    laws: Sequence[Law | None] | None,
 ) -> Histories:
     given = (crowd, prior, horizon, labels, kind, True)
     if sorts is None:
-        return Histories(*given, policies)
-    return Among(*given, policies or (None,) * len(crowd.kinds), sorts)
+        return Histories(*given, policies, laws)
+    return Among(*given, policies or (None,) * len(crowd.kinds), sorts, laws)
 
 
 @dataclass
