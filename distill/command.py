@@ -220,8 +220,8 @@ def outcomes(case: str, limits: Limits, as_json: bool) -> None:
     "--used-by",
     default="one",
     metavar="WHO",
-    help="Who goes by the rule: one (the agent it is for), everybody who can, or ids joined by "
-    "commas.",
+    help="Who goes by the rule: one (the agent it is for), everybody who can, a share of them such "
+    "as 25%, or ids joined by commas.",
 )
 @click.option(
     "--others-use",

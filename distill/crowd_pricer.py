@@ -2,12 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
 
-from thumbwright.distill.case import CROWD
 from thumbwright.distill.costs import Inexact, Pricer
 from thumbwright.distill.crowd_situations import Counted, CrowdSituations
 from thumbwright.distill.crowds import ENUMERATED, HISTORIES
@@ -20,8 +19,10 @@ from thumbwright.distill.tallies import PARTS, Sampled, Tally, prior_pair
 from thumbwright.exact.agreement import crowd_agreement
 from thumbwright.exact.arrays import FloatArray
 from thumbwright.exact.crowd import (
+    Crowd,
     CrowdPolicy,
     InPublic,
+    Kind,
     Shown,
     TooMany,
     adopt_crowd,
@@ -29,7 +30,6 @@ from thumbwright.exact.crowd import (
     exact_member,
     sample_shown,
 )
-from thumbwright.exact.errors import ModelError
 from thumbwright.exact.group import Group
 from thumbwright.exact.play import Act
 from thumbwright.exact.stopping import Cone, Losses
@@ -76,11 +76,11 @@ class CrowdPricer(Pricer):
         drop: float = 0.0,
     ) -> CrowdPricer:
         """Play exactly and alone once; everything else is held against these."""
-        exact, _ = _played(shown, exact_member)
-        alone, _ = _played(shown, _alone)
+        exact, _ = played(shown, exact_member)
+        alone, _ = played(shown, nobody_seen)
         situations = CrowdSituations.of(shown)
-        played = (situations, losses, cone, exact, alone, shown)
-        return cls(agent, *played, group, near_tie_mass, seed, drop)
+        parts = (situations, losses, cone, exact, alone, shown)
+        return cls(agent, *parts, group, near_tie_mass, seed, drop)
 
     @property
     def group(self) -> Group:
@@ -89,66 +89,72 @@ class CrowdPricer(Pricer):
 
     def rule_tally(self, rule: Rule, whole: bool = True) -> Tally:
         """How a rule turns out; it is always counted how often others are shown odd answers."""
-        return _played(self.shown, self._policy(rule))[0]
+        return played(self.shown, self.policy(rule))[0]
 
     def rule_uses(self, rule: Rule) -> tuple[Tally, tuple[RowUse, ...]]:
         """How a rule turns out and how often each of its rows is in force and decides."""
-        found, uses = _played(self.shown, self._policy(rule), len(rule.rows))
+        found, uses = played(self.shown, self.policy(rule), len(rule.rows))
         return found, uses
 
     def way_tally(self, way: Way, whole: bool = True) -> Tally:
         """How any function of a view turns out; see :meth:`rule_tally` for ``whole``."""
         others = self.shown.crowd.size - 1
-        return _played(self.shown, lambda showing: _whole(way, Counted.of(showing, others)))[0]
+        return played(self.shown, lambda showing: _whole(way, Counted.of(showing, others)))[0]
 
     def plain_count_tally(self) -> Tally:
         """How counting commitments at face value, silence as nothing, turns out."""
-        return _played(self.shown, self._plain_count)[0]
+        return played(self.shown, self._plain_count)[0]
 
     def together_tally(self, rule: Rule, users: Sequence[str], others: Rule | None = None) -> Tally:
         """How a rule turns out for its agent where all ``users`` go by it.
 
-        Raises
-        ------
-        ModelError
-            Where some go by a rule and the rest by exact play that takes everyone for exact: in a
-            crowd that is worked out for one member only.
+        Where all members go by rules, all know; else the exact ones take everybody for exact, and
+        may be shown what their model calls impossible.
         """
-        if tuple(users) == (self.agent,):
-            shown = self.shown if others is None else self.among(others)
-            return _played(shown, self._policy(rule))[0]
-        if others is None and set(users) == set(self.shown.crowd.members):
-            return _played(self.among(rule), self._policy(rule))[0]
-        raise ModelError(
-            "in a crowd a rule is priced for one member that uses it, for one among members that "
-            "use another, or for all; for any set of users make the group smaller than "
-            f"{CROWD}, or let its rule tell the others apart"
-        )
+        if tuple(users) == (self.agent,) and others is None:
+            return self.rule_tally(rule)
+        goes_by = dict.fromkeys(users, rule)
+        if others is not None:
+            goes_by |= {key: others for key in self.users(others) if key not in goes_by}
+        return played(self._shown_where(goes_by), self.policy(rule))[0]
 
     def among(self, rule: Rule) -> Shown:
-        """What a member is shown where all others go by a rule, and all know.
+        """What a member is shown where all who can go by a rule and all know."""
+        return self._shown_where(dict.fromkeys(self.users(rule), rule), aware=True)
+
+    def _shown_where(self, goes_by: Mapping[str, Rule], aware: bool = False) -> Shown:
+        """What the member is shown where these go by rules, and the rest play exactly.
+
+        If ``aware`` these know who goes by what; else they take everybody for exact.
 
         There may be too many histories to enumerate even if exact play has few enough; then they
         are sampled.
-
-        Raises ModelError where not all can go by it.
         """
         shown = self.shown
-        strangers = set(shown.crowd.members) - set(self.users(rule))
-        if strangers:
-            raise ModelError(
-                f"not everybody in this crowd can use the rule: {min(strangers)} cannot, as its "
-                "own count, its thresholds or its timetable are others"
-            )
-        policies = [self._policy(rule)] * len(shown.crowd.kinds)
-        given = (shown.crowd, shown.kind, shown.prior, shown.horizon, shown.exchange)
+        kinds: list[Kind] = []
+        policies: list[CrowdPolicy | None] = []
+        sorts: list[int] = []
+        for sort, kind in enumerate(shown.crowd.kinds):
+            by_rule: dict[int, list[str]] = {}
+            for member in kind.members:
+                by_rule.setdefault(id(goes_by.get(member)), []).append(member)
+            for members in by_rule.values():
+                rule = goes_by.get(members[0])
+                kinds.append(Kind(kind.evidence, kind.thresholds, tuple(members), kind.looks))
+                policies.append(None if rule is None else self.policy(rule))
+                sorts.append(sort)
+        held = next(k for k, kind in enumerate(kinds) if self.agent in kind.members)
+        given = (Crowd(tuple(kinds)), held, shown.prior, shown.horizon, shown.exchange)
+        known = None if aware or all(policy is not None for policy in policies) else sorts
         if shown.weight is None:
             try:
-                return enumerate_shown(*given, drop=self.drop, most=ENUMERATED, policies=policies)
+                return enumerate_shown(
+                    *given, drop=self.drop, most=ENUMERATED, policies=policies, sorts=known
+                )
             except TooMany:
-                return sample_shown(*given, HISTORIES, self.seed, policies=policies)
-        histories = shown.weight.shape[1]
-        return sample_shown(*given, histories, self.seed, policies=policies)
+                pass
+        histories = HISTORIES if shown.weight is None else shown.weight.shape[1]
+        return sample_shown(*given, histories, self.seed, policies=policies, sorts=known)
 
     def situations_among(self, rule: Rule) -> CrowdSituations:
         """Situations of the rule's agent where all go by the rule and all know."""
@@ -161,7 +167,7 @@ class CrowdPricer(Pricer):
 
     def agreement(self, rule: Rule) -> Agreed:
         """How a rule compares with exact play on the same observations."""
-        found = crowd_agreement(self.shown, self._policy(rule))
+        found = crowd_agreement(self.shown, self.policy(rule))
         prior, weights = prior_pair(self.prior_plus), self.shown.weights
         parts = {name: getattr(found, name) for name in ("same", "opposite", "steps_apart")}
         if weights is None:
@@ -184,7 +190,8 @@ class CrowdPricer(Pricer):
             sampled=(histories, self.seed) if shown.sampled else None,
         )
 
-    def _policy(self, rule: Rule) -> CrowdPolicy:
+    def policy(self, rule: Rule) -> CrowdPolicy:
+        """A rule as a policy of members of this crowd."""
         values, others = self.row_values(rule), self.shown.crowd.size - 1
         return lambda seen: acts(rule, Counted.of(seen, others), values)
 
@@ -206,12 +213,12 @@ def _whole(way: Way, view: Counted) -> Act:
     return Act(value, np.broadcast_to(said.minus_at, shape), np.broadcast_to(said.plus_at, shape))
 
 
-def _alone(_seen: InPublic) -> Act:
+def nobody_seen(_seen: InPublic) -> Act:
     """Nobody is looked at."""
     return Act(np.zeros(()))
 
 
-def _played(shown: Shown, policy: CrowdPolicy, rows: int = 0) -> tuple[Tally, tuple[RowUse, ...]]:
+def played(shown: Shown, policy: CrowdPolicy, rows: int = 0) -> tuple[Tally, tuple[RowUse, ...]]:
     """A member's tally with a policy, and the use of each of its rows."""
     found = adopt_crowd(shown, policy, rows)
     half = found.leaning[2] / 2.0
@@ -232,7 +239,7 @@ def _played(shown: Shown, policy: CrowdPolicy, rows: int = 0) -> tuple[Tally, tu
 
     tally = Tally(
         **{name: mean(x) for name, x in parts.items()},
-        off_model=float(prior @ mean(found.off_model)),
+        off_model=float(prior @ mean(found.off_model) + prior @ np.array(shown.odd)),
         sampled=None if weights is None else Sampled(**parts, weights=weights),
     )
     uses = () if found.usage is None else found.usage

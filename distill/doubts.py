@@ -14,6 +14,7 @@ from dataclasses import dataclass, replace
 
 from thumbwright.distill.assemble import Limits, Setting
 from thumbwright.distill.case import Case
+from thumbwright.distill.costs import Pricer
 from thumbwright.distill.evidence_keys import CalibrationEvidence
 from thumbwright.distill.findings import Doubted, Figures
 from thumbwright.distill.network_pricer import NetworkPricer
@@ -124,14 +125,14 @@ def _priced(pricer: NetworkPricer, rule: Rule, doubt: Doubt, limits: Limits) -> 
     there = replace(pricer, exact_tally=exact, alone_tally=alone)
 
     def figures(played: Tally) -> Figures:
-        return replace(there.figures(played), benefit_kept=_kept(pricer, played, alone))
+        return replace(there.figures(played), benefit_kept=kept_of(pricer, played, alone))
 
     return Doubted(
         doubt.name, doubt.says, doubt.how, figures(by_rule), figures(exact), figures(alone)
     )
 
 
-def _kept(pricer: NetworkPricer, played: Tally, alone: Tally) -> float | None:
+def kept_of(pricer: Pricer, played: Tally, alone: Tally) -> float | None:
     """Risk saved over looking at nobody, as a share of what exact watching was to save."""
     if pricer.losses is None or not pricer.watching_is_worth:
         return None
@@ -171,6 +172,12 @@ def _doubts(pricer: NetworkPricer, case: Case) -> tuple[list[Doubt], list[str]]:
 
 def _evidence_doubts(group: Group) -> Iterator[Doubt]:
     """Observations of everybody that tell less, or more, than everybody takes them for."""
+    for name, says, how, law in evidence_laws(group):
+        yield Doubt(name, says, how, _with_laws(law, group))
+
+
+def evidence_laws(group: Group) -> Iterator[tuple[str, str, str, Callable[[Agent], Law]]]:
+    """Name, what is really so, how much exactly, and the law of an agent's observations."""
     if any(a.evidence.certain_plus + a.evidence.certain_minus > 0 for a in group.agents):
         return
     for name, factor, words in (("weaker", HALF, "half"), ("stronger", TWICE, "twice")):
@@ -180,7 +187,7 @@ def _evidence_doubts(group: Group) -> Iterator[Doubt]:
         if all(one.kind == "coin" for one in coins.values()) and len(coins) == 1:
             right = stretched(group.agents[0].evidence, factor).plus[1]
             how += f"; a sign is right with probability {right:.3g}"
-        yield Doubt(f"evidence-{name}", said, how, _with_laws(_stretched_by(factor), group))
+        yield f"evidence-{name}", said, how, _stretched_by(factor)
 
 
 def _stretched_by(factor: float) -> Callable[[Agent], Law]:
@@ -197,9 +204,16 @@ def _with_laws(
 
 def _calibration_doubts(case: Case, group: Group) -> Iterator[Doubt]:
     """What earlier cases leave open about the chances of a sign under either answer."""
-    counts = case.evidence
     who = [key for key, agent in case.agents.items() if agent.evidence is None]
-    if not isinstance(counts, CalibrationEvidence) or not who:
+    for name, says, how, law in calibration_laws(case):
+        yield Doubt(name, says, how, _with_laws(law, group, who))
+
+
+def calibration_laws(case: Case) -> Iterator[tuple[str, str, str, Callable[[Agent], Law]]]:
+    """As :func:`evidence_laws`, for the agents that share the evidence of the case."""
+    counts = case.evidence
+    shared = any(agent.evidence is None for agent in case.agents.values())
+    if not isinstance(counts, CalibrationEvidence) or not shared:
         return
     plus = posterior(counts.hits, counts.misses)
     minus = posterior(counts.false_alarms, counts.correct_rejections)
@@ -215,8 +229,7 @@ def _calibration_doubts(case: Case, group: Group) -> Iterator[Doubt]:
             f"probability {p_plus:.3g} given plus and {p_minus:.3g} given minus, the 5 % or 95 % "
             "quantile that these counts leave (prior Beta(1/2, 1/2))"
         )
-        real = bernoulli(p_plus, p_minus)
-        yield Doubt(name, said, how, _with_laws(_really(real), group, who))
+        yield name, said, how, _really(bernoulli(p_plus, p_minus))
 
 
 def _really(real: Evidence) -> Callable[[Agent], Law]:

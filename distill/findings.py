@@ -262,3 +262,10 @@ class Findings:
         from thumbwright.distill.sheet.notebook import findings_html
 
         return findings_html(self)
+
+    @property
+    def worse_than_alone(self) -> tuple[str, ...]:
+        """Names of the forms whose rule has a larger risk than ignoring everybody."""
+        figures = {name: one.figures for name, one in self.forms.items()}
+        figures |= {name: one.figures for name, one in self.reckoned.items()}
+        return tuple(name for name, one in figures.items() if one.worse_than(self.alone))

@@ -14,6 +14,8 @@ import numpy as np
 from thumbwright.distill.assemble import NO_LIMITS, Limits
 from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
+from thumbwright.distill.crowd_doubts import doubted_crowd
+from thumbwright.distill.crowd_pricer import CrowdPricer
 from thumbwright.distill.crowds import HISTORIES
 from thumbwright.distill.doubts import doubted
 from thumbwright.distill.example import example
@@ -96,7 +98,8 @@ def _doubts(
 ) -> tuple[tuple[Doubted, ...], tuple[str, ...]]:
     if isinstance(pricer, NetworkPricer):
         return doubted(pricer, case, rule, limits, progress)
-    return (), ("Wrong assumptions are not priced where everybody sees everybody and is counted.",)
+    assert isinstance(pricer, CrowdPricer)
+    return doubted_crowd(pricer, case, rule, progress)
 
 
 def _forms(

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import asdict, dataclass
 from pathlib import Path
 from typing import Any
@@ -20,6 +21,9 @@ from thumbwright.exact.arrays import BoolArray
 
 MOST_TOLD = 5000
 """So many situations that no row, or more than one, holds in are looked at to count them."""
+
+MOST_NAMED = 12
+"""So many agents are named in a message."""
 
 KNOWN = ("exact", "plain-count", "alone")
 """Ways of playing that have a name and need no file."""
@@ -117,13 +121,32 @@ def handed_in(case: Case, pricer: Pricer, path: str) -> tuple[Rule, list[str]]:
     return read, _refused_bars(pricer, path) if read.has_bars else []
 
 
+def _share(text: str, agent: str, able: tuple[str, ...]) -> tuple[str, ...]:
+    """A share of those who can use a rule: its agent, then the others in their order.
+
+    Raises Faults where it is no share.
+    """
+    try:
+        share = float(text[:-1]) / 100.0
+    except ValueError:
+        share = math.nan
+    if not 0.0 < share <= 1.0:
+        raise Faults([f"--used-by: {text} is no share (allowed: above 0% to 100%)"])
+    in_order = [agent, *(key for key in able if key != agent)]
+    chosen = set(in_order[: max(1, round(share * len(able)))])
+    return tuple(key for key in able if key in chosen)
+
+
 def _in_use(case: Case, pricer: Pricer, rule: Rule, use: Use) -> tuple[Tally, dict[str, Any]]:
     """How the rule's agent fares where others use it too, and how they do."""
     able = pricer.users(rule)
     users = {"one": (pricer.agent,), "everybody": able}.get(use.by)
+    if use.by.endswith("%"):
+        users = _share(use.by, pricer.agent, able)
     if users is None:
         asked = [name.strip() for name in use.by.split(",")]
-        allowed = f"(allowed: one, everybody, or some of {', '.join(able)}, joined by commas)"
+        some = ", ".join(able[:MOST_NAMED]) + (", ..." if len(able) > MOST_NAMED else "")
+        allowed = f"(allowed: one, everybody, a share such as 25%, or some of {some})"
         unable = [name for name in asked if name not in able]
         if unable:
             raise Faults([f"--used-by: {', '.join(unable)} cannot use this rule {allowed}"])
@@ -139,6 +162,7 @@ def _in_use(case: Case, pricer: Pricer, rule: Rule, use: Use) -> tuple[Tally, di
         if faults:
             raise Faults(faults)
     told: dict[str, Any] = {"used_by": list(users), "rule_of_others": use.others}
+    told["everybody"] = len(users) == len(pricer.group.agents)
     if isinstance(pricer, NetworkPricer):
         tallies = pricer.together_tallies(rule, users, others)
         told["agents"] = {

@@ -14,9 +14,10 @@ from thumbwright.distill.forms import MODULES, Distilled, Sized, Wanted
 from thumbwright.distill.forms.batch import Batch
 from thumbwright.distill.forms.enough import Enough
 from thumbwright.distill.forms.making import make, wanted_of, without_limits
-from thumbwright.distill.group_checks import RECKONED
 from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.pricing import pricer_of
+from thumbwright.distill.rules import Rule
+from thumbwright.distill.shifts import Shifts
 from thumbwright.distill.tallies import Tally
 from thumbwright.exact.engine import Progress
 from thumbwright.exact.errors import ModelError
@@ -98,16 +99,13 @@ def _fill(
     """Price one size after the other, so that what is there counts if the run is stopped."""
     enough = Enough(pricer, wanted) if wanted.limited else None
     for name in (name for name in MODULES if name in case.rule.forms):
-        if name in RECKONED:
-            left_out[name] = f'the form "{name}" has no rows to count'
-            continue
         here = found.setdefault(name, {})
         try:
             for number, made in enumerate(_by_size(name, pricer, wanted, progress)):
                 if progress:
                     progress(f"sizes, {name}", min(number + 1, wanted.rows), wanted.rows)
-                tally = pricer.rule_tally(made.in_rows)
-                size = Size(len(made.in_rows.rows), pricer.figures(tally), made.information_kept)
+                tally = _tally(pricer, made)
+                size = Size(_rows(made), pricer.figures(tally), made.information_kept)
                 one = _Priced(size, tally, None if enough is None else enough(tally))
                 other = here.get(size.rows)
                 # A search may come to as many rows twice.
@@ -116,6 +114,19 @@ def _fill(
         except ModelError as refusal:
             left_out[name] = str(refusal)
             del found[name]
+
+
+def _tally(pricer: Pricer, made: Distilled) -> Tally:
+    rule = made.rule
+    return pricer.rule_tally(rule) if isinstance(rule, Rule) else pricer.way_tally(rule)
+
+
+def _rows(made: Distilled) -> int:
+    """Rows of a rule, lines of shifts, numbers of a formula."""
+    rule = made.rule
+    if isinstance(rule, Rule):
+        return len(rule.rows)
+    return rule.rows if isinstance(rule, Shifts) else len(rule.parameters)
 
 
 def _by_size(

@@ -31,6 +31,8 @@ def sizes_text(case: Case, found: dict[str, Any]) -> str:
         lines.append("each rule polished: moved for less risk, one bar, value or cut at a time")
     for name, form in found["forms"].items():
         head = tuple(cell.format(plus=question.plus, minus=question.minus) for cell in HEAD)
+        if name == "formula":
+            head = ("numbers", *head[1:])
         rows = [_row(size, form["fewest_rows_within_limits"]) for size in form["sizes"]]
         lines += ["", name]
         lines += columns([head, *rows], right=range(9)) if rows else ["no size was finished"]

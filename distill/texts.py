@@ -39,9 +39,7 @@ def sheet_text(findings: Findings, written: Sequence[Path]) -> str:
     ]
     lines += figures_table(named, case.question.plus, case.question.minus)
     lines += [
-        f"The {name} is worse than ignoring the neighbours."
-        for name, form in findings.forms.items()
-        if form.figures.worse_than(findings.alone)
+        f"The {name} is worse than ignoring the neighbours." for name in findings.worse_than_alone
     ]
     if not findings.watching_is_worth:
         lines.append("Watching is worth nothing here.")
@@ -234,12 +232,19 @@ def price_text(found: dict[str, Any]) -> str:
     return "\n".join(lines)
 
 
+MOST_USERS = 12
+"""More users of a rule than this are counted and not named."""
+
+
 def _who_uses(found: dict[str, Any]) -> str:
     users, others = found.get("used_by"), found.get("rule_of_others")
-    rest = "the others stay exact" if others is None else f"the others who can go by {others}"
+    rest = ", the others stay exact" if others is None else f", the others who can go by {others}"
     if not users or users == [found["agent"]]:
-        return f"{found['agent']} uses the rule, {rest}"
-    return f"{', '.join(users)} use the rule, {rest}; the figures are those of {found['agent']}"
+        return f"{found['agent']} uses the rule{rest}"
+    if found["everybody"]:
+        return f"everybody uses the rule; the figures are those of {found['agent']}"
+    who = ", ".join(users) if len(users) <= MOST_USERS else f"{users[0]} and {len(users) - 1} more"
+    return f"{who} use the rule{rest}; the figures are those of {found['agent']}"
 
 
 def signed(number: float, digits: int) -> str:

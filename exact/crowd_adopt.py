@@ -88,7 +88,8 @@ class _Adopter:
     def __init__(self, shown: Shown, policy: CrowdPolicy, rows: int) -> None:
         agent, self._horizon = shown.member.agent, shown.horizon
         self._agent, self._policy, self._prior = agent, policy, shown.prior
-        self._walk = Walk(agent.evidence, agent.thresholds, agent.observed_by(shown.horizon))
+        looks = agent.observed_by(shown.horizon)
+        self._walk = Walk(agent.evidence, agent.thresholds, looks, shown.law)
         self._by_history = shown.sampled
         # Under "once" what is said at the horizon is shown to nobody.
         self._at_once = shown.exchange == "settle"

@@ -29,6 +29,7 @@ from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
 from thumbwright.exact.crowd_kinds import Crowd
 from thumbwright.exact.crowd_policy import CrowdPolicy, InPublic, reached, value_of
 from thumbwright.exact.crowd_record import Record
+from thumbwright.exact.evidence.law import Law
 from thumbwright.exact.play import Act
 from thumbwright.exact.player import leanings
 from thumbwright.exact.walk import NEAR, TIE, Walk
@@ -81,6 +82,8 @@ class Histories:
     policies : sequence of (callable or None), optional
         Per kind what its members go by, ``policy(in_public) -> act``; None is exact play. All know
         what all go by, so exact members reason by what the others do.
+    laws : sequence of (Law or None), optional
+        Per kind what its observations are really like; None is what they are taken for.
 
     Attributes
     ----------
@@ -99,17 +102,20 @@ class Histories:
         held: int | None = None,
         lasting: bool = False,
         policies: Sequence[CrowdPolicy | None] | None = None,
+        laws: Sequence[Law | None] | None = None,
     ) -> None:
         self._agents = [kind.agent for kind in crowd.kinds]
         self._prior, self.horizon, self.held = prior, horizon, held
         self._lasting = lasting and held is not None
         self._policies = [None] * len(crowd.kinds) if policies is None else [*policies]
         self.by_policies = all(policy is not None for policy in self._policies)
+        # Who reads what is shown by a model.
+        self.reads: BoolArray = np.full(len(crowd.kinds), not self.by_policies)
         self._near = max(NEAR, _ROUNDING * crowd.size)
         kinds, size = len(crowd.kinds), len(labels)
         self._walks = [
-            Walk(agent.evidence, agent.thresholds, agent.observed_by(horizon))
-            for agent in self._agents
+            Walk(agent.evidence, agent.thresholds, agent.observed_by(horizon), law)
+            for agent, law in zip(self._agents, laws or [None] * kinds, strict=True)
         ]
         for walk in self._walks:
             walk.mass = np.repeat(walk.mass, size, axis=1)
@@ -190,6 +196,12 @@ class Histories:
             self.log_left[k][:, columns] = divided[2]
         committing = np.isfinite(log_share[:, :2]).any(axis=(1, 2)) & undecided
         return Choice(columns, log_share, ratio, committing.any(axis=0) & able)
+
+    def allowed(self, choice: Choice, kind: int) -> BoolArray:
+        """Whether others expect a member to say plus, to say minus now, shape (2, A)."""
+        if self.by_policies:
+            return np.ones((2, len(choice.columns)), dtype=bool)
+        return np.asarray(np.isfinite(choice.log_share[kind, :2]).any(axis=1))
 
     def _acts(self, columns: IntArray, round_: int) -> list[Act | None]:
         """What the policies of kinds make of the chosen histories."""

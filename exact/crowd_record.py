@@ -33,6 +33,9 @@ class Record:
         Commitments to plus and to minus at the very moment of the first.
     origin : ndarray of int, shape (H,)
         Where the history, or the one it goes on from, stood when this was last written down.
+    odd : ndarray of float, shape (H,)
+        How often exact members, still undecided, were shown an answer that their model calls
+        impossible just then.
     near : ndarray of float, shape (2, H)
         Expected number of members decided by the tie rule and no clear margin, given the history.
     lean : ndarray of float, shape (K, 3, 2, H)
@@ -54,6 +57,7 @@ class Record:
     first_plus: IntArray
     first_minus: IntArray
     origin: IntArray
+    odd: FloatArray
     near: FloatArray
     lean: FloatArray
     ratio: FloatArray
@@ -69,6 +73,7 @@ class Record:
         return cls(
             label=label,
             log_weight=np.zeros((2, size)),
+            odd=np.zeros(size),
             near=np.zeros((2, size)),
             lean=np.zeros((kinds, 3, 2, size)),
             ratio=np.zeros(size),

@@ -17,6 +17,7 @@ from functools import cached_property
 import numpy as np
 
 from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
+from thumbwright.exact.crowd_among import Among
 from thumbwright.exact.crowd_course import (
     MOST,
     Enumerated,
@@ -31,7 +32,9 @@ from thumbwright.exact.crowd_figures import Weights
 from thumbwright.exact.crowd_kinds import Crowd, Kind, check_play
 from thumbwright.exact.crowd_play import Choice, Histories
 from thumbwright.exact.crowd_policy import CrowdPolicy, InPublic
+from thumbwright.exact.crowd_record import Record
 from thumbwright.exact.errors import ModelError
+from thumbwright.exact.evidence.law import Law
 
 Policies = Sequence[CrowdPolicy | None] | None
 
@@ -85,6 +88,11 @@ class Shown:
         Which sampled histories were drawn given plus.
     dropped : tuple of two floats
         Probability given plus and given minus of the histories that were dropped.
+    odd : tuple of two floats
+        Expected number of times that exact members, still undecided, were shown an answer of
+        another that their model calls impossible just then; given plus and given minus.
+    law : Law or None
+        What the member's own observations are really like; None is what it takes them for.
     """
 
     crowd: Crowd
@@ -96,6 +104,8 @@ class Shown:
     weight: FloatArray | None
     half: BoolArray | None
     dropped: tuple[float, float]
+    odd: tuple[float, float] = (0.0, 0.0)
+    law: Law | None = None
 
     @property
     def member(self) -> Kind:
@@ -127,6 +137,8 @@ def enumerate_shown(
     drop: float = 0.0,
     most: int = MOST,
     policies: Policies = None,
+    sorts: Sequence[int] | None = None,
+    laws: Sequence[Law | None] | None = None,
 ) -> Shown:
     """Everything that a member of one kind may be shown.
 
@@ -140,6 +152,11 @@ def enumerate_shown(
         Histories, and entries of the tree, that may be held.
     policies : sequence, optional
         As for ``Histories``: what each kind goes by, and all know.
+    sorts : sequence of int, optional
+        If given, nobody knows: exact members take everybody for exact, as in ``Among``, and the
+        worth of a history is what they take it to be.
+    laws : sequence of (Law or None), optional
+        As for ``Among``, with ``sorts``: what observations are really like.
 
     Raises
     ------
@@ -149,11 +166,22 @@ def enumerate_shown(
     _check(crowd, kind, prior, horizon, exchange)
     course, tree = Enumerated(crowd.size, drop, most), _Tree(kind, most)
     labels = np.zeros(1, dtype=np.int64)
-    histories = Histories(crowd, prior, horizon, labels, kind, lasting=True, policies=policies)
-    tree.grow(histories, course, exchange)
-    dropped = float(course.dropped[0]), float(course.dropped[1])
-    parts = (tuple(tree.showings),)
-    return Shown(crowd, kind, prior, horizon, exchange, parts, None, None, dropped)
+    histories = _histories(crowd, prior, horizon, labels, kind, policies, sorts, laws)
+    record = tree.grow(histories, course, exchange)
+    odd = (np.exp(record.log_weight) * record.odd).sum(axis=1)
+    return Shown(
+        crowd,
+        kind,
+        prior,
+        horizon,
+        exchange,
+        parts=(tuple(tree.showings),),
+        weight=None,
+        half=None,
+        dropped=_two(course.dropped),
+        odd=_two(odd),
+        law=laws[kind] if laws else None,
+    )
 
 
 def sample_shown(
@@ -165,6 +193,8 @@ def sample_shown(
     histories: int,
     seed: int,
     policies: Policies = None,
+    sorts: Sequence[int] | None = None,
+    laws: Sequence[Law | None] | None = None,
 ) -> Shown:
     """What a member of one kind is shown along sampled public histories, half given each answer.
 
@@ -176,6 +206,11 @@ def sample_shown(
         Which kind the member is of.
     policies : sequence, optional
         As for ``Histories``: what each kind goes by, and all know.
+    sorts : sequence of int, optional
+        If given, nobody knows: exact members take everybody for exact, as in ``Among``, and the
+        worth of a history is what they take it to be.
+    laws : sequence of (Law or None), optional
+        As for ``Among``, with ``sorts``: what observations are really like.
 
     Raises
     ------
@@ -184,23 +219,54 @@ def sample_shown(
     """
     _check(crowd, kind, prior, horizon, exchange)
     half = half_of(histories)
-    course, parts, ratios = Sampled(np.random.default_rng(seed), half), [], []
+    course, parts, records = Sampled(np.random.default_rng(seed), half), [], []
     for labels in blocks(histories):
         tree = _Tree(kind, None)
-        batch = Histories(crowd, prior, horizon, labels, kind, lasting=True, policies=policies)
-        ratios.append(tree.grow(batch, course, exchange))
+        batch = _histories(crowd, prior, horizon, labels, kind, policies, sorts, laws)
+        records.append(tree.grow(batch, course, exchange))
         parts.append(tuple(tree.showings))
-    weight = balanced(np.concatenate(ratios)) / histories
+    record = Record.join(records)
+    weight = balanced(record.ratio) / histories
     drawn_plus = np.arange(histories) < half
     return Shown(
-        crowd, kind, prior, horizon, exchange, tuple(parts), weight, drawn_plus, (0.0, 0.0)
+        crowd,
+        kind,
+        prior,
+        horizon,
+        exchange,
+        parts=tuple(parts),
+        weight=weight,
+        half=drawn_plus,
+        dropped=(0.0, 0.0),
+        odd=_two(Weights(weight, drawn_plus).mean(record.odd)[0]),
+        law=laws[kind] if laws else None,
     )
+
+
+def _two(pair: FloatArray) -> tuple[float, float]:
+    return float(pair[0]), float(pair[1])
 
 
 def _check(crowd: Crowd, kind: int, prior: float, horizon: int, exchange: str) -> None:
     check_play(crowd, prior, horizon, exchange)
     if not 0 <= kind < len(crowd.kinds):
         raise ModelError(f"the crowd has {len(crowd.kinds)} kinds, counted from 0; not {kind}")
+
+
+def _histories(
+    crowd: Crowd,
+    prior: float,
+    horizon: int,
+    labels: IntArray,
+    kind: int,
+    policies: Policies,
+    sorts: Sequence[int] | None,
+    laws: Sequence[Law | None] | None,
+) -> Histories:
+    given = (crowd, prior, horizon, labels, kind, True)
+    if sorts is None:
+        return Histories(*given, policies, laws)
+    return Among(*given, policies or (None,) * len(crowd.kinds), sorts, laws)
 
 
 @dataclass
@@ -215,12 +281,11 @@ class _Tree:
     _worth: FloatArray = field(default_factory=lambda: np.zeros(0))
     _moment: tuple[int, int] = (0, 0)
 
-    def grow(self, histories: Histories, course: Enumerated | Sampled, exchange: str) -> FloatArray:
-        """Play; returns the log ratio of each history given plus and given minus."""
+    def grow(self, histories: Histories, course: Enumerated | Sampled, exchange: str) -> Record:
+        """Play; returns what has happened in the end."""
         settle = exchange == "settle"
         horizon = histories.horizon
-        record = play(histories, course, horizon, settle, self.before, chosen=self.decided)
-        return record.ratio
+        return play(histories, course, horizon, settle, self.before, chosen=self.decided)
 
     def before(self, step: int, round_: int, histories: Histories) -> None:
         """What is known before anybody decides."""
@@ -238,13 +303,11 @@ class _Tree:
                 f"more than {self.most:,} situations would be held; drop the least likely "
                 "histories, sample histories instead, or shorten the horizon"
             )
-        may = np.zeros((2, size), dtype=bool)
-        may[:, choice.columns] = np.isfinite(choice.log_share[self.kind, :2]).any(axis=1)
-        # Those who go by policies read nothing by a model.
-        may |= histories.by_policies
+        may = np.full((2, size), histories.by_policies)
+        may[:, choice.columns] = histories.allowed(choice, self.kind)
         stay = np.ones((len(choice.log_share), 2, size))
         stay[..., choice.columns] = np.exp(choice.log_share[:, 2])
-        waiting = (histories.free[:, None] * stay).sum(axis=0)
+        waiting = (histories.free[histories.reads, None] * stay[histories.reads]).sum(axis=0)
         self.showings.append(
             Showing(
                 *self._moment,

@@ -20,6 +20,7 @@ from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms import Distilled, Wanted
 from thumbwright.distill.forms.axes import grid_axes
 from thumbwright.distill.forms.cells import Cells
+from thumbwright.distill.forms.enough import Enough
 from thumbwright.distill.forms.fitting import everywhere, fitted, information_of, kinds, log_loss
 from thumbwright.distill.formula import Formula, Term
 from thumbwright.distill.rules import FIRST_ANSWER
@@ -81,6 +82,7 @@ class Search:
 
     def __init__(self, pricer: Pricer, wanted: Wanted) -> None:
         self._pricer, self._wanted = pricer, wanted
+        self._enough = Enough(pricer, wanted)
         group = pricer.group
         evidence = group.agents[group.index[pricer.agent]].evidence
         in_counts = evidence.on_ladder and not evidence.beta and evidence.alpha[0] > 0
@@ -193,10 +195,8 @@ class Search:
         return self._pricer.objective(self._tally(formula))
 
     def _within(self, formula: Formula) -> bool:
-        """Whether a formula loses no more accuracy than it may."""
-        lost, pricer = self._wanted.max_accuracy_lost, self._pricer
-        exact = pricer.accuracy(pricer.exact_tally)
-        return lost is None or exact - pricer.accuracy(self._tally(formula)) <= lost
+        """Whether a formula is within the limits of the case."""
+        return self._enough(self._tally(formula))
 
     def chosen(self) -> tuple[Formula, list[str]]:
         """The formula whose numbers are all worth it, or the shortest that loses little enough."""
@@ -207,12 +207,15 @@ class Search:
             for size in dict.fromkeys(one.fitted for one in order)
         )
         notes = [f"Least risk by how many numbers are fitted: {said}."]
-        if self._wanted.max_accuracy_lost is not None:
+        if self._wanted.limited:
+            enough = self._enough
+            notes += enough.notes
             fits = [one for one in order if self._within(one)]
             if fits:
-                return fits[0], ["The fewest numbers within the accuracy that may be lost.", *notes]
-            least = f"No formula of up to {self._wanted.rows} numbers stays within the accuracy"
-            return min(order, key=self._risk), [f"{least} that may be lost.", *notes]
+                fewest = [f"The fewest numbers that {enough.they}."] if enough.they else []
+                return fits[0], [*fewest, *notes]
+            none = f"No formula of up to {self._wanted.rows} numbers {enough.it}."
+            return min(order, key=self._risk), [none, *notes]
         best = order[0]
         while True:
             longer = [one for one in order if one.fitted > best.fitted]

@@ -7,7 +7,6 @@ from dataclasses import replace
 from thumbwright.distill.case import Case
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms import Distilled, Wanted, form
-from thumbwright.distill.rules import Rule
 from thumbwright.exact.engine import Progress
 from thumbwright.exact.errors import ModelError
 
@@ -36,7 +35,7 @@ def make(name: str, pricer: Pricer, wanted: Wanted, progress: Progress | None = 
     Raises ModelError where the form cannot be had of this case.
     """
     made: Distilled = form(name).distil(pricer, wanted, progress)
-    if not wanted.polish or not isinstance(made.rule, Rule):
+    if not wanted.polish:
         return made
     from thumbwright.distill.forms.polish import polished
 

@@ -29,6 +29,9 @@ MOST_PRICED, ONE_BY_ONE = 12_000, 300
 AT_ONCE = 2_000
 """So many are priced before the best of them is taken; one where each is played by itself."""
 
+FOR_ALL = "table-for-all"
+"""The form that is made for all to use, which a polish for a single user would spoil."""
+
 SAME = 1e-12
 """Risks that differ by less are equal."""
 
@@ -66,8 +69,12 @@ def polished(
     A rule that is within the limits of the case stays within them. Needs costs.
     """
     rule = made.rule
-    if not isinstance(rule, Rule) or (rule.has_bars and not isinstance(pricer, NetworkPricer)):
-        return replace(made, notes=(*made.notes, "Not polished: it has no rows with values."))
+    if not isinstance(rule, Rule):
+        note = "Not polished: it has no rows; its numbers are chosen by exact price as it is."
+        return replace(made, notes=(*made.notes, note))
+    if rule.form == FOR_ALL:
+        note = "Not polished: the price of a single user is not what it is made for."
+        return replace(made, notes=(*made.notes, note))
     if rule.has_bars:
         assert isinstance(pricer, NetworkPricer)
         return _searched(

@@ -17,6 +17,7 @@ import numpy as np
 from thumbwright.distill.costs import Pricer
 from thumbwright.distill.forms import Distilled, Wanted
 from thumbwright.distill.forms.cells import Cells
+from thumbwright.distill.forms.enough import Enough
 from thumbwright.distill.forms.fitting import everywhere, fitted, information_of, kinds
 from thumbwright.distill.shifts import Base, Move, Shifts
 from thumbwright.distill.tallies import Tally
@@ -113,9 +114,8 @@ class Search:
     def built(self) -> tuple[Shifts, list[str]]:
         """The rule, and sentences on how it came about."""
         pricer, wanted = self._pricer, self._wanted
-        rule, most_lost = self._polished(self._alone), wanted.max_accuracy_lost
-        least = None if most_lost is None else pricer.accuracy(pricer.exact_tally) - most_lost
-        while rule.rows < wanted.rows and (least is None or self._accuracy(rule) < least):
+        rule, enough = self._polished(self._alone), Enough(pricer, wanted)
+        while rule.rows < wanted.rows and not (wanted.limited and enough(self._tally(rule))):
             added = self._best(self._longer(rule))
             if added is None or self._risk(added) >= self._risk(rule) - 1e-12:
                 break
@@ -123,11 +123,16 @@ class Search:
             if self._progress:
                 self._progress(NAME, rule.rows, wanted.rows)
         notes = [f"Whole numbers chosen by exact price among {len(self._tallies)} rules."]
-        if least is None:
+        if not wanted.limited:
             return self._pruned(rule), notes
-        fits = self._accuracy(rule) >= least
-        said = "The fewest lines found" if fits else f"None of up to {wanted.rows} lines was found"
-        return rule, [f"{said} within the accuracy that may be lost.", *notes]
+        notes += enough.notes
+        if not enough(self._tally(rule)):
+            return rule, [
+                f"No rule of up to {wanted.rows} lines was found that {enough.it}.",
+                *notes,
+            ]
+        said = [f"The fewest lines found that {enough.they}."] if enough.they else []
+        return rule, [*said, *notes]
 
     def _price(self, rules: Iterable[Shifts]) -> None:
         """Price what is not yet priced, together where that is possible."""
@@ -144,9 +149,6 @@ class Search:
 
     def _risk(self, rule: Shifts) -> float:
         return self._pricer.objective(self._tally(rule))
-
-    def _accuracy(self, rule: Shifts) -> float:
-        return self._pricer.accuracy(self._tally(rule))
 
     def _best(self, rules: Iterable[Shifts]) -> Shifts | None:
         listed = list(rules)

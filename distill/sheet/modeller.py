@@ -223,8 +223,7 @@ def _figure_notes(findings: Findings) -> tuple[str, ...]:
     said += [
         f"The {name} is worse than ignoring the neighbours: its risk is larger than that of an"
         " agent alone."
-        for name, result in _forms(findings)
-        if result.figures.worse_than(findings.alone)
+        for name in findings.worse_than_alone
     ]
     if not findings.watching_is_worth:
         said.append(

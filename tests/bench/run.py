@@ -24,6 +24,7 @@ from tests.bench.networks import (
     two_way_ring,
     unlike,
 )
+from tests.bench.rules import pricing
 from tests.slow import group as slow
 from tests.slow.enumerate import enumerate_group
 from thumbwright.exact import expressions
@@ -185,11 +186,18 @@ def peak_memory(group: Group) -> int:
     return peak
 
 
+def rules(tiny: bool) -> None:
+    """Pricing rules against the exact beliefs."""
+    head("Pricing rules for a pair; the target for one rule after the first is 10 ms")
+    pricing(tiny, best, say)
+
+
 BENCHMARKS = {
     "products": products,
     "enumeration": enumeration,
     "growth": growth,
     "memory": memory,
+    "rules": rules,
 }
 
 

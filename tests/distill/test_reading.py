@@ -58,7 +58,7 @@ def test_paths_that_lead_nowhere(tmp_path: Path) -> None:
     (tmp_path / "large.toml").write_bytes(b"#" * (LARGEST_FILE + 1))
     for path, says in (
         (str(tmp_path), "is a folder, not a case file"),
-        (str(tmp_path / "none.toml"), "no such file, and no starter of this name (starters: frost"),
+        (str(tmp_path / "none.toml"), "no such file, and no starter of this name (starters: flock"),
         ("frost-wach", "did you mean frost-watch"),
         ("a\0b\n", "a\\x00b\\n: "),
         (str(tmp_path / ("x" * 300)), "cannot be read"),
@@ -82,8 +82,8 @@ def test_a_case_file_is_read_from_its_path(tmp_path: Path) -> None:
 
 
 def test_starters() -> None:
-    assert starter_names() == ("frost-watch", "lot-inspection")
-    with pytest.raises(Faults, match=r"no starter of this name \(allowed frost-watch, lot-insp"):
+    assert starter_names() == ("flock-alarm", "frost-watch", "lot-inspection")
+    with pytest.raises(Faults, match=r"no starter of this name \(allowed flock-alarm, frost-w"):
         starter_text("frost")
     for name in starter_names():
         assert all(len(line) <= 100 for line in starter_text(name).splitlines())

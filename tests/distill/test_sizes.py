@@ -274,3 +274,25 @@ def test_risk_and_benefit_say_the_same_of_every_size() -> None:
         share = (alone - size.figures.risk) / (alone - exact)
         assert size.figures.benefit_kept == pytest.approx(share, abs=1e-12)
         assert size.figures.worse_than(pricer.figures(pricer.alone_tally)) == (share < 0)
+
+
+@pytest.mark.parametrize("name", ["shifts", "formula"])
+def test_forms_without_rows_have_limits_and_sizes_too(name: str) -> None:
+    pricer = one_way((-2, 4), (-3, 3), 16)
+    made = form(name).distil(pricer, Wanted(6, SHOWN, min_benefit_kept=0.9))
+    kept = pricer.figures(pricer.way_tally(made.rule)).benefit_kept
+    assert kept is not None
+    assert kept >= 0.9
+    assert "keep the share of the benefit that is asked for" in made.notes[0]
+    none = form(name).distil(pricer, Wanted(1, SHOWN, min_benefit_kept=0.9))
+    assert "of up to 1" in none.notes[0]
+    assert "keeps the share" in none.notes[0]
+    case = frost("polish = true", f'forms = ["table", "{name}"]', horizon=16)
+    told = job.sizes(case)
+    sizes_here = told["forms"][name]["sizes"]
+    assert len(sizes_here) >= 3
+    assert [size["rows"] for size in sizes_here] == sorted({size["rows"] for size in sizes_here})
+    made = form(name).distil(gathered_pricer(case), Wanted(6, SHOWN))
+    risk = gathered_pricer(case).price(made.rule).risk
+    assert any(size["risk"] == pytest.approx(risk, abs=1e-12) for size in sizes_here)
+    assert any(note.startswith("Not polished") for note in gather(case).reckoned[name].notes)

@@ -114,8 +114,11 @@ def test_a_crowd_is_priced_for_one_for_all_and_for_one_among_others() -> None:
         apart(pricer.together_tally(other, (pricer.agent,), others=rule), pricer.alone_tally)
         < 1e-13
     )
-    with pytest.raises(ModelError, match="for one member that uses it"):
-        pricer.together_tally(rule, users[:2])
+    half = pricer.together_tally(rule, users[:2])
+    assert apart(half, everybody) > 1e-5
+    assert apart(half, alone) > 1e-5
+    # The exact ones take the users for exact, and are shown what they would not do.
+    assert half.off_model > everybody.off_model == 0.0
 
 
 def fixed(pricer: NetworkPricer | CrowdPricer, rows: int, inputs: tuple[str, ...]) -> Rule:
@@ -176,11 +179,15 @@ def test_the_command_line_prices_rules_in_several_hands(
     assert "agents" not in found["one"]
     assert len({one["figures"]["accuracy"] for one in found.values()}) == 3
     assert 0.5 < found["one"]["agreement"]["same"] < 1.0
+    assert main([*given, "--used-by", "60%"]) == 0
+    assert json.loads(capsys.readouterr().out)["figures"] == found["a1,a2"]["figures"]
     assert main([*given, "--others-use", str(rule)]) == 0
     among = json.loads(capsys.readouterr().out)
     assert among["figures"] == found["everybody"]["figures"]
     for words, told in (
-        (["--used-by", "a9"], "a9 cannot use this rule (allowed: one, everybody, or some of a1"),
+        (["--used-by", "a9"], "a9 cannot use this rule (allowed: one, everybody, a share such as"),
+        (["--used-by", "0%"], "0% is no share (allowed: above 0% to 100%)"),
+        (["--used-by", "half%"], "half% is no share"),
         (["--used-by", "a2"], "a1, whose figures are priced, is missing"),
     ):
         assert main([*given, *words]) == 2
@@ -189,5 +196,5 @@ def test_the_command_line_prices_rules_in_several_hands(
     assert "only a rule from a file" in capsys.readouterr().err
     assert main(["price", str(file), str(rule), "--used-by", "everybody"]) == 0
     told = capsys.readouterr().out
-    assert "a1, a2, a3 use the rule" in told
+    assert "everybody uses the rule; the figures are those of a1" in told
     assert "on the same observations it ends as exact play does in" in told

@@ -291,3 +291,67 @@ def test_lines_keep_a_bar_even_where_never_answering_is_free() -> None:
     before, after = made(pricer, "lines", Wanted(2, SHOWN))
     assert after.rule.has_bars
     assert risk(pricer, after.rule) <= risk(pricer, before.rule) + 1e-12
+
+
+@pytest.mark.parametrize("name", ["minus_at", "plus_at", "both", "border"])
+@pytest.mark.parametrize("by", [-2, 2])
+def test_whatever_is_spoilt_no_single_move_is_left_that_helps(name: str, by: int) -> None:
+    """One bar of the quiet lines, both of them, or the step between these lines is misplaced."""
+    pricer = one_way((-2, 4), (-3, 3), 12, losses=UNEVEN)
+    good: Distilled = form("lines").distil(pricer, Wanted(4, SHOWN))
+    first, second, *rest = good.rule.rows
+    assert first.shows == second.shows
+    if name == "border":
+        last = (first.step_to or 0) + 4 + by
+        first, second = replace(first, step_to=last), replace(second, step_from=last + 1)
+    else:
+        for bar in ("minus_at", "plus_at") if name == "both" else (name,):
+            moved = (replace(row, **{bar: getattr(row, bar) + by}) for row in (first, second))
+            first, second = moved
+    bad = replace(good, rule=replace(good.rule, rows=(first, second, *rest)))
+    assert whole(pricer, bad.rule)
+    mended = polished(pricer, Wanted(4, SHOWN), bad)
+    least = risk(pricer, mended.rule)
+    moves = [rule for rule in bars_moved(mended.rule) if whole(pricer, rule)]
+    assert min(risk(pricer, rule) for rule in moves) >= least - 1e-12
+    assert least < risk(pricer, bad.rule)
+
+
+def test_faces_that_only_meet_in_a_corner_move_by_themselves() -> None:
+    boxes: tuple[Box, ...] = (
+        ((0, 3), (0, 1)),
+        ((0, 3), (1, 3)),
+        ((3, 6), (0, 1)),
+        ((3, 6), (1, 3)),
+    )
+    moved = set(moved_cuts(boxes, (1,)))
+    assert (((0, 2), (0, 1)), boxes[1], ((2, 6), (0, 1)), boxes[3]) in moved
+    assert (boxes[0], ((0, 4), (1, 3)), boxes[2], ((4, 6), (1, 3))) in moved
+
+
+def test_a_tree_stays_a_tree() -> None:
+    """Moving half of its first cut would leave rows that its sentences cannot be made of."""
+    pricer = one_way((-2, 4), (-3, 3), 8)
+    low, rest = frozenset({"minus"}), frozenset({"undecided", "plus"})
+    rows = [
+        Row(step_to=4, shows={"a0": low}, value=-0.5),
+        Row(step_to=4, shows={"a0": rest}, value=0.5),
+        Row(step_from=5, shows={"a0": low}, value=-0.6),
+        Row(step_from=5, shows={"a0": rest}, value=0.6),
+    ]
+    orders = {}
+    for name in ("tree", "table"):
+        moves = BoxMoves(pricer, SHOWN, Rule(name, "a1", ("a0",), tuple(rows)))
+        made_of = [one.boxes for one in moves.moves(moves.start)]
+        orders[name] = {in_order_of_cuts(boxes) for boxes in made_of}
+    assert orders == {"tree": {True}, "table": {True, False}}
+
+
+def test_a_table_for_all_is_left_as_it_is() -> None:
+    """It is right where all use it; the price of a single user would spoil it."""
+    pricer = one_way((-2, 4), (-3, 3), 8)
+    good: Distilled = form("table").distil(pricer, Wanted(3, SHOWN))
+    bad = replace(good, rule=replace(spoilt(good.in_rows), form="table-for-all"))
+    kept = polished(pricer, Wanted(3, SHOWN), bad)
+    assert kept.rule == bad.rule
+    assert kept.notes[-1].startswith("Not polished")

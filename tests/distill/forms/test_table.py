@@ -217,4 +217,4 @@ def test_the_fewest_rows_within_the_accuracy_that_may_be_lost(lost: float) -> No
 def test_a_grid_too_large_is_refused_with_ways_out() -> None:
     pricer = covering({"x": (-2, 4), "y": (-4, 2)}, (-3, 3), 10)
     with pytest.raises(ModelError, match=r"shorten the horizon"):
-        table.distil(pricer, Wanted(10_000, ("step", "shown", "thresholds")))
+        table.distil(pricer, Wanted(1_000_000, ("step", "shown", "thresholds")))
