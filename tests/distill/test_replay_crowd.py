@@ -201,23 +201,26 @@ def test_who_was_first_is_taken_from_the_model(run: Run, tmp_path: Path) -> None
 
 
 def test_proofs_that_contradict_each_other_are_named(run: Run, tmp_path: Path) -> None:
-    """A listed value without a chance under minus proves plus; others cannot prove minus then."""
-    name = case(tmp_path, exchange="settle", own="own", last="low")
-    text = (tmp_path / name).read_text("utf-8")
-    certain = (
-        '{ kind = "listed", plus = [0.5, 0.5, 0.0], minus = [0.5, 0.2, 0.3], '
-        'values = ["same", "up", "never"] }'
+    """A value that has no chance under minus proves plus, one without a chance under plus minus."""
+    name = case(tmp_path, exchange="once", own="own", last="low")
+    text = (tmp_path / name).read_text("utf-8").replace('"observations"', '"nats"')
+    proofs = (
+        '{ kind = "listed", plus = [0.5, 0.5, 0.0], minus = [0.6, 0.0, 0.4], '
+        'values = ["same", "for", "against"] }'
     )
-    text = text.replace('{ kind = "coin", p = 0.6 }', certain)
-    for old, new in (("2", "9.0"), ("-2", "-9.0"), ("40", "9.0"), ("-40", "-9.0")):
-        text = text.replace(f"= {old},", f"= {new},")
-    (tmp_path / name).write_text(text.replace('"observations"', '"nats"'), "utf-8")
-    sure = "step,sign,plus_shown,minus_shown\n1,same,0,1\n2,up,,\n"
-    found = followed(run, name, sure, "--rule", "rule.csv")
-    assert found["exact_answer"] == {"answer": "minus", "step": 1}
-    record = HEAD + "1,same,0,0\n2,never,0,0\n"
+    (tmp_path / name).write_text(text.replace('{ kind = "coin", p = 0.6 }', proofs), "utf-8")
+    record = HEAD + "1,same,0,0\n2,same,0,2\n"
     found = followed(run, name, record, "--rule", "rule.csv")
-    assert found["exact_answer"] == found["rule_answer"] == {"answer": "minus", "step": 2}
+    assert found["steps"][1]["exact"]["worth"] == "-INF"
+    assert found["exact_answer"] == {"answer": "minus", "step": 2}
+    found = followed(run, name, record.replace("2,same", "2,for"), "--rule", "rule.csv")
+    assert "proves one answer and what it is shown the other" in found["impossible"]
+    assert (found["rule_answer"], found["exact_answer"]) == ({"answer": "plus", "step": 2}, None)
+    found = followed(run, name, record.replace("0,2", "1,2"), "--rule", "rule.csv")
+    assert (
+        "it would have allowed 0 to 3 plus with 0 minus; 0 plus with 1 minus"
+        in (found["impossible"])
+    )
 
 
 def test_files_with_faults_end_with_status_2(run: Run, tmp_path: Path) -> None:
