@@ -70,7 +70,7 @@ def front_height(sheet: Sheet, with_example: bool, tight: bool = False) -> float
     line = TEXT * (1.14 if tight else 1.24)
     heading = 20.5 if tight else 25.0
     total = 26.0 * lines_of(sheet.title, PAGE_WIDTH - 150, 22.0, True)
-    owner = f"Only for {sheet.owner}, watching {sheet.watching}."
+    owner = f"{sheet.owner_lead} {sheet.owner}, watching {sheet.watching}."
     total += 15.5 * lines_of(owner, PAGE_WIDTH, 12.5)
     total += 14.0 + line * lines_of(sheet.override, PAGE_WIDTH - 16, bold=True)
     acts = [lines_of(f"{act.lead} {act.text}", 142.0, TEXT * 1.02) for act in sheet.acts]

@@ -181,14 +181,14 @@ def _figures(findings: Findings) -> Grid:
         ("commitments read by the off-model convention", lambda way: way.off_model),
     ]
     rows = tuple(
-        (label, *(_measure(measure(way), label, findings) for _, way in ways))
+        (label, *(_measure(measure(way), label, findings, way.errors) for _, way in ways))
         for label, measure in measures
     )
     agreed = {name: result.agreed for name, result in forms if result.agreed is not None}
     if agreed:
         rows += tuple(
-            (label, *(five(measure(agreed[n])) if n in agreed else "" for n, _ in ways))
-            for label, measure in _AGREEMENT
+            (label, *(_agreed_cell(agreed[n], name) if n in agreed else "" for n, _ in ways))
+            for label, name in _AGREEMENT
         )
     return Grid(
         "Figures with five digits; one adopter where nothing else is said",
@@ -197,17 +197,43 @@ def _figures(findings: Findings) -> Grid:
     )
 
 
-_AGREEMENT: tuple[tuple[str, Callable[[Agreed], float]], ...] = (
-    ("ends as exact play does on the same observations", lambda one: one.same),
-    ("ends opposite to it", lambda one: one.opposite),
-    ("steps apart from it, on the same observations", lambda one: one.steps_apart),
+_AGREEMENT = (
+    ("ends as exact play does on the same observations", "same"),
+    ("ends opposite to it", "opposite"),
+    ("steps apart from it, on the same observations", "steps_apart"),
 )
 
+_WITH_ERROR = {
+    "wrong, given plus": "wrong_given_plus",
+    "wrong, given minus": "wrong_given_minus",
+    "mean steps": "mean_step",
+    "accuracy": "accuracy",
+    "accuracy lost against exact": "accuracy_lost",
+    "delay added against exact (steps)": "delay_added",
+    "risk (loss)": "risk",
+    "benefit kept (share)": "benefit_kept",
+}
+"""Figures that have a standard error where histories were sampled, by the name of the error."""
 
-def _measure(value: float | None, label: str, findings: Findings) -> str:
+
+def _agreed_cell(agreed: Agreed, name: str) -> str:
+    value: float = getattr(agreed, name)
+    return _sampled(value, (agreed.errors or {}).get(name))
+
+
+def _sampled(value: float, error: float | None) -> str:
+    """A figure, with its standard error where it was sampled."""
+    return five(value) if error is None else f"{five(value)} ± {error:.2g}"
+
+
+def _measure(
+    value: float | None, label: str, findings: Findings, errors: dict[str, float] | None
+) -> str:
     if value is None and label.startswith("benefit"):
         return "none" if findings.watching_is_worth else "not stated"
-    return five(value)
+    if value is None:
+        return five(value)
+    return _sampled(value, (errors or {}).get(_WITH_ERROR.get(label, "")))
 
 
 def _figure_notes(findings: Findings) -> tuple[str, ...]:
@@ -225,6 +251,9 @@ def _figure_notes(findings: Findings) -> tuple[str, ...]:
         " agent alone."
         for name in findings.worse_than_alone
     ]
+    results = findings.forms.values()
+    if any((one.everybody or one.figures).errors or one.figures.errors for one in results):
+        said.append("±: one standard error, where histories were sampled.")
     if not findings.watching_is_worth:
         said.append(
             "Watching is worth nothing here (exact play saves less than 1 % of the risk alone), so"

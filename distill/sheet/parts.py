@@ -238,6 +238,7 @@ class Sheet:
     page_title: str
     title: str
     case_title: str
+    owner_lead: str
     owner: str
     watching: str
     override: str

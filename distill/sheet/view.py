@@ -13,7 +13,7 @@ from thumbwright.distill.sheet.lookup import lookup
 from thumbwright.distill.sheet.modeller import modeller
 from thumbwright.distill.sheet.notes import acts, acts_heading, notes, supposes, thing
 from thumbwright.distill.sheet.parts import Sheet
-from thumbwright.distill.sheet.voice import counting, voice
+from thumbwright.distill.sheet.voice import counting, for_all_alike, voice
 from thumbwright.distill.sheet.words import capital, clean
 
 
@@ -28,6 +28,7 @@ def sheet(findings: Findings) -> Sheet:
         page_title=f"{title} For {words.owner}",
         title=title,
         case_title=clean(case.title),
+        owner_lead="For" if for_all_alike(findings) else "Only for",
         owner=words.owner,
         watching=words.those,
         override=(

@@ -131,11 +131,15 @@ class Voice:
         return capital("; ".join(f"{listing(names)}: {text}" for text, names in groups.items()))
 
 
+def for_all_alike(findings: Findings) -> bool:
+    """Whether the rule is for anybody in a crowd."""
+    return findings.case.rule.agent == "any" and is_crowd(findings.case.agents)
+
+
 def _owner(findings: Findings, names: dict[str, str]) -> str:
     """Whose sheet it is: one agent's, or anybody's in a crowd of which all are meant."""
-    agents = findings.case.agents
-    if findings.case.rule.agent == "any" and is_crowd(agents):
-        return f"any of the {len(agents)}"
+    if for_all_alike(findings):
+        return f"any of the {len(findings.case.agents)}"
     return names[findings.agent]
 
 
