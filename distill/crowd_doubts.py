@@ -2,7 +2,7 @@
 
 As in ``doubts``: everybody goes by the case, and three ways of playing are held against each other
 in each world. Worlds of a crowd are about what observations are really like and about others who
-never answer, or do so at random; a case cannot state worlds of its own here.
+answer sooner, later, never or at random; a case cannot state worlds of its own here.
 """
 
 from __future__ import annotations
@@ -15,7 +15,13 @@ import numpy as np
 from thumbwright.distill.case import Case
 from thumbwright.distill.crowd_pricer import CrowdPricer, nobody_seen, played
 from thumbwright.distill.crowds import ENUMERATED, HISTORIES
-from thumbwright.distill.doubts import calibration_laws, evidence_laws, kept_of
+from thumbwright.distill.doubts import (
+    calibration_laws,
+    evidence_laws,
+    kept_of,
+    moved,
+    threshold_moves,
+)
 from thumbwright.distill.findings import Doubted, Figures
 from thumbwright.distill.rules import Rule
 from thumbwright.distill.tallies import Tally
@@ -43,7 +49,8 @@ LawOf = Callable[[Agent], Law | None]
 class _World:
     """What is really so: laws of observations of the agent and the others, and what these do.
 
-    ``others_go_by`` is None where the others reason exactly, by the case.
+    ``others_go_by`` is None where the others reason exactly, by the case. ``signs`` say which way
+    their thresholds really are moved, as in ``doubts.moved``.
     """
 
     name: str
@@ -52,6 +59,7 @@ class _World:
     own_law: LawOf
     law_of_others: LawOf
     others_go_by: CrowdPolicy | None = None
+    signs: tuple[int, int] | None = None
 
 
 def doubted_crowd(
@@ -78,8 +86,8 @@ def doubted_crowd(
     if progress:
         progress("wrong assumptions", len(worlds), len(worlds))
     left_out.append(
-        "In a crowd only what observations tell, and others who never answer or answer at random, "
-        "are doubted."
+        "In a crowd what observations tell is doubted, and when the others answer: sooner, later, "
+        "never or at random; who sees whom is not."
     )
     return tuple(found), tuple(left_out)
 
@@ -91,6 +99,9 @@ def _worlds(pricer: CrowdPricer, case: Case) -> Iterator[_World]:
         own = _where_shared(case, law)
         yield _World(name, says, how, own, own)
     everybody = "everybody whom you see"
+    agents = [kind.agent for kind in pricer.shown.crowd.kinds]
+    for name, short, how, signs in threshold_moves(agents):
+        yield _World(f"all-{name}", f"{everybody} {short}", how, _same, _same, signs=signs)
     yield _World("all-absent", f"{everybody} never answers", "", _same, _same, _silent)
     yield _World(
         "all-random",
@@ -141,7 +152,10 @@ def _shown(pricer: CrowdPricer, world: _World) -> Shown:
             if not members:
                 continue
             is_own = members == (pricer.agent,)
-            kinds.append(Kind(kind.evidence, kind.thresholds, members, kind.looks))
+            bounds = kind.thresholds
+            if world.signs is not None and not is_own:
+                bounds = moved(kind.agent, old.prior, world.signs)
+            kinds.append(Kind(kind.evidence, bounds, members, kind.looks))
             sorts.append(sort)
             law = world.own_law if is_own else world.law_of_others
             laws.append(law(kinds[-1].agent))
@@ -157,8 +171,17 @@ def _shown(pricer: CrowdPricer, world: _World) -> Shown:
                 policies=policies,
                 sorts=sorts,
                 laws=laws,
+                taken_for=old.crowd.kinds,
             )
         except TooMany:
             pass
     histories = HISTORIES if old.weight is None else old.weight.shape[1]
-    return sample_shown(*given, histories, pricer.seed, policies=policies, sorts=sorts, laws=laws)
+    return sample_shown(
+        *given,
+        histories,
+        pricer.seed,
+        policies=policies,
+        sorts=sorts,
+        laws=laws,
+        taken_for=old.crowd.kinds,
+    )

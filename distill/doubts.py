@@ -253,6 +253,23 @@ def posterior(seen: float, not_seen: float) -> tuple[float, float]:
 def _neighbour_doubts(group: Group, who: Sequence[str], mark: str, said: str) -> Iterator[Doubt]:
     """What may be otherwise about agents that are seen."""
     agents = [group.agents[group.index[one]] for one in who]
+    for name, short, how, signs in threshold_moves(agents):
+        yield Doubt(f"{mark}-{name}", f"{said} {short}", how, _with_moves(who, signs))
+    yield Doubt(
+        f"{mark}-absent", f"{said} never answers", "", _with_habit(who, astray.Habit.SILENT)
+    )
+    yield Doubt(
+        f"{mark}-random",
+        f"{said} answers at random",
+        "by its own observations, which tell nothing, and looking at nobody",
+        _with_habit(who, astray.Habit.ALONE),
+    )
+
+
+def threshold_moves(
+    agents: Sequence[Agent],
+) -> Iterator[tuple[str, str, str, tuple[int, int]]]:
+    """Name, what these really do, how much exactly, and the signs of the two moves."""
     whole = all(_whole_counts(agent.evidence) for agent in agents)
     far = "one observation" if whole else f"{NEARER:.0%}"
     moves = {
@@ -270,16 +287,7 @@ def _neighbour_doubts(group: Group, who: Sequence[str], mark: str, said: str) ->
         ),
     }
     for name, (short, how, signs) in moves.items():
-        yield Doubt(f"{mark}-{name}", f"{said} {short}", how, _with_moves(who, signs))
-    yield Doubt(
-        f"{mark}-absent", f"{said} never answers", "", _with_habit(who, astray.Habit.SILENT)
-    )
-    yield Doubt(
-        f"{mark}-random",
-        f"{said} answers at random",
-        "by its own observations, which tell nothing, and looking at nobody",
-        _with_habit(who, astray.Habit.ALONE),
-    )
+        yield name, short, how, signs
 
 
 def _whole_counts(evidence: Evidence) -> bool:
@@ -297,17 +305,17 @@ def _with_moves(who: Sequence[str], signs: tuple[int, int]) -> WorldFor:
         group = setting.solution.group
         for one in who:
             agent = group.agents[group.index[one]]
-            made = astray.with_thresholds(made, one, _moved(agent, group.prior, signs))
+            made = astray.with_thresholds(made, one, moved(agent, group.prior, signs))
         return made
 
     return world
 
 
-def _moved(
+def moved(
     agent: Agent, prior: float, signs: tuple[int, int]
 ) -> tuple[tuple[float, Thresholds], ...]:
     """Its possible thresholds, moved; refused where one would reach the prior."""
-    moved = []
+    found = []
     for share, bound in agent.thresholds:
         ends = []
         for away, sign in zip((prior - bound.minus, bound.plus - prior), signs, strict=True):
@@ -316,8 +324,8 @@ def _moved(
             if away - sign * step <= 1e-9:
                 raise ModelError(f"a threshold of {agent.id} would reach the prior")
             ends.append(float(away - sign * step))
-        moved.append((share, Thresholds(prior - ends[0], prior + ends[1])))
-    return tuple(moved)
+        found.append((share, Thresholds(prior - ends[0], prior + ends[1])))
+    return tuple(found)
 
 
 def _with_habit(who: Sequence[str], habit: astray.Habit) -> WorldFor:

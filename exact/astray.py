@@ -173,7 +173,8 @@ def fates(
     position, group = world.group.index[agent], world.group
     refuse_too_large(group, memory)
     own = [_reader(world, position) if p is None else RuleReader(p) for p in policies]
-    if group.influences(position):
+    # Under "settle" the agent's own answers decide how many rounds a step has.
+    if group.influences(position) or group.exchange == "settle":
         return [_played(world, position, reader)[0] for reader in own]
     # What the agent shows cannot come back to it: the others are played once.
     first, tracks, others = _played(world, position, own[0])

@@ -22,7 +22,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray
-from thumbwright.exact.crowd_kinds import Crowd
+from thumbwright.exact.crowd_kinds import Crowd, Kind
 from thumbwright.exact.crowd_play import Choice, Histories, times
 from thumbwright.exact.crowd_policy import CrowdPolicy, reached
 from thumbwright.exact.evidence.law import Law
@@ -43,6 +43,8 @@ class Among(Histories):
         Per kind a number; kinds of one number are alike but for what they go by.
     laws : sequence of (Law or None), optional
         Per kind what its observations are really like; the exact members do not know.
+    taken_for : sequence of Kind, optional
+        Per sort what the exact members take it for, where its thresholds are really others.
     prior, horizon, labels, held, lasting
         As for :class:`Histories`.
     """
@@ -58,13 +60,16 @@ class Among(Histories):
         policies: Sequence[CrowdPolicy | None] = (),
         sorts: Sequence[int] = (),
         laws: Sequence[Law | None] | None = None,
+        taken_for: Sequence[Kind] | None = None,
     ) -> None:
         super().__init__(crowd, prior, horizon, labels, held, lasting, policies, laws)
         self._sorts = np.array(sorts, dtype=np.int64)
         self.reads = np.array([policy is None for policy in policies])
         leads = [list(sorts).index(sort) for sort in range(max(sorts) + 1)]
         size = len(labels)
-        self._model_agents = [crowd.kinds[lead].agent for lead in leads]
+        self._model_agents = [
+            kind.agent for kind in taken_for or [crowd.kinds[lead] for lead in leads]
+        ]
         self._model_walks = [
             Walk(agent.evidence, agent.thresholds, agent.observed_by(horizon))
             for agent in self._model_agents
@@ -122,7 +127,10 @@ class Among(Histories):
             self.log_left[k][:, columns] = divided[2]
         self._cut_model(columns)
         committing = np.isfinite(log_share[:, :2]).any(axis=(1, 2)) & undecided
-        return Choice(columns, log_share, ratio, committing.any(axis=0))
+        # Members expect rounds for as long as the model has somebody who could answer in them.
+        expected = self._quiet[:, columns] + self._model_aside > 0
+        expected &= ~np.isnan(self._news).all(axis=1)
+        return Choice(columns, log_share, ratio, committing.any(axis=0) | expected.any(axis=0))
 
     def worth(self, kind: int, columns: IntArray) -> FloatArray:
         """What a member takes what it has been shown to be worth (nats), shape (A,)."""

@@ -139,6 +139,7 @@ def enumerate_shown(
     policies: Policies = None,
     sorts: Sequence[int] | None = None,
     laws: Sequence[Law | None] | None = None,
+    taken_for: Sequence[Kind] | None = None,
 ) -> Shown:
     """Everything that a member of one kind may be shown.
 
@@ -155,8 +156,9 @@ def enumerate_shown(
     sorts : sequence of int, optional
         If given, nobody knows: exact members take everybody for exact, as in ``Among``, and the
         worth of a history is what they take it to be.
-    laws : sequence of (Law or None), optional
-        As for ``Among``, with ``sorts``: what observations are really like.
+    laws, taken_for : sequence, optional
+        As for ``Among``, with ``sorts``: what observations are really like, and what each sort of
+        members is taken for.
 
     Raises
     ------
@@ -166,7 +168,7 @@ def enumerate_shown(
     _check(crowd, kind, prior, horizon, exchange)
     course, tree = Enumerated(crowd.size, drop, most), _Tree(kind, most)
     labels = np.zeros(1, dtype=np.int64)
-    histories = _histories(crowd, prior, horizon, labels, kind, policies, sorts, laws)
+    histories = _histories(crowd, prior, horizon, labels, kind, policies, sorts, laws, taken_for)
     record = tree.grow(histories, course, exchange)
     odd = (np.exp(record.log_weight) * record.odd).sum(axis=1)
     return Shown(
@@ -195,6 +197,7 @@ def sample_shown(
     policies: Policies = None,
     sorts: Sequence[int] | None = None,
     laws: Sequence[Law | None] | None = None,
+    taken_for: Sequence[Kind] | None = None,
 ) -> Shown:
     """What a member of one kind is shown along sampled public histories, half given each answer.
 
@@ -209,8 +212,9 @@ def sample_shown(
     sorts : sequence of int, optional
         If given, nobody knows: exact members take everybody for exact, as in ``Among``, and the
         worth of a history is what they take it to be.
-    laws : sequence of (Law or None), optional
-        As for ``Among``, with ``sorts``: what observations are really like.
+    laws, taken_for : sequence, optional
+        As for ``Among``, with ``sorts``: what observations are really like, and what each sort of
+        members is taken for.
 
     Raises
     ------
@@ -222,7 +226,7 @@ def sample_shown(
     course, parts, records = Sampled(np.random.default_rng(seed), half), [], []
     for labels in blocks(histories):
         tree = _Tree(kind, None)
-        batch = _histories(crowd, prior, horizon, labels, kind, policies, sorts, laws)
+        batch = _histories(crowd, prior, horizon, labels, kind, policies, sorts, laws, taken_for)
         records.append(tree.grow(batch, course, exchange))
         parts.append(tuple(tree.showings))
     record = Record.join(records)
@@ -262,11 +266,12 @@ def _histories(
     policies: Policies,
     sorts: Sequence[int] | None,
     laws: Sequence[Law | None] | None,
+    taken_for: Sequence[Kind] | None,
 ) -> Histories:
     given = (crowd, prior, horizon, labels, kind, True)
     if sorts is None:
         return Histories(*given, policies, laws)
-    return Among(*given, policies or (None,) * len(crowd.kinds), sorts, laws)
+    return Among(*given, policies or (None,) * len(crowd.kinds), sorts, laws, taken_for)
 
 
 @dataclass

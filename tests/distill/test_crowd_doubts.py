@@ -53,10 +53,14 @@ def test_worlds_are_those_of_the_network(exchange: str) -> None:
     assert [one.name for one in here] == [
         "evidence-weaker",
         "evidence-stronger",
+        "all-nearer",
+        "all-further",
+        "all-readier-for-plus",
+        "all-readier-for-minus",
         "all-absent",
         "all-random",
     ]
-    assert "others who never answer" in said[-1]
+    assert "when the others answer: sooner, later" in said[-1]
     for one in here:
         other = there[one.name]
         assert (one.says, one.how) == (other.says, other.how)
@@ -67,6 +71,8 @@ def test_worlds_are_those_of_the_network(exchange: str) -> None:
             assert apart(one.rule, other.rule) < 1e-10, one.name
         if one.name == "all-absent":
             assert apart(one.rule, other.rule) < 1e-10
+        if other.exact.off_model == 0.0:
+            assert apart(one.exact, other.exact) < 1e-10, one.name
     weaker, stronger = here[:2]
     assert weaker.exact.accuracy < counted.figures(counted.exact_tally).accuracy
     assert stronger.exact.accuracy > counted.figures(counted.exact_tally).accuracy
