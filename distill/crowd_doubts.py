@@ -14,7 +14,7 @@ import numpy as np
 
 from thumbwright.distill.case import Case
 from thumbwright.distill.crowd_pricer import CrowdPricer, nobody_seen, played
-from thumbwright.distill.crowds import ENUMERATED, HISTORIES
+from thumbwright.distill.crowds import lay_out
 from thumbwright.distill.doubts import (
     calibration_laws,
     evidence_laws,
@@ -31,10 +31,7 @@ from thumbwright.exact.crowd import (
     InPublic,
     Kind,
     Shown,
-    TooMany,
-    enumerate_shown,
     exact_member,
-    sample_shown,
 )
 from thumbwright.exact.engine import Progress
 from thumbwright.exact.errors import ModelError
@@ -162,26 +159,5 @@ def _shown(pricer: CrowdPricer, world: _World) -> Shown:
             policies.append(None if is_own else world.others_go_by)
     held = next(k for k, kind in enumerate(kinds) if kind.members == (pricer.agent,))
     given = (Crowd(tuple(kinds)), held, old.prior, old.horizon, old.exchange)
-    if old.weight is None:
-        try:
-            return enumerate_shown(
-                *given,
-                drop=pricer.drop,
-                most=ENUMERATED,
-                policies=policies,
-                sorts=sorts,
-                laws=laws,
-                taken_for=old.crowd.kinds,
-            )
-        except TooMany:
-            pass
-    histories = HISTORIES if old.weight is None else old.weight.shape[1]
-    return sample_shown(
-        *given,
-        histories,
-        pricer.seed,
-        policies=policies,
-        sorts=sorts,
-        laws=laws,
-        taken_for=old.crowd.kinds,
-    )
+    real = {"policies": policies, "sorts": sorts, "laws": laws, "taken_for": old.crowd.kinds}
+    return lay_out(given, pricer.limits, **real)

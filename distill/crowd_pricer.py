@@ -7,9 +7,10 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from thumbwright.distill.assemble import Limits
 from thumbwright.distill.costs import Inexact, Pricer
 from thumbwright.distill.crowd_situations import Counted, CrowdSituations
-from thumbwright.distill.crowds import ENUMERATED, HISTORIES
+from thumbwright.distill.crowds import lay_out
 from thumbwright.distill.findings import Agreed, RowUse
 from thumbwright.distill.playing import acts
 from thumbwright.distill.reckoned import Way, act_of
@@ -24,11 +25,8 @@ from thumbwright.exact.crowd import (
     InPublic,
     Kind,
     Shown,
-    TooMany,
     adopt_crowd,
-    enumerate_shown,
     exact_member,
-    sample_shown,
 )
 from thumbwright.exact.group import Group
 from thumbwright.exact.play import Act
@@ -146,15 +144,14 @@ class CrowdPricer(Pricer):
         held = next(k for k, kind in enumerate(kinds) if self.agent in kind.members)
         given = (Crowd(tuple(kinds)), held, shown.prior, shown.horizon, shown.exchange)
         known = None if aware or all(policy is not None for policy in policies) else sorts
-        if shown.weight is None:
-            try:
-                return enumerate_shown(
-                    *given, drop=self.drop, most=ENUMERATED, policies=policies, sorts=known
-                )
-            except TooMany:
-                pass
-        histories = HISTORIES if shown.weight is None else shown.weight.shape[1]
-        return sample_shown(*given, histories, self.seed, policies=policies, sorts=known)
+        return lay_out(given, self.limits, policies=policies, sorts=known)
+
+    @property
+    def limits(self) -> Limits:
+        """Under which other plays of this crowd are laid out: sampled where this one was."""
+        weight = self.shown.weight
+        histories = None if weight is None else weight.shape[1]
+        return Limits(self.drop, None, histories, self.seed)
 
     def situations_among(self, rule: Rule) -> CrowdSituations:
         """Situations of the rule's agent where all go by the rule and all know."""

@@ -9,6 +9,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
+from typing import Any
 
 from thumbwright.distill.assemble import Limits
 from thumbwright.distill.case import CROWD, Case
@@ -91,17 +92,25 @@ def shown_of(
 
 
 def _shown(crowd: Crowd, kind: int, group: Group, limits: Limits) -> Shown:
+    given = (crowd, kind, group.prior, group.horizon, group.exchange)
+    return lay_out(given, limits)
+
+
+Given = tuple[Crowd, int, float, int, str]
+"""A crowd, which kind a member is of, prior, horizon and exchange."""
+
+
+def lay_out(given: Given, limits: Limits, **what: Any) -> Shown:
+    """What a member may be shown: enumerated where it is little enough, and not to be sampled.
+
+    ``what`` is handed on to ``exact.crowd_shown``: who goes by what, and what is really so.
+    """
     if limits.histories is None:
         try:
-            return enumerate_shown(
-                crowd, kind, group.prior, group.horizon, group.exchange, limits.drop, ENUMERATED
-            )
+            return enumerate_shown(*given, drop=limits.drop, most=ENUMERATED, **what)
         except TooMany:
             pass
-    histories = limits.histories or HISTORIES
-    return sample_shown(
-        crowd, kind, group.prior, group.horizon, group.exchange, histories, limits.seed
-    )
+    return sample_shown(*given, limits.histories or HISTORIES, limits.seed, **what)
 
 
 @dataclass(frozen=True)

@@ -17,6 +17,7 @@ Importing this module imports scikit-learn.
 
 from __future__ import annotations
 
+from abc import ABC, abstractmethod
 from typing import Any, Self
 
 import numpy as np
@@ -34,7 +35,7 @@ from thumbwright.distill.situations import values_of
 from thumbwright.exact.arrays import BoolArray, FloatArray, IntArray, sums
 
 
-class _Worths(BaseEstimator):  # type: ignore[misc]
+class _Worths(ABC, BaseEstimator):  # type: ignore[misc]
     """What the estimators share: checks of what comes in, and the score."""
 
     def fit(self, X: ArrayLike, y: ArrayLike, sample_weight: ArrayLike | None = None) -> Self:
@@ -89,11 +90,13 @@ class _Worths(BaseEstimator):  # type: ignore[misc]
         tags.classifier_tags = ClassifierTags(multi_class=False)
         return tags
 
+    @abstractmethod
     def _learn(self, X: FloatArray, plus: FloatArray, minus: FloatArray) -> None:
-        raise NotImplementedError
+        """Fit to masses given plus and given minus, shape (R,)."""
 
+    @abstractmethod
     def _worth(self, X: FloatArray) -> FloatArray:
-        raise NotImplementedError
+        """Worths (nats) of these inputs, shape (R,)."""
 
 
 class _Boxed(_Worths):

@@ -157,10 +157,7 @@ def _in_use(case: Case, pricer: Pricer, rule: Rule, use: Use) -> tuple[Tally, di
         users = tuple(name for name in able if name in asked)
     others = None
     if use.others is not None:
-        others = _read(case, pricer, use.others)
-        faults = _gaps_and_overlaps(pricer, others, use.others)
-        if faults:
-            raise Faults(faults)
+        others, _ = handed_in(case, pricer, use.others)
     told: dict[str, Any] = {"used_by": list(users), "rule_of_others": use.others}
     told["everybody"] = len(users) == len(pricer.group.agents)
     if isinstance(pricer, NetworkPricer):

@@ -18,6 +18,7 @@ each for itself, and the model's walks go on along the public history as it was 
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 
 import numpy as np
 
@@ -107,30 +108,15 @@ class Among(Histories):
     def decide(self, columns: IntArray, round_: int = 0) -> Choice:
         """Cut what really commits, and, in the model, what the model has commit."""
         self._renew_levels(columns)
-        kinds, size = len(self._sorts), len(columns)
-        log_share = np.full((kinds, 3, 2, size), -np.inf)
-        log_share[:, 2] = 0.0
-        ratio = np.full((kinds, 2, size), np.nan)
-        undecided = (self.free[:, columns] + self._aside) > 0
         for k, reads in enumerate(self.reads):
             if reads:
                 self._value[k, columns] = self._level[self._sorts[k], columns]
-        acts = self._acts(columns, round_)
-        for k in range(kinds):
-            divided = self._cut(k, columns, undecided[k], acts[k])
-            if divided is None:
-                continue
-            with np.errstate(invalid="ignore"):
-                share = divided - self.log_left[k][:, columns]
-                ratio[k] = divided[:2, 0] - divided[:2, 1]
-            log_share[k] = np.where(np.isnan(share), -np.inf, share)
-            self.log_left[k][:, columns] = divided[2]
+        choice = self._choice(columns, round_)
         self._cut_model(columns)
-        committing = np.isfinite(log_share[:, :2]).any(axis=(1, 2)) & undecided
         # Members expect rounds for as long as the model has somebody who could answer in them.
         expected = self._quiet[:, columns] + self._model_aside > 0
         expected &= ~np.isnan(self._news).all(axis=1)
-        return Choice(columns, log_share, ratio, committing.any(axis=0) | expected.any(axis=0))
+        return replace(choice, open=choice.open | expected.any(axis=0))
 
     def worth(self, kind: int, columns: IntArray) -> FloatArray:
         """What a member takes what it has been shown to be worth (nats), shape (A,)."""

@@ -21,7 +21,7 @@ on showing the same. Play and probabilities are the same; only idle rounds are m
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -173,10 +173,6 @@ class Histories:
         Everybody decides on what was shown before, so all worths are taken first.
         """
         kinds, size = len(self._walks), len(columns)
-        log_share = np.full((kinds, 3, 2, size), -np.inf)
-        log_share[:, 2] = 0.0
-        ratio = np.full((kinds, 2, size), np.nan)
-        undecided = (self.free[:, columns] + self._aside) > 0
         able = told = np.ones(size, dtype=bool)
         if self.held is not None:
             possible = np.isfinite(self.log_left[self.held][:, columns]).any(axis=0)
@@ -184,6 +180,16 @@ class Histories:
         for k in range(kinds):
             value = self.worth(k, columns)
             self._value[k, columns] = np.where(told, value, self._value[k, columns])
+        choice = self._choice(columns, round_)
+        return replace(choice, open=choice.open & able)
+
+    def _choice(self, columns: IntArray, round_: int) -> Choice:
+        """Cut what commits, all worths being taken; open where anybody could commit."""
+        kinds, size = len(self._walks), len(columns)
+        log_share = np.full((kinds, 3, 2, size), -np.inf)
+        log_share[:, 2] = 0.0
+        ratio = np.full((kinds, 2, size), np.nan)
+        undecided = (self.free[:, columns] + self._aside) > 0
         acts = self._acts(columns, round_)
         for k in range(kinds):
             divided = self._cut(k, columns, undecided[k], acts[k])
@@ -195,7 +201,7 @@ class Histories:
             log_share[k] = np.where(np.isnan(share), -np.inf, share)
             self.log_left[k][:, columns] = divided[2]
         committing = np.isfinite(log_share[:, :2]).any(axis=(1, 2)) & undecided
-        return Choice(columns, log_share, ratio, committing.any(axis=0) & able)
+        return Choice(columns, log_share, ratio, committing.any(axis=0))
 
     def allowed(self, choice: Choice, kind: int) -> BoolArray:
         """Whether others expect a member to say plus, to say minus now, shape (2, A)."""

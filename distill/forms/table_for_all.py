@@ -62,8 +62,9 @@ def _settled(
 ) -> Distilled:
     """Play and value anew until nothing changes, or the tables come round again."""
     turns: list[Turn] = [(replace(first.in_rows, form=NAME), first)]
+    together = [_together(pricer, turns[0][0])]
     again: int | None = None
-    sampled = _together(pricer, first.in_rows).sampled is not None
+    sampled = together[0].sampled is not None
     apart = SETTLED_IF_SAMPLED if sampled else SETTLED
     for number in range(MOST_TURNS):
         if progress:
@@ -75,28 +76,30 @@ def _settled(
         if again is not None:
             break
         turns.append((new, made))
+        together.append(_together(pricer, new))
     if progress:
         progress(NAME, MOST_TURNS, MOST_TURNS)
-    if again is not None and again == len(turns) - 1:
-        rule, made = turns[-1]
+    best = len(turns) - 1
+    if again is not None and again == best:
         said = _turns(len(turns) - 1)
         if sampled:
             said += f" Histories were sampled, so values within {apart:g} nats count as the same."
     else:
         # No fixed point was met: of what came up, the best where all use it.
-        risks = [pricer.objective(_together(pricer, one)) for one, _ in turns]
-        rule, made = turns[risks.index(min(risks))]
+        risks = [pricer.objective(one) for one in together]
+        best = risks.index(min(risks))
         said = (
             f"The tables came round again after {len(turns) - again}: there is no fixed point on "
             "this way."
             if again is not None
             else f"After {MOST_TURNS} turns the table still changed."
         ) + " Of all that came up this is the best where all use it."
+    rule, made = turns[best]
     return Distilled(
         rule,
         made.information_kept,
         made.information_ceiling,
-        (said, _gain(pricer, turns[0][0], rule), *made.notes),
+        (said, _gain(pricer, together[0], together[best]), *made.notes),
     )
 
 
@@ -111,9 +114,8 @@ def _turns(number: int) -> str:
     return f"Valued anew {times}, by what happens where all use it, until nothing changed."
 
 
-def _gain(pricer: Pricer, first: Rule, final: Rule) -> str:
+def _gain(pricer: Pricer, before: Tally, after: Tally) -> str:
     """What valuing anew gains over the table for one user, in everybody's hands."""
-    before, after = (_together(pricer, rule) for rule in (first, final))
     if pricer.losses is None:
         pair = [pricer.accuracy(one) for one in (before, after)]
         return f"Where all use it accuracy is {pair[1]:.6f}, with the table for one {pair[0]:.6f}."
