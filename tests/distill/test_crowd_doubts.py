@@ -41,7 +41,9 @@ def rule(seen: tuple[str, ...]) -> Rule:
 
 def apart(one: Figures, other: Figures) -> float:
     names = ("wrong_given_plus", "wrong_given_minus", "mean_step", "risk", "benefit_kept")
-    return max(abs(getattr(one, name) - getattr(other, name)) for name in names)
+    pairs = [(getattr(one, name), getattr(other, name)) for name in names]
+    assert all((a is None) == (b is None) for a, b in pairs)
+    return max(abs(a - b) for a, b in pairs if a is not None)
 
 
 @pytest.mark.parametrize("exchange", ["once", "settle"])
@@ -99,3 +101,15 @@ def test_large_crowds_are_doubted_along_sampled_histories() -> None:
     assert isinstance(pricer, CrowdPricer)
     found, _ = doubted_crowd(pricer, big, replace(rule(pricer.seen), agent="a1"))
     assert all(one.rule.errors for one in found)
+
+
+def test_moved_thresholds_are_read_by_those_of_the_case() -> None:
+    """With two steps nothing can be read as something earlier, so all worlds are the network's."""
+    counted, named = pricers("once", 2)
+    plain = case(size=4, horizon=2, more=NAMED)
+    here, _ = doubted_crowd(counted, plain, rule(counted.seen))
+    there = {one.name: one for one in doubted(named, plain, rule(named.seen), NO_LIMITS)[0]}
+    assert any(one.exact.off_model > 0.0 for one in here)
+    for one in here:
+        assert apart(one.exact, there[one.name].exact) < 1e-10, one.name
+        assert apart(one.rule, there[one.name].rule) < 1e-10, one.name

@@ -131,3 +131,15 @@ def test_sampled_crowds_agree_within_their_errors() -> None:
         value, error = weights.mean(getattr(found, name))
         assert (error > 0).all()
         assert (np.abs(value - getattr(exact, name)[:, 0]) < 4 * error).all(), name
+
+
+def test_proof_of_the_other_answer_is_a_disagreement() -> None:
+    """By hand: the rule says minus at once; the exact agent waits until it has proof of plus."""
+    crowd = Crowd((kind(2, bars(-9, 9), CERTAIN),))
+    at_once: Policy = lambda _: Act(np.zeros(()), np.array(99), np.array(999))  # noqa: E731
+    found = agreement(solve(network(crowd, 0.0, 2, "once")), crowd.members[0], at_once)
+    # Proof comes to 0.3 of observations given plus: at step 1 both say plus. At step 2 only one
+    # does, by proof of its own or because the other member has had some at step 1.
+    assert found.same[:, 0] == pytest.approx([0.3, 0.0], abs=1e-12)
+    assert found.opposite[:, 0] == pytest.approx([0.7 * (1 - 0.7 * 0.7), 0.0], abs=1e-12)
+    assert found.steps_apart[:, 0] == pytest.approx([0.7, 1.0], abs=1e-12)
