@@ -6,14 +6,16 @@ from dataclasses import replace
 
 import pytest
 
-from tests.distill.test_crowds import case
+from tests.distill.test_crowds import CASE, case
 from thumbwright.distill.assemble import NO_LIMITS
+from thumbwright.distill.case import Case
 from thumbwright.distill.crowd_doubts import doubted_crowd
 from thumbwright.distill.crowd_pricer import CrowdPricer
 from thumbwright.distill.doubts import doubted
 from thumbwright.distill.findings import Figures
 from thumbwright.distill.network_pricer import NetworkPricer
 from thumbwright.distill.pricing import pricer_of
+from thumbwright.distill.reading import case_from_text
 from thumbwright.distill.rules import Row, Rule
 from thumbwright.exact.errors import ModelError
 
@@ -110,6 +112,33 @@ def test_moved_thresholds_are_read_by_those_of_the_case() -> None:
     here, _ = doubted_crowd(counted, plain, rule(counted.seen))
     there = {one.name: one for one in doubted(named, plain, rule(named.seen), NO_LIMITS)[0]}
     assert any(one.exact.off_model > 0.0 for one in here)
+    for one in here:
+        assert apart(one.exact, there[one.name].exact) < 1e-10, one.name
+        assert apart(one.rule, there[one.name].rule) < 1e-10, one.name
+
+
+def test_others_of_another_kind_are_taken_for_what_the_case_says() -> None:
+    """Two kinds of members, the last one slower to say plus."""
+
+    def of(more: str) -> Case:
+        plain = CASE.format(size=4, horizon=2, exchange="once", more=more)
+        start, stop = plain.index("[network]"), plain.index("[rule]")
+        ids = [f"a{number}" for number in range(1, 5)]
+        agents = "".join(
+            f'[agents.{one}]\nname = "{one}"\nthresholds = "{"slow" if one == "a4" else "even"}"\n'
+            f"sees = {[other for other in ids if other != one]}\n"
+            for one in ids
+        )
+        slow = '[thresholds.slow]\nplus = 3\nminus = -2\nunit = "observations"\n'
+        text = plain[:start] + slow + agents + plain[stop:].replace('"any"', '"a1"')
+        return case_from_text(text, "kinds.toml", "kinds")
+
+    counted, named = pricer_of(of(COUNTED))[0], pricer_of(of(NAMED))[0]
+    assert isinstance(counted, CrowdPricer)
+    assert isinstance(named, NetworkPricer)
+    assert len(counted.shown.crowd.kinds) == 2
+    here, _ = doubted_crowd(counted, of(COUNTED), rule(counted.seen))
+    there = {one.name: one for one in doubted(named, of(NAMED), rule(named.seen), NO_LIMITS)[0]}
     for one in here:
         assert apart(one.exact, there[one.name].exact) < 1e-10, one.name
         assert apart(one.rule, there[one.name].rule) < 1e-10, one.name
